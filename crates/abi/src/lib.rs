@@ -1,0 +1,1 @@
+//! C-compatible types and the version of the plugin interface

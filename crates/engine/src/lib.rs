@@ -1,0 +1,1 @@
+//! turns due parcels into ledger entries

@@ -1,0 +1,1 @@
+//! exact results for lattice spin systems

@@ -1,0 +1,1 @@
+//! finds, reads and loads plugin libraries

@@ -1,0 +1,1 @@
+//! entries, records, claims, journals and Parquet tables

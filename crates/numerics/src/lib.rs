@@ -1,0 +1,1 @@
+//! random streams, elementary functions and ordered sums

@@ -1,0 +1,1 @@
+//! YAML to a checked pipeline, with every problem located

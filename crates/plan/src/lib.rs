@@ -1,0 +1,1 @@
+//! checked pipeline and ledger index to parcels and their states

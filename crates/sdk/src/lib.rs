@@ -1,0 +1,1 @@
+//! what a plugin author writes against

@@ -1,0 +1,1 @@
+//! numerics on series and histograms

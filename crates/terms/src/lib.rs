@@ -1,0 +1,1 @@
+//! canonical values, parameter specifications, keys and located problems

@@ -1,0 +1,1 @@
+//! standard cluster-updates of spinledger

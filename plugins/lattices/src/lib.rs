@@ -1,0 +1,1 @@
+//! standard lattices of spinledger

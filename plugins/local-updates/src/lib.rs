@@ -1,0 +1,1 @@
+//! standard local-updates of spinledger

@@ -1,0 +1,1 @@
+//! standard models of spinledger

@@ -1,0 +1,1 @@
+//! standard observables of spinledger

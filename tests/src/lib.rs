@@ -1,0 +1,1 @@
+//! whole-program tests and checks against published values
