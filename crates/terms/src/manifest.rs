@@ -322,4 +322,7 @@ pub struct ScanSpec {
     pub no_column: Vec<String>,
     /// Of these, the paths that take the larger value where a point is named twice; others must then be equal.
     pub larger: Vec<String>,
+    /// The parameter that names a scanned path whose values are visited in the given order (`follow`): repeated values then
+    /// stay, and points carry a column `position`. Empty: none.
+    pub follow: String,
 }

@@ -9,6 +9,13 @@ pub enum Segment {
     Key(String),
     /// Into a list.
     Index(usize),
+    /// A place in the text itself, both counted from 1, where no path leads to it: broken YAML, repeated keys. Stands alone.
+    At {
+        /// The line.
+        line: usize,
+        /// The column, in characters.
+        column: usize,
+    },
 }
 
 /// The way from the top of a document to a place in it.
@@ -19,6 +26,11 @@ impl Path {
     /// The top of the document.
     pub fn top() -> Self {
         Path::default()
+    }
+
+    /// A place in the text itself.
+    pub fn at(line: usize, column: usize) -> Self {
+        Path(vec![Segment::At { line, column }])
     }
 
     /// One step further into a mapping.
@@ -53,6 +65,7 @@ impl fmt::Display for Path {
             match segment {
                 Segment::Key(key) => f.write_str(key)?,
                 Segment::Index(index) => write!(f, "{index}")?,
+                Segment::At { line, column } => write!(f, "{line}:{column}")?,
             }
         }
         Ok(())
