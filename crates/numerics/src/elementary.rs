@@ -99,7 +99,7 @@ pub fn sin_cos(x: f64) -> (f64, f64) {
 #[must_use]
 pub fn ln_add_exp(a: f64, b: f64) -> f64 {
     let (high, low) = if a >= b { (a, b) } else { (b, a) };
-    if high == f64::NEG_INFINITY || high == f64::INFINITY {
+    if high.is_infinite() {
         return high;
     }
     high + ln_1p(exp(low - high))

@@ -82,11 +82,7 @@ pub fn normal_quantile(p: f64) -> f64 {
         return q * polynomial(&CENTRE_ABOVE, r) / polynomial(&CENTRE_BELOW, r);
     }
     let tail = if q < 0.0 { p } else { 1.0 - p };
-    let r = if tail == 0.0 {
-        f64::INFINITY
-    } else {
-        (-ln(tail)).sqrt()
-    };
+    let r = if tail == 0.0 { f64::INFINITY } else { (-ln(tail)).sqrt() };
     let magnitude = if r.is_infinite() {
         r
     } else if r <= 5.0 {
@@ -99,17 +95,14 @@ pub fn normal_quantile(p: f64) -> f64 {
 
 /// Value of the polynomial with these coefficients, lowest first.
 fn polynomial(coefficients: &[f64; 8], x: f64) -> f64 {
-    coefficients
-        .iter()
-        .rev()
-        .fold(0.0, |value, coefficient| value * x + coefficient)
+    coefficients.iter().rev().fold(0.0, |value, coefficient| value * x + coefficient)
 }
 
 const CENTRE_ABOVE: [f64; 8] = [
     3.387_132_872_796_366_5,
     1.331_416_678_917_843_8e2,
     1.971_590_950_306_551_3e3,
-    1.373_169_376_550_946_1e4,
+    1.373_169_376_550_946e4,
     4.592_195_393_154_987e4,
     6.726_577_092_700_87e4,
     3.343_057_558_358_813e4,

@@ -23,21 +23,15 @@ impl CompensatedSum {
     /// An empty sum, 0.
     #[must_use]
     pub const fn new() -> Self {
-        Self {
-            sum: 0.0,
-            correction: 0.0,
-        }
+        Self { sum: 0.0, correction: 0.0 }
     }
 
     /// Adds one term.
     #[inline]
     pub fn add(&mut self, term: f64) {
         let next = self.sum + term;
-        self.correction += if self.sum.abs() >= term.abs() {
-            (self.sum - next) + term
-        } else {
-            (term - next) + self.sum
-        };
+        self.correction +=
+            if self.sum.abs() >= term.abs() { (self.sum - next) + term } else { (term - next) + self.sum };
         self.sum = next;
     }
 
@@ -53,11 +47,7 @@ impl CompensatedSum {
     pub fn value(&self) -> f64 {
         let corrected = self.sum + self.correction;
         // Infinite terms leave inf - inf in the correction.
-        if corrected.is_nan() {
-            self.sum
-        } else {
-            corrected
-        }
+        if corrected.is_nan() { self.sum } else { corrected }
     }
 }
 

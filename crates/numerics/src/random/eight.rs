@@ -50,12 +50,7 @@ impl Eight {
                 row[lane] = word;
             }
         }
-        Self {
-            state,
-            block: [0; LANES],
-            drawn: LANES,
-            half: None,
-        }
+        Self { state, block: [0; LANES], drawn: LANES, half: None }
     }
 
     /// One step of every lane.
@@ -64,10 +59,7 @@ impl Eight {
         let [s0, s1, s2, s3] = &mut self.state;
         let mut output = [0; LANES];
         for lane in 0..LANES {
-            output[lane] = s0[lane]
-                .wrapping_add(s3[lane])
-                .rotate_left(23)
-                .wrapping_add(s0[lane]);
+            output[lane] = s0[lane].wrapping_add(s3[lane]).rotate_left(23).wrapping_add(s0[lane]);
             let shifted = s1[lane] << 17;
             s2[lane] ^= s0[lane];
             s3[lane] ^= s1[lane];
@@ -105,11 +97,7 @@ impl Eight {
         let mut output = [0; LANES];
         for (index, word) in output.iter_mut().enumerate() {
             let from = self.drawn + index;
-            *word = if from < LANES {
-                self.block[from]
-            } else {
-                next[from - LANES]
-            };
+            *word = if from < LANES { self.block[from] } else { next[from - LANES] };
         }
         self.block = next;
         output
@@ -171,9 +159,7 @@ impl Eight {
     /// # Errors
     /// The bytes have another length, or could not have been written by [`Eight::save`].
     pub fn restore(bytes: &[u8]) -> Result<Self, RestoreError> {
-        let bytes: &[u8; SAVED_LEN] = bytes
-            .try_into()
-            .map_err(|_| RestoreError::Length { found: bytes.len() })?;
+        let bytes: &[u8; SAVED_LEN] = bytes.try_into().map_err(|_| RestoreError::Length { found: bytes.len() })?;
         let (chunks, tail) = bytes.as_chunks::<8>();
         let mut words = chunks.iter().map(|chunk| u64::from_le_bytes(*chunk));
         let mut state = [[0; LANES]; 4];
@@ -186,8 +172,7 @@ impl Eight {
             }
         }
         let block = std::array::from_fn(|_| words.next().unwrap_or(0));
-        let [drawn, waiting, half @ ..]: &[u8; 6] =
-            tail.try_into().map_err(|_| RestoreError::Content)?;
+        let [drawn, waiting, half @ ..]: &[u8; 6] = tail.try_into().map_err(|_| RestoreError::Content)?;
         let half = u32::from_le_bytes(*half);
         let half = match waiting {
             0 if half == 0 => None,
@@ -198,12 +183,7 @@ impl Eight {
         if drawn > LANES || block[..drawn].iter().any(|word: &u64| *word != 0) {
             return Err(RestoreError::Content);
         }
-        Ok(Self {
-            state,
-            block,
-            drawn,
-            half,
-        })
+        Ok(Self { state, block, drawn, half })
     }
 }
 
@@ -221,10 +201,7 @@ impl Eq for Eight {}
 
 impl fmt::Debug for Eight {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        f.debug_struct("Eight")
-            .field("state", &self.state)
-            .field("drawn", &self.drawn)
-            .finish_non_exhaustive()
+        f.debug_struct("Eight").field("state", &self.state).field("drawn", &self.drawn).finish_non_exhaustive()
     }
 }
 

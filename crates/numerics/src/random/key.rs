@@ -38,10 +38,7 @@ impl StreamKey {
 
     /// Fills `bytes` with the beginning of the key's seed bytes.
     pub(super) fn seed_bytes(&self, bytes: &mut [u8]) {
-        blake3::Hasher::new()
-            .update(&self.0)
-            .finalize_xof()
-            .fill(bytes);
+        blake3::Hasher::new().update(&self.0).finalize_xof().fill(bytes);
     }
 }
 

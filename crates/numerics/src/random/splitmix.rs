@@ -13,10 +13,6 @@ impl SplitMix {
     }
 
     /// The next word.
-    #[expect(
-        clippy::should_implement_trait,
-        reason = "a stream has no end, so that an iterator would only add an Option"
-    )]
     pub const fn next(&mut self) -> u64 {
         self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
         let mut z = self.0;

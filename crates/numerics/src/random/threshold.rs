@@ -16,16 +16,10 @@ impl Threshold64 {
     #[must_use]
     pub fn new(probability: f64) -> Self {
         if probability >= 1.0 {
-            return Self {
-                limit: u64::MAX,
-                always: true,
-            };
+            return Self { limit: u64::MAX, always: true };
         }
         // The largest double below 1 gives 2^64 - 2^11: the cast cannot saturate. Negative numbers and NaN give 0.
-        Self {
-            limit: (probability * 18_446_744_073_709_551_616.0).round() as u64,
-            always: false,
-        }
+        Self { limit: (probability * 18_446_744_073_709_551_616.0).round() as u64, always: false }
     }
 
     /// Whether this word accepts.
@@ -57,9 +51,7 @@ impl Threshold32 {
     #[must_use]
     pub fn new(probability: f64) -> Self {
         // Casts saturate, and NaN becomes 0.
-        Self {
-            limit: ((probability * 4_294_967_296.0).round() as u64).min(1 << 32),
-        }
+        Self { limit: ((probability * 4_294_967_296.0).round() as u64).min(1 << 32) }
     }
 
     /// Whether this half word accepts.

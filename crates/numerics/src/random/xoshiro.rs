@@ -7,12 +7,8 @@ use rand::{SeedableRng, TryRng};
 use super::StreamKey;
 
 /// First four outputs of splitmix64 seeded with 0: stands in for the all-zero state, which is a fixed point.
-pub(super) const REPLACEMENT: [u64; 4] = [
-    0xe220_a839_7b1d_cdaf,
-    0x6e78_9e6a_a1b9_65f4,
-    0x06c4_5d18_8009_454f,
-    0xf88b_b8a8_724c_81ec,
-];
+pub(super) const REPLACEMENT: [u64; 4] =
+    [0xe220_a839_7b1d_cdaf, 0x6e78_9e6a_a1b9_65f4, 0x06c4_5d18_8009_454f, 0xf88b_b8a8_724c_81ec];
 
 /// xoshiro256++ (Blackman & Vigna 2021 ACM Trans. Math. Softw. 47 36): 256 bits of state, period 2^256 - 1.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -50,10 +46,6 @@ impl Xoshiro {
     }
 
     /// The next word.
-    #[expect(
-        clippy::should_implement_trait,
-        reason = "a stream has no end, so that an iterator would only add an Option"
-    )]
     #[inline]
     pub const fn next(&mut self) -> u64 {
         let [s0, s1, s2, s3] = self.state;
