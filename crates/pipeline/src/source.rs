@@ -7,7 +7,7 @@ use spinledger_terms::Path;
 pub struct Source {
     name: String,
     text: String,
-    /// Characters before the first byte that is not UTF-8.
+    /// Bytes before the first that is not UTF-8.
     broken: Option<usize>,
 }
 
@@ -27,10 +27,11 @@ impl Source {
         let bytes = bytes.strip_prefix(&mark).unwrap_or(bytes);
         match std::str::from_utf8(bytes) {
             Ok(text) => Source { name: name.into(), text: text.to_owned(), broken: None },
-            Err(error) => {
-                let before = String::from_utf8_lossy(&bytes[..error.valid_up_to()]).chars().count();
-                Source { name: name.into(), text: String::from_utf8_lossy(bytes).into_owned(), broken: Some(before) }
-            }
+            Err(error) => Source {
+                name: name.into(),
+                text: String::from_utf8_lossy(bytes).into_owned(),
+                broken: Some(error.valid_up_to()),
+            },
         }
     }
 
@@ -80,18 +81,20 @@ impl<'t> Lines<'t> {
         rest.split('\n').next().unwrap_or_default().trim_end_matches('\r')
     }
 
-    /// Line and column, both counted from 1, of the character that `before` others precede; the end of the text for what lies
-    /// beyond it.
-    pub(crate) fn position(&self, before: usize) -> (usize, usize) {
-        let byte = self.text.char_indices().nth(before).map_or(self.text.len(), |(byte, _)| byte);
+    /// Line and column, both counted from 1, of the character at a byte offset; the end of the text for what lies beyond it.
+    pub(crate) fn position(&self, offset: usize) -> (usize, usize) {
+        let mut byte = offset.min(self.text.len());
+        while !self.text.is_char_boundary(byte) {
+            byte -= 1;
+        }
         let line = self.starts.partition_point(|start| *start <= byte);
         let start = self.starts[line - 1];
         (line, self.text[start..byte].chars().count() + 1)
     }
 
     /// The place as a path.
-    pub(crate) fn path(&self, before: usize) -> Path {
-        let (line, column) = self.position(before);
+    pub(crate) fn path(&self, offset: usize) -> Path {
+        let (line, column) = self.position(offset);
         Path::at(line, column)
     }
 
@@ -111,8 +114,9 @@ mod tests {
         let lines = Lines::new("a\r\nße\n");
         assert_eq!((lines.line(1), lines.line(2), lines.line(3), lines.line(4)), ("a", "ße", "", ""));
         assert_eq!(lines.position(0), (1, 1));
-        assert_eq!(lines.position(4), (2, 2));
-        assert_eq!(lines.position(6), (3, 1));
+        assert_eq!(lines.position(5), (2, 2));
+        assert_eq!(lines.position(4), (2, 1));
+        assert_eq!(lines.position(7), (3, 1));
         assert_eq!(lines.position(60), (3, 1));
         assert_eq!(lines.clamp(9, 9), (3, 1));
         assert_eq!(lines.clamp(2, 9), (2, 3));
@@ -121,7 +125,7 @@ mod tests {
     #[test]
     fn bytes_that_are_not_text_are_remembered() {
         let source = Source::from_bytes("p.yaml", b"\xef\xbb\xbfa: \xc3\xbc\xff");
-        assert_eq!((source.text(), source.broken()), ("a: ü\u{fffd}", Some(4)));
+        assert_eq!((source.text(), source.broken()), ("a: ü\u{fffd}", Some(5)));
         assert_eq!(Source::from_bytes("p.yaml", b"\xef\xbb\xbfa").text(), "a");
         assert_eq!(Source::new("p.yaml", "\u{feff}a").text(), "a");
     }

@@ -4,7 +4,7 @@ use serde::de::{DeserializeSeed, Deserializer, EnumAccess, IgnoredAny, MapAccess
 use spinledger_terms::Mark;
 use std::fmt;
 
-/// How many characters precede the node that `route` leads to (or its key). None where the route leads nowhere. For a node that came
+/// The byte offset of the node that `route` leads to (or of its key). None where the route leads nowhere. For a node that came
 /// through an alias this is the place of the anchored original.
 ///
 /// Cost: one run of the parser over the text.

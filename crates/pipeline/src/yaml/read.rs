@@ -56,17 +56,17 @@ pub(crate) fn read(text: &str) -> (Option<Document>, Vec<Problem>) {
     (Some(Document { root }), problems)
 }
 
-/// What the parser would refuse without saying where.
+/// What the parser would refuse without saying where; and the old line break U+0085, after which it counts bytes wrongly.
 fn unreadable(text: &str, lines: &Lines<'_>) -> Option<Problem> {
     if text.len() > LONGEST {
         let message = format!("the file has {} bytes, and a pipeline has at most {LONGEST}", text.len());
         return Some(Problem::at_value(&Path::at(1, 1), message));
     }
     let allowed = |c: char| {
-        matches!(c, '\t' | '\n' | '\r' | ' '..='~' | '\u{85}' | '\u{a0}'..='\u{fefe}' | '\u{ff00}'..='\u{fffd}')
+        matches!(c, '\t' | '\n' | '\r' | ' '..='~' | '\u{a0}'..='\u{fefe}' | '\u{ff00}'..='\u{fffd}')
             || c >= '\u{10000}'
     };
-    let (index, c) = text.chars().enumerate().find(|(_, c)| !allowed(*c))?;
+    let (index, c) = text.char_indices().find(|(_, c)| !allowed(*c))?;
     let message = format!("the character U+{:04X} cannot stand in YAML", u32::from(c));
     Some(Problem::at_value(&lines.path(index), message))
 }
@@ -278,7 +278,7 @@ fn broken(error: &serde_yaml::Error, reading: &Reading, text: &str, lines: &Line
     let mut parts = words.splitn(2, ", while ");
     let what = without_place(parts.next().unwrap_or_default());
     let context = parts.next();
-    let tab = place.and_then(|place| text.chars().nth(place)) == Some('\t');
+    let tab = place.is_some_and(|place| text.as_bytes().get(place) == Some(&b'\t'));
     let message =
         if tab { "broken YAML: a tab where only spaces may stand".to_owned() } else { format!("broken YAML: {what}") };
     let mut problem = Problem::at_value(&path, message);
