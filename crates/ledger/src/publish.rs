@@ -108,6 +108,9 @@ impl Payload {
     }
 }
 
+/// The name and the bytes of a file.
+type Named = (String, Vec<u8>);
+
 impl Ledger {
     /// Publishes an entry: tables and record are written to a folder of their own, forced to the disk, and renamed to their
     /// place; then the journal gets its line. Where the entry is on record already, contents are compared. Where its record
@@ -180,7 +183,7 @@ impl Ledger {
         draft: Draft,
         content: ContentHash,
         contents: &[ContentHash],
-    ) -> Result<(Record, Vec<(String, Vec<u8>)>), LedgerError> {
+    ) -> Result<(Record, Vec<Named>), LedgerError> {
         let mut tables = Vec::with_capacity(contents.len());
         let mut files = Vec::with_capacity(contents.len() + 1);
         for ((name, payload), content) in draft.tables.into_iter().zip(contents) {

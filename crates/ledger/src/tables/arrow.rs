@@ -15,20 +15,21 @@ const TYPE_UTF8: u8 = 5;
 const TYPE_BOOL: u8 = 6;
 const PRECISION_DOUBLE: i16 = 2;
 
-/// The value of `ARROW:schema`.
-pub(super) fn schema_text(columns: &[ColumnInfo]) -> String {
-    let message = message(columns);
+/// The value of `ARROW:schema` for columns in a file with some more metadata, which has to be repeated in it: readers show
+/// the schema's metadata in place of the file's.
+pub(super) fn schema_text(columns: &[ColumnInfo], metadata: &[(&str, &str)]) -> String {
+    let message = message(columns, metadata);
     let mut bytes = vec![0xff; 4];
     bytes.extend_from_slice(&(message.len() as u32).to_le_bytes());
     bytes.extend_from_slice(&message);
     base64(&bytes)
 }
 
-fn message(columns: &[ColumnInfo]) -> Vec<u8> {
+fn message(columns: &[ColumnInfo], metadata: &[(&str, &str)]) -> Vec<u8> {
     let mut out = Flat(vec![0; 4]);
     let message = out.table(&[Slot::I16(VERSION_5), Slot::U8(HEADER_SCHEMA), Slot::Ref]);
     out.point(0, message.start);
-    let schema = out.table(&[Slot::Default, Slot::Ref]);
+    let schema = out.table(&[Slot::Default, Slot::Ref, Slot::Ref]);
     out.point(message.slots[2], schema.start);
     let fields = out.vector(columns.len());
     out.point(schema.slots[1], fields);
@@ -36,6 +37,7 @@ fn message(columns: &[ColumnInfo]) -> Vec<u8> {
         let start = out.field(column);
         out.point(fields + 4 + 4 * i, start);
     }
+    out.pairs(schema.slots[2], metadata);
     out.align(8);
     out.0
 }
@@ -89,15 +91,22 @@ impl Flat {
         // Readers demand the list of children even where there are none.
         let children = self.vector(0);
         self.point(field.slots[5], children);
-        let metadata = self.vector(1);
-        self.point(field.slots[6], metadata);
-        let pair = self.table(&[Slot::Ref, Slot::Ref]);
-        self.point(metadata + 4, pair.start);
-        for (slot, text) in pair.slots.into_iter().zip(["unit", &column.unit]) {
-            let text = self.string(text);
-            self.point(slot, text);
-        }
+        self.pairs(field.slots[6], &[("unit", &column.unit)]);
         field.start
+    }
+
+    /// Metadata: keys and values.
+    fn pairs(&mut self, room: usize, pairs: &[(&str, &str)]) {
+        let vector = self.vector(pairs.len());
+        self.point(room, vector);
+        for (i, (key, value)) in pairs.iter().enumerate() {
+            let pair = self.table(&[Slot::Ref, Slot::Ref]);
+            self.point(vector + 4 + 4 * i, pair.start);
+            for (slot, text) in pair.slots.into_iter().zip([key, value]) {
+                let text = self.string(text);
+                self.point(slot, text);
+            }
+        }
     }
 
     /// A table after its vtable. Fields stand in order of size, so that each is aligned.
@@ -225,12 +234,15 @@ mod tests {
             column("flags", "", Kind::Text),
             column("équilibré", "µ", Kind::Boolean),
         ];
-        let bytes = message(&columns);
+        let bytes = message(&columns, &[("spinledger.key", "00")]);
         assert_eq!(bytes.len() % 8, 0);
         let r = Reader(&bytes);
         let root = r.follow(0);
         assert_eq!((r.u16(r.slot(root, 0)), bytes[r.slot(root, 1)]), (4, 1));
-        let fields = r.follow(r.slot(r.follow(r.slot(root, 2)), 1));
+        let schema = r.follow(r.slot(root, 2));
+        let pair = r.follow(r.follow(r.slot(schema, 2)) + 4);
+        assert_eq!((r.text(r.slot(pair, 0)), r.text(r.slot(pair, 1))), ("spinledger.key", "00"));
+        let fields = r.follow(r.slot(schema, 1));
         assert_eq!(r.u32(fields), columns.len());
         for (i, column) in columns.iter().enumerate() {
             let field = r.follow(fields + 4 + 4 * i);

@@ -1,10 +1,10 @@
 //! A step's series file: recorded blocks one after another, with constant columns before them. Encoded column chunks are
 //! copied as they are; only the last block of a chain is decoded, where fewer rows are wanted than were recorded.
 
-use super::block::{block_infos, encode, read_block};
+use super::block::{block_infos, read_block, write_block};
 use super::cells::{self, info, kind};
 use super::format::{ColumnInfo, Kind, Layout, properties, schema};
-use super::table::open;
+use super::table::{open, parse};
 use crate::error::LedgerError;
 use crate::writes::{NewFile, Writes};
 use bytes::Bytes;
@@ -149,8 +149,10 @@ impl Source {
             return Ok(Source::Whole(file, reader.metadata().clone()));
         }
         let head = read_block(&piece.path, None, Some(piece.rows as usize))?;
-        let (bytes, metadata) = encode(&head, key)?;
-        Ok(Source::Head(bytes.into(), metadata))
+        let bytes = Bytes::from(write_block(&head, key)?);
+        // Metadata as read, not as written: they differ in what the footer leaves out, and the output's bytes show it.
+        let reader = parse(bytes.clone()).map_err(LedgerError::parquet("encode the first rows of", &piece.path))?;
+        Ok(Source::Head(bytes, reader.metadata().clone()))
     }
 
     fn append_to(&self, group: &mut SerializedRowGroupWriter<'_, &mut NewFile>, rows: u64) -> ParquetResult<()> {

@@ -6,7 +6,6 @@ use super::table::open;
 use crate::error::LedgerError;
 use parquet::data_type::{DoubleType, Int64Type};
 use parquet::errors::Result as ParquetResult;
-use parquet::file::metadata::ParquetMetaData;
 use parquet::file::reader::FileReader;
 use parquet::file::writer::SerializedFileWriter;
 use spinledger_terms::{Cells, Key};
@@ -95,10 +94,6 @@ impl BlockData {
 /// Where there are no rows or more than [`BLOCK_ROWS`], columns have different lengths, or a name is empty or stands there
 /// twice.
 pub fn write_block(block: &BlockData, key: &Key) -> Result<Vec<u8>, LedgerError> {
-    Ok(encode(block, key)?.0)
-}
-
-pub(super) fn encode(block: &BlockData, key: &Key) -> Result<(Vec<u8>, ParquetMetaData), LedgerError> {
     let rows = block.rows();
     if rows == 0 || rows > BLOCK_ROWS {
         return Err(LedgerError::Columns(format!("a block has from 1 to {BLOCK_ROWS} rows, not {rows}")));
@@ -122,8 +117,8 @@ pub(super) fn encode(block: &BlockData, key: &Key) -> Result<(Vec<u8>, ParquetMe
             cells::write::<DoubleType, _>(&mut group, known)?;
         }
         group.close()?;
-        let metadata = writer.close()?;
-        Ok((bytes, metadata))
+        writer.close()?;
+        Ok(bytes)
     };
     write().map_err(LedgerError::parquet("encode", Path::new("a block")))
 }

@@ -50,9 +50,9 @@ pub(super) fn write_cells<W: Write + Send>(
 /// Reads the first rows of a column of a row group behind what is there.
 pub(super) fn read(group: &dyn RowGroupReader, column: usize, rows: usize, into: &mut Cells) -> Result<()> {
     match (group.get_column_reader(column)?, into) {
-        (ColumnReader::Int64ColumnReader(reader), Cells::Integer(cells)) => take(reader, rows, |v| Ok(v), cells),
-        (ColumnReader::DoubleColumnReader(reader), Cells::Number(cells)) => take(reader, rows, |v| Ok(v), cells),
-        (ColumnReader::BoolColumnReader(reader), Cells::Boolean(cells)) => take(reader, rows, |v| Ok(v), cells),
+        (ColumnReader::Int64ColumnReader(reader), Cells::Integer(cells)) => take(reader, rows, Ok, cells),
+        (ColumnReader::DoubleColumnReader(reader), Cells::Number(cells)) => take(reader, rows, Ok, cells),
+        (ColumnReader::BoolColumnReader(reader), Cells::Boolean(cells)) => take(reader, rows, Ok, cells),
         (ColumnReader::ByteArrayColumnReader(reader), Cells::Text(cells)) => {
             take(reader, rows, |text| Ok(text.as_utf8()?.to_owned()), cells)
         }

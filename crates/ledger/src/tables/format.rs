@@ -80,12 +80,12 @@ pub(super) fn schema(columns: &[ColumnInfo]) -> Result<TypePtr, LedgerError> {
 pub(super) fn properties(columns: &[ColumnInfo], layouts: &[Layout], key: &Key) -> WriterPropertiesPtr {
     const UNLIMITED: usize = 1 << 40;
     let units: BTreeMap<&str, &str> = columns.iter().map(|c| (c.name.as_str(), c.unit.as_str())).collect();
-    let metadata = vec![
-        KeyValue::new(KEY.to_owned(), key.to_string()),
-        // For readers that know nothing of Arrow.
-        KeyValue::new(UNITS.to_owned(), serde_json::to_string(&units).unwrap_or_default()),
-        KeyValue::new(ARROW_SCHEMA.to_owned(), arrow::schema_text(columns)),
-    ];
+    let (key, units) = (key.to_string(), serde_json::to_string(&units).unwrap_or_default());
+    // The units as plain text are for readers that know nothing of Arrow.
+    let pairs = [(KEY, key.as_str()), (UNITS, units.as_str())];
+    let schema = arrow::schema_text(columns, &pairs);
+    let metadata = pairs.into_iter().chain([(ARROW_SCHEMA, schema.as_str())]);
+    let metadata = metadata.map(|(key, value)| KeyValue::new(key.to_owned(), value.to_owned())).collect();
     let mut builder = WriterProperties::builder()
         .set_writer_version(WriterVersion::PARQUET_1_0)
         .set_created_by("spinledger 1".to_owned())

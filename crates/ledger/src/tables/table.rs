@@ -3,7 +3,8 @@
 use super::cells::{empty, info, kind, layout, read, write_cells};
 use super::format::{ColumnInfo, GROUP_ROWS, Layout, columns_of, key_of, properties, schema};
 use crate::error::LedgerError;
-use parquet::file::reader::{FileReader, SerializedFileReader};
+use parquet::file::reader::{ChunkReader, FileReader, SerializedFileReader};
+use parquet::file::serialized_reader::ReadOptionsBuilder;
 use parquet::file::writer::SerializedFileWriter;
 use spinledger_terms::{Column, Key, Table};
 use std::fs::File;
@@ -80,5 +81,11 @@ pub(super) fn open(path: &Path) -> Result<SerializedFileReader<File>, LedgerErro
         }
         Err(error) => return Err(LedgerError::read("open", path)(error)),
     };
-    SerializedFileReader::new(file).map_err(LedgerError::parquet("read as a Parquet file", path))
+    parse(file).map_err(LedgerError::parquet("read as a Parquet file", path))
+}
+
+/// Reads the metadata of a Parquet file, with all that a copied column chunk needs.
+pub(super) fn parse<R: ChunkReader + 'static>(source: R) -> parquet::errors::Result<SerializedFileReader<R>> {
+    let options = ReadOptionsBuilder::new().with_encoding_stats_as_mask(false).build();
+    SerializedFileReader::new_with_options(source, options)
 }
