@@ -63,7 +63,7 @@ pub fn located(source: &Source, problems: &[Problem]) -> Vec<Located> {
     for problem in problems.iter().take(MOST) {
         let place = places.place(&problem.path, problem.mark);
         let other = problem.other.as_ref().map(|(path, how)| {
-            let Place { line, column, width } = places.place(path, Mark::Value);
+            let Place { line, column, width } = places.place(path, places.telling(path));
             Other { line, column, width, how: how.clone() }
         });
         let in_text = matches!(problem.path.0.first(), Some(Segment::At { .. }));
@@ -78,7 +78,9 @@ pub fn located(source: &Source, problems: &[Problem]) -> Vec<Located> {
             nearest: problem.nearest.clone(),
             other,
         };
-        if !out.contains(&located) {
+        // What an anchor holds is found wrong once for each of its aliases.
+        let same = |other: &Located| Located { path: located.path.clone(), ..other.clone() } == located;
+        if !out.iter().any(same) {
             out.push(located);
         }
     }
@@ -99,12 +101,20 @@ impl<'a> Places<'a> {
         Places { text, lines: Lines::new(text), document: yaml::read(text).0 }
     }
 
+    /// The part of a place that tells most: of a mapping its key, of anything else the value.
+    fn telling(&self, path: &Path) -> Mark {
+        match self.document.as_ref().map(|document| document.root.find(path, Mark::Value).node) {
+            Some(Node::Map(_)) => Mark::Key,
+            _ => Mark::Value,
+        }
+    }
+
     pub(crate) fn place(&self, path: &Path, mark: Mark) -> Place {
         if let Some(Segment::At { line, column }) = path.0.first() {
             let (line, column) = self.lines.clamp(*line, *column);
-            return self.marked(line, column, None);
+            return Place { line, column, width: width(rest_of(self.lines.line(line), column, false).1, None).max(1) };
         }
-        let Some(document) = &self.document else { return self.marked(1, 1, None) };
+        let Some(document) = &self.document else { return Place { line: 1, column: 1, width: 1 } };
         let found = document.root.find(path, mark);
         let at = |mark| self.lines.position(yaml::offset(self.text, &found.route, mark).unwrap_or(0));
         if found.mark == Mark::Key {
@@ -112,7 +122,7 @@ impl<'a> Places<'a> {
             return self.marked(line, column, None);
         }
         let (line, column) = at(Mark::Value);
-        let first = rest_of(self.lines.line(line), column).1.chars().next();
+        let first = rest_of(self.lines.line(line), column, true).1.chars().next();
         // A mapping or list without brackets is marked by its key: its own beginning is its first key or element.
         if found.keyed && !matches!(found.node, Node::Leaf(_)) && !matches!(first, Some('{' | '[')) {
             let (line, column) = at(Mark::Key);
@@ -123,17 +133,17 @@ impl<'a> Places<'a> {
 
     /// The place with the length of what stands there.
     fn marked(&self, line: usize, column: usize, node: Option<&Node>) -> Place {
-        let (skipped, rest) = rest_of(self.lines.line(line), column);
+        let (skipped, rest) = rest_of(self.lines.line(line), column, true);
         Place { line, column: column + skipped, width: width(rest, node).max(1) }
     }
 }
 
-/// What stands on a line from a column on, after anchors and tags, and how many characters those take.
-fn rest_of(line: &str, column: usize) -> (usize, &str) {
+/// What stands on a line from a column on, where asked for after anchors and tags, and how many characters those take.
+fn rest_of(line: &str, column: usize, skip: bool) -> (usize, &str) {
     let start = line.char_indices().nth(column - 1).map_or(line.len(), |(byte, _)| byte);
     let whole = &line[start..];
     let mut rest = whole;
-    while rest.starts_with(['&', '!']) {
+    while skip && rest.starts_with(['&', '!']) {
         let Some(end) = rest.find([' ', '\t']) else { break };
         let after = rest[end..].trim_start();
         if after.is_empty() || after.starts_with('#') {
@@ -150,6 +160,8 @@ fn width(rest: &str, node: Option<&Node>) -> usize {
     match rest.chars().next() {
         Some(quote @ ('"' | '\'')) => count(quoted(rest, quote)),
         Some('{' | '[') => count(bracketed(rest)),
+        Some('&' | '!' | '*') => count(rest.find([' ', '\t', ',', ']', '}']).unwrap_or(rest.len())),
+        Some(c) if c.is_whitespace() => 1,
         _ => {
             // The text of a plain scalar may hold what would end it elsewhere.
             if let Some(Node::Leaf(Value::Text(text))) = node

@@ -78,12 +78,16 @@ pub fn read(source: &Source, vocabulary: &Vocabulary) -> Result<Pipeline, Vec<Pr
         }
     };
     if let Some(version) = value.get("spinledger").and_then(Value::as_i64)
-        && version > FORMAT
+        && version != FORMAT
     {
         // Nothing else can be judged by the rules of this version.
-        let message = format!("this pipeline is in format {version}, and this program reads format {FORMAT}");
-        let problem = Problem::at_value(&top.key("spinledger"), message);
-        return Err(vec![problem.expected(format!("{FORMAT}, or a newer spinledger"))]);
+        let (message, expected) = if version > FORMAT {
+            let message = format!("this pipeline is in format {version}, and this program reads format {FORMAT}");
+            (message, format!("{FORMAT}, or a newer spinledger"))
+        } else {
+            (format!("there is no format {version}"), FORMAT.to_string())
+        };
+        return Err(vec![Problem::at_value(&top.key("spinledger"), message).expected(expected)]);
     }
     let mut references = Vec::new();
     let mut admission = Admission { vocabulary, problems: &mut problems, references: &mut references };
@@ -120,7 +124,7 @@ pub fn read(source: &Source, vocabulary: &Vocabulary) -> Result<Pipeline, Vec<Pr
 
 /// The keys of a pipeline.
 fn fields() -> Vec<Field> {
-    let format = Kind::Integer { min: Some(FORMAT), max: Some(FORMAT) };
+    let format = Kind::Integer { min: None, max: None };
     let seed = Kind::Integer { min: Some(0), max: Some(i64::MAX) };
     vec![
         Field::new("spinledger", format, "version of the format").required(),

@@ -262,9 +262,9 @@ fn broken(error: &serde_yaml::Error, reading: &Reading, text: &str, lines: &Line
     let words = error.to_string();
     if reading.nodes.get() > MOST_NODES || words.starts_with("repetition limit") {
         let place = alias_on_the_way(text, &reading.route.borrow());
-        let message = format!("the aliases here expand to more than {MOST_NODES} values");
+        let message = "aliases of aliases expand to too many values here";
         let problem = Problem::at_value(&lines.path(place), message);
-        return problem.expected("a document whose aliases do not repeat each other without bound");
+        return problem.expected("at most a million values in all");
     }
     let place = error.location().map(|location| location.index());
     let path = lines.path(place.unwrap_or(0));
@@ -277,11 +277,13 @@ fn broken(error: &serde_yaml::Error, reading: &Reading, text: &str, lines: &Line
     }
     let mut parts = words.splitn(2, ", while ");
     let what = without_place(parts.next().unwrap_or_default());
-    let context = parts.next();
     let tab = place.is_some_and(|place| text.as_bytes().get(place) == Some(&b'\t'));
-    let message =
-        if tab { "broken YAML: a tab where only spaces may stand".to_owned() } else { format!("broken YAML: {what}") };
-    let mut problem = Problem::at_value(&path, message);
+    if tab {
+        let problem = Problem::at_value(&path, "broken YAML: a tab where only spaces may stand");
+        return problem.expected("spaces");
+    }
+    let context = parts.next();
+    let mut problem = Problem::at_value(&path, format!("broken YAML: {what}"));
     if let Some(context) = context {
         let how = format!("while {}", without_place(context));
         match context.split_once(" at line ").and_then(|(_, rest)| numbers(rest)) {
