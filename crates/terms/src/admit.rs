@@ -89,12 +89,15 @@ pub fn admit_fields(
 ) -> Option<BTreeMap<String, Value>> {
     let before = admission.problems.len();
     let names = || fields.iter().map(|f| f.name.as_str());
+    let mut meant = Vec::new();
     for key in raw.keys().filter(|key| names().all(|n| n != key.as_str())) {
         let mut sorted: Vec<&str> = names().collect();
         sorted.sort_unstable();
         let expected = if sorted.is_empty() { "no keys".to_owned() } else { format!("one of: {}", sorted.join(", ")) };
         let problem = Problem::at_key(&path.key(key), format!("`{key}` is not a key of {owner}"));
-        admission.problems.push(problem.expected(expected).nearest(nearest(key, names())));
+        let near = nearest(key, names());
+        meant.extend(near);
+        admission.problems.push(problem.expected(expected).nearest(near));
     }
     let mut out = BTreeMap::new();
     for field in fields {
@@ -104,6 +107,8 @@ pub fn admit_fields(
                     out.insert(field.name.clone(), value);
                 }
             }
+            // A misspelt key has been named already, and is not missing as well.
+            None if field.required && meant.contains(&field.name.as_str()) => {}
             None if field.required => {
                 let problem = Problem::at_value(path, format!("{owner} needs `{}`", field.name));
                 admission.problems.push(problem.expected(format!("{}: {}", field.name, field.kind.what())));
