@@ -1,0 +1,210 @@
+//! Local polynomials through points with errors.
+//!
+//! No single polynomial is right for a curve, and which window and degree are chosen by eye changes the answer. All
+//! windows around the place of interest and all degrees up to the highest are fitted and averaged with weights
+//! exp(-(chi^2 + 2 parameters + 2 points left out)/2) (Jay & Neil 2021 Phys. Rev. D 103 114502; Neil & Sitison 2022),
+//! which prefers few parameters and many points as long as chi^2 allows them. The average is linear in the
+//! data at given weights, so that replicates are fitted by one product, and the disagreement between the models is
+//! reported as an error of its own.
+
+use spinledger_numerics::elementary::exp;
+use thiserror::Error;
+
+use crate::fit::{Errors, FitError, linear_map};
+use crate::matrix::{Matrix, dot};
+
+/// How [`local`] works.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct LocalParams {
+    /// Highest degree tried: 4.
+    pub most_degree: usize,
+    /// Nearest points used at most: 24.
+    pub most_points: usize,
+    /// Whether the points are exactly on a smooth curve up to errors they share (a reweighted curve): then
+    /// the cubic through the four nearest points is taken, and nothing is averaged.
+    pub smooth: bool,
+}
+
+impl Default for LocalParams {
+    fn default() -> Self {
+        Self { most_degree: 4, most_points: 24, smooth: false }
+    }
+}
+
+/// A polynomial in u = (x - centre)/scale near the centre, as a linear function of the data.
+#[derive(Clone, Debug, PartialEq)]
+#[non_exhaustive]
+pub struct Local {
+    /// Place where it was made.
+    pub centre: f64,
+    /// Length that makes u of order 1 over the points used.
+    pub scale: f64,
+    /// Row k takes the data to the coefficient of u^k.
+    pub map: Matrix,
+    /// Standard deviation of the value at the centre between the models that were averaged.
+    pub model_error: f64,
+    /// Chi-squared of the model with the largest weight; 0 if smooth.
+    pub chi_squared: f64,
+    /// Its degrees of freedom.
+    pub degrees: usize,
+}
+
+/// Why there is no polynomial.
+#[derive(Clone, Debug, PartialEq, Error)]
+#[non_exhaustive]
+pub enum LocalError {
+    /// Fewer than two points.
+    #[error("a local polynomial needs two points; there are {points}")]
+    TooFew {
+        /// Points there are.
+        points: usize,
+    },
+    /// Numbers of places, values and errors differ, places do not increase, or something is not finite.
+    #[error("points must be finite and in increasing order")]
+    Points,
+    /// No model could be fitted.
+    #[error("no polynomial could be fitted")]
+    Fit(#[from] FitError),
+}
+
+impl Local {
+    /// The coefficients for these data.
+    #[must_use]
+    pub fn coefficients(&self, y: &[f64]) -> Vec<f64> {
+        self.map.times(y)
+    }
+
+    /// u of a place.
+    #[must_use]
+    pub fn reduced(&self, x: f64) -> f64 {
+        (x - self.centre) / self.scale
+    }
+}
+
+/// Value and derivative with respect to u of a polynomial with these coefficients.
+#[must_use]
+pub fn value_and_slope(coefficients: &[f64], u: f64) -> (f64, f64) {
+    let (mut value, mut slope) = (0.0, 0.0);
+    for coefficient in coefficients.iter().rev() {
+        slope = slope * u + value;
+        value = value * u + coefficient;
+    }
+    (value, slope)
+}
+
+/// The averaged polynomial near `centre` of points at increasing places.
+///
+/// An error below a tenth of the median error counts as that: a point that happened not to fluctuate must not force the
+/// curve. Cost: about points^2/4 times degrees small fits.
+///
+/// # Errors
+/// Fewer than two points, points not in order or not finite, or no model that can be fitted.
+pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalParams) -> Result<Local, LocalError> {
+    let points = x.len();
+    if points < 2 {
+        return Err(LocalError::TooFew { points });
+    }
+    let finite = |values: &[f64]| values.len() == points && values.iter().all(|value| value.is_finite());
+    if !finite(x) || !finite(y) || !finite(errors) || !centre.is_finite() || x.windows(2).any(|pair| pair[0] >= pair[1])
+    {
+        return Err(LocalError::Points);
+    }
+    let nearest = if params.smooth { 4 } else { params.most_points.max(2) };
+    let (first, last) = window_around(x, centre, nearest);
+    let scale = 0.5 * (x[last - 1] - x[first]);
+    let errors = floored(errors, y);
+    // The interval that holds the centre, or the end nearest to it, belongs to every window.
+    let right = x[first..last].iter().position(|place| *place >= centre).map_or(last - 1, |index| first + index);
+    let right = right.clamp(first + 1, last - 1);
+    let degrees = if params.smooth { last - first - 1..=last - first - 1 } else { 1..=params.most_degree.max(1) };
+    let mut models: Vec<Model> = Vec::new();
+    let mut failure = FitError::TooFew { data: points, parameters: 2 };
+    for degree in degrees {
+        for start in first..right {
+            for end in right + 1..=last {
+                if end - start < degree + 1 || (params.smooth && end - start < last - first) {
+                    continue;
+                }
+                let design =
+                    Matrix::from_fn(end - start, degree + 1, |row, k| power((x[start + row] - centre) / scale, k));
+                match Model::fit(&design, &y[start..end], &errors[start..end], start, last - first) {
+                    Ok(model) => models.push(model),
+                    Err(error) => failure = error,
+                }
+            }
+        }
+    }
+    let Some(best) = models.iter().min_by(|a, b| a.criterion.total_cmp(&b.criterion)) else {
+        return Err(failure.into());
+    };
+    let weights: Vec<f64> = models.iter().map(|model| exp(-0.5 * (model.criterion - best.criterion))).collect();
+    let total = spinledger_numerics::sum::sum(&weights);
+    let most = models.iter().map(|model| model.map.rows()).max().unwrap_or(0);
+    let mut map = Matrix::zeros(most, points);
+    let (mut mean, mut square) = (0.0, 0.0);
+    for (model, weight) in models.iter().zip(&weights) {
+        let weight = weight / total;
+        for k in 0..model.map.rows() {
+            for datum in 0..model.map.columns() {
+                map[(k, model.start + datum)] += weight * model.map[(k, datum)];
+            }
+        }
+        let difference = model.value - best.value;
+        mean += weight * difference;
+        square += weight * difference * difference;
+    }
+    Ok(Local {
+        centre,
+        scale,
+        map,
+        model_error: (square - mean * mean).max(0.0).sqrt(),
+        chi_squared: if params.smooth { 0.0 } else { best.chi_squared },
+        degrees: if params.smooth { 0 } else { best.degrees },
+    })
+}
+
+struct Model {
+    start: usize,
+    map: Matrix,
+    value: f64,
+    chi_squared: f64,
+    degrees: usize,
+    criterion: f64,
+}
+
+impl Model {
+    fn fit(design: &Matrix, y: &[f64], errors: &[f64], start: usize, points: usize) -> Result<Self, FitError> {
+        let map = linear_map(design, Errors::Independent(errors))?;
+        let coefficients = map.times(y);
+        let mut chi_squared = 0.0;
+        for (row, (y, error)) in y.iter().zip(errors).enumerate() {
+            let left = (y - dot(design.row(row), &coefficients)) / error;
+            chi_squared += left * left;
+        }
+        let (used, parameters) = (design.rows(), design.columns());
+        let criterion = chi_squared + 2.0 * (parameters + points - used) as f64;
+        Ok(Self { start, map, value: coefficients[0], chi_squared, degrees: used - parameters, criterion })
+    }
+}
+
+/// The `count` consecutive places nearest to the centre, as a range.
+fn window_around(x: &[f64], centre: f64, count: usize) -> (usize, usize) {
+    let (mut first, mut last) = (0, x.len());
+    while last - first > count {
+        if centre - x[first] > x[last - 1] - centre { first += 1 } else { last -= 1 }
+    }
+    (first, last)
+}
+
+/// Errors with a floor of a tenth of their median, and of 1e-12 of the values.
+fn floored(errors: &[f64], y: &[f64]) -> Vec<f64> {
+    let mut sorted: Vec<f64> = errors.iter().map(|error| error.abs()).collect();
+    sorted.sort_unstable_by(f64::total_cmp);
+    let largest = y.iter().fold(f64::MIN_POSITIVE, |most, value| most.max(value.abs()));
+    let floor = (0.1 * sorted[sorted.len() / 2]).max(1e-12 * largest);
+    errors.iter().map(|error| error.abs().max(floor)).collect()
+}
+
+fn power(u: f64, exponent: usize) -> f64 {
+    (0..exponent).fold(1.0, |value, _| value * u)
+}
