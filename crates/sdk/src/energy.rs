@@ -103,6 +103,12 @@ pub struct Custom<'a> {
     pub(crate) graph: &'a spinledger_abi::SlGraph,
 }
 
+// SAFETY: what the pointers lead to is immutable: the graph is the host's, and a model is, by the rules of the interface, shared
+// between threads and never changed. The callbacks may therefore run on any thread, and on several at once.
+unsafe impl Send for Custom<'_> {}
+// SAFETY: as above.
+unsafe impl Sync for Custom<'_> {}
+
 impl Custom<'_> {
     /// The energy that the model adds, of a whole configuration.
     ///
@@ -132,7 +138,10 @@ impl Custom<'_> {
     /// # Panics
     /// Where the lengths do not fit.
     pub fn delta_vectors(&self, view: &View<'_>, sites: &[u32], vectors: &[f64], changes: &mut [f64]) -> Result<()> {
-        assert!(!sites.is_empty() && vectors.len() % sites.len() == 0 && sites.len() == changes.len(), "lengths fit");
+        assert!(
+            !sites.is_empty() && vectors.len().is_multiple_of(sites.len()) && sites.len() == changes.len(),
+            "lengths fit"
+        );
         crate::view::custom_delta(self, view, sites, vectors.as_ptr().cast(), changes)
     }
 }

@@ -11,6 +11,11 @@ impl Error {
     pub fn new(text: impl Into<String>) -> Self {
         Error(text.into())
     }
+
+    /// What a function returns that stopped because [`crate::Host::cancelled`] asked for it.
+    pub fn cancelled() -> Self {
+        Error("stopped because the run is being stopped".to_owned())
+    }
 }
 
 impl fmt::Display for Error {

@@ -12,12 +12,17 @@
 //! Left to others: loading and checking (`host`), what is computed when (`engine`).
 #![deny(unsafe_op_in_unsafe_fn)]
 
+#[doc(hidden)]
+pub mod border;
 mod build;
 mod energy;
 mod error;
+mod export;
 mod graph;
+mod host;
 mod params;
 mod spec;
+pub mod testing;
 mod traits;
 mod view;
 
@@ -25,10 +30,11 @@ pub use build::{ClassIndex, LatticeBuilder, ModelBuilder};
 pub use energy::{Custom, Energy, Factor, FactorTable};
 pub use error::{Error, Result};
 pub use graph::{Bond, Graph};
+pub use host::Host;
 pub use params::Params;
 pub use spec::{Column, LatticeSpec, ModelSpec, ObservableSpec, Parameter, Trait, UpdateSpec, kinds};
 pub use spinledger_numerics as numerics;
 pub use traits::{
-    ColumnInfo, Host, Lattice, Model, Observable, ObservableInstance, Prepare, Problem, Update, UpdateInstance,
+    ColumnInfo, Lattice, Model, Observable, ObservableInstance, Prepare, Problem, Update, UpdateInstance,
 };
 pub use view::{Spins, Tallies, View};

@@ -2,8 +2,7 @@
 
 pub use crate::energy::Problem;
 use crate::spec::{LatticeSpec, ModelSpec, ObservableSpec, UpdateSpec};
-use crate::{Graph, LatticeBuilder, ModelBuilder, Params, Result, Spins, Tallies, View};
-use spinledger_abi as abi;
+use crate::{Graph, Host, LatticeBuilder, ModelBuilder, Params, Result, Spins, Tallies, View};
 use spinledger_numerics::random::StreamKey;
 
 /// Sites and bonds.
@@ -201,20 +200,4 @@ pub trait ObservableInstance: Send {
     /// # Errors
     /// A message where that fails.
     fn measure(&mut self, views: &[View<'_>], tallies: &[Tallies], values: &mut [f64]) -> Result<()>;
-}
-
-/// What the host offers.
-#[derive(Clone, Copy, Debug)]
-pub struct Host<'a> {
-    pub(crate) raw: Option<&'a abi::SlHost>,
-}
-
-// SAFETY: the host's functions may be called from any thread (its side of the contract), and the struct is only read.
-unsafe impl Send for Host<'_> {}
-// SAFETY: as above.
-unsafe impl Sync for Host<'_> {}
-
-impl Host<'_> {
-    /// A host that offers nothing: logs nowhere, never cancels, loops on the calling thread. For unit tests of plugins.
-    pub const NONE: Host<'static> = Host { raw: None };
 }

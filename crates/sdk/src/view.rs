@@ -150,6 +150,33 @@ pub struct Tallies {
     pub acceptance: Option<(u64, u64)>,
 }
 
+impl Tallies {
+    pub(crate) fn raw(&self) -> abi::SlTallies {
+        let flag = |valid: bool, flag: u32| if valid { flag } else { 0 };
+        let (proposed, accepted) = self.acceptance.unwrap_or((0, 0));
+        abi::SlTallies {
+            size: size_of::<abi::SlTallies>(),
+            valid: flag(self.energy.is_some(), abi::SL_TALLY_ENERGY)
+                | flag(self.magnetisation.is_some(), abi::SL_TALLY_MAGNETISATION)
+                | flag(self.acceptance.is_some(), abi::SL_TALLY_ACCEPTANCE),
+            reserved: 0,
+            energy: self.energy.unwrap_or(0.0),
+            magnetisation: self.magnetisation.unwrap_or([0.0; 3]),
+            proposed,
+            accepted,
+        }
+    }
+
+    pub(crate) fn from_raw(raw: &abi::SlTallies) -> Self {
+        let valid = |flag: u32| raw.valid & flag != 0;
+        Tallies {
+            energy: valid(abi::SL_TALLY_ENERGY).then_some(raw.energy),
+            magnetisation: valid(abi::SL_TALLY_MAGNETISATION).then_some(raw.magnetisation),
+            acceptance: valid(abi::SL_TALLY_ACCEPTANCE).then_some((raw.proposed, raw.accepted)),
+        }
+    }
+}
+
 /// Calls a custom model's `total`.
 pub(crate) fn custom_total(custom: &Custom<'_>, view: &View<'_>) -> Result<f64> {
     let Some(total) = custom.raw.total else { return Err(Error::new("the model has no total energy")) };
