@@ -4,7 +4,9 @@
 mod address;
 mod columns;
 mod expand;
+mod fill;
 mod locate;
+mod merge;
 mod order;
 mod pipeline;
 mod point;

@@ -5,8 +5,11 @@ use crate::yaml::{self, Document, Node};
 use serde::Serialize;
 use spinledger_terms::{Mark, Path, Problem, Segment, Value};
 
-/// Most problems that are shown: each place costs a run of the parser.
+/// Most problems that are shown, and most bytes that are parsed to place them: each place costs a few runs of the parser.
 const MOST: usize = 1000;
+const MOST_BYTES: usize = 50 << 20;
+/// So many are shown of a text of any length.
+pub(crate) const FEW: usize = 20;
 
 /// A problem with its place, as written for machines.
 #[derive(Clone, Debug, PartialEq, Serialize)]
@@ -54,13 +57,14 @@ pub fn locate(source: &Source, problem: &Problem) -> Place {
     Places::new(source).place(&problem.path, problem.mark)
 }
 
-/// Problems with their places, in the order of the text, without repetitions. At most the first thousand.
+/// Problems with their places, in the order of the text, without repetitions: the first thousand, fewer of a text beyond 50 kB.
 ///
 /// Cost: a few runs of the parser for each problem.
 pub fn located(source: &Source, problems: &[Problem]) -> Vec<Located> {
     let places = Places::new(source);
     let mut out: Vec<Located> = Vec::new();
-    for problem in problems.iter().take(MOST) {
+    let most = (MOST_BYTES / source.text().len().max(1)).clamp(FEW, MOST);
+    for problem in problems.iter().take(most) {
         let place = places.place(&problem.path, problem.mark);
         let other = problem.other.as_ref().map(|(path, how)| {
             let Place { line, column, width } = places.place(path, places.telling(path));
@@ -79,8 +83,8 @@ pub fn located(source: &Source, problems: &[Problem]) -> Vec<Located> {
             other,
         };
         // What an anchor holds is found wrong once for each of its aliases.
-        let same = |other: &Located| Located { path: located.path.clone(), ..other.clone() } == located;
-        if !out.iter().any(same) {
+        let telling = |l: &Located| (l.line, l.column, l.message.clone());
+        if !out.iter().any(|o| o.line == located.line && telling(o) == telling(&located)) {
             out.push(located);
         }
     }

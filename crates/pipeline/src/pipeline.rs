@@ -9,6 +9,7 @@ use crate::step::{self, Step};
 use crate::units::Units;
 use crate::yaml::{self, Node};
 use spinledger_terms::{Admission, Field, Kind, Mark, Path, Problem, Value, Vocabulary, admit_fields};
+use std::collections::BTreeSet;
 
 /// The version of the format that is read.
 pub const FORMAT: i64 = 1;
@@ -101,14 +102,10 @@ pub fn read(source: &Source, vocabulary: &Vocabulary) -> Result<Pipeline, Vec<Pr
     if let Some(node @ Node::Map(_)) = document.root.get("steps") {
         steps = read_steps(source, node, vocabulary, &mut problems);
     }
-    let mut unique: Vec<Problem> = Vec::new();
-    for problem in problems {
-        if !unique.contains(&problem) {
-            unique.push(problem);
-        }
-    }
-    if !unique.is_empty() {
-        return Err(unique);
+    if !problems.is_empty() {
+        let mut told = BTreeSet::new();
+        problems.retain(|p| told.insert((p.path.clone(), p.message.clone())));
+        return Err(problems);
     }
     let list = value.get("plugins").and_then(Value::as_list).unwrap_or(&[]);
     Ok(Pipeline {

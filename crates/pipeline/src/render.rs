@@ -1,6 +1,6 @@
 //! Problems as people read them.
 
-use crate::locate::{Located, located};
+use crate::locate::{FEW, Located, located};
 use crate::source::{Lines, Source};
 use spinledger_terms::Problem;
 use std::fmt::Write as _;
@@ -24,8 +24,8 @@ pub fn render(source: &Source, problems: &[Problem]) -> String {
     let lines = Lines::new(source.text());
     let blocks: Vec<String> = located(source, problems).iter().map(|located| block(located, &lines)).collect();
     let mut out = blocks.join("\n");
-    if problems.len() > blocks.len() && blocks.len() >= 1000 {
-        let _ = writeln!(out, "\n{}: and more problems of {} in all", source.name(), problems.len());
+    if problems.len() > blocks.len() && blocks.len() >= FEW {
+        let _ = writeln!(out, "\n{}: {} problems in all, of which these are the first", source.name(), problems.len());
     }
     out
 }
