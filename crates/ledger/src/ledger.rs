@@ -67,6 +67,11 @@ impl Ledger {
         Ok(ledger)
     }
 
+    /// Whether a folder holds a ledger; nothing is made.
+    pub fn is_at(root: &Path) -> bool {
+        root.join("format").is_file()
+    }
+
     /// The ledger's folder.
     pub fn root(&self) -> &Path {
         &self.root
@@ -95,7 +100,7 @@ impl Ledger {
         match self.read_record(key) {
             Ok(record) => {
                 let line = record.line();
-                self.note(&line)?;
+                self.note(&line, false)?;
                 Ok(Some(line))
             }
             Err(LedgerError::Absent { .. } | LedgerError::Damaged { .. }) => Ok(None),
@@ -229,11 +234,12 @@ impl Ledger {
         String::from_utf8(bytes).map_err(|_| LedgerError::damaged(&path, "it is not UTF-8"))
     }
 
-    /// Puts an entry into this process's journal, once.
-    pub(crate) fn note(&self, line: &Line) -> Result<(), LedgerError> {
+    /// Puts an entry into this process's journal; where it is not `fresh` only if this process did not do so before.
+    pub(crate) fn note(&self, line: &Line, fresh: bool) -> Result<(), LedgerError> {
         let mut guard = self.journal.lock().unwrap_or_else(PoisonError::into_inner);
         let (journal, noted) = &mut *guard;
-        if !noted.contains(&line.key) {
+        // A fresh entry of a known key was removed in between, by another process, and its line with it.
+        if fresh || !noted.contains(&line.key) {
             journal.append(&self.writes, line)?;
             noted.insert(line.key);
         }

@@ -142,7 +142,7 @@ impl Ledger {
         for _ in 0..2 {
             let target = self.entry(&record.key);
             if self.writes.publish_folder(&target, &self.temporary(), &files)? {
-                self.note(&record.line())?;
+                self.note(&record.line(), true)?;
                 published.fresh = true;
                 return Ok(published);
             }
@@ -157,7 +157,7 @@ impl Ledger {
     fn compare(&self, key: &Key, published: &mut Published) -> Result<bool, LedgerError> {
         match self.read_record(key) {
             Ok(record) if record.content == published.content => {
-                self.note(&record.line())?;
+                self.note(&record.line(), false)?;
                 Ok(true)
             }
             Ok(record) => {

@@ -45,7 +45,9 @@ fn assert_published(root: &Path) {
 #[test]
 fn an_entry_is_published_once_and_never_changed() {
     let folder = tempfile::tempdir().unwrap();
+    assert!(!Ledger::is_at(folder.path()));
     let ledger = Ledger::open(folder.path()).unwrap();
+    assert!(Ledger::is_at(folder.path()));
     assert_eq!(ledger.lookup(&key()).unwrap(), None);
     let first = ledger.publish(draft(1.0)).unwrap();
     assert!(first.fresh && first.set_aside.is_none());
@@ -227,6 +229,7 @@ fn removed_entries_are_forgotten_while_others_write_on() {
     assert_eq!(keys, BTreeSet::from([Key::of("b"), Key::of("d")]));
     assert_eq!(two.lookup(&Key::of("a")).unwrap(), None);
     assert!(one.publish(named("a")).unwrap().fresh);
+    assert!(two.index().unwrap().get(&Key::of("a")).is_some());
 }
 
 #[test]

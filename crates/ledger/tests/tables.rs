@@ -2,12 +2,13 @@
 
 use proptest::prelude::*;
 use spinledger_ledger::{
-    BLOCK_ROWS, BlockData, ColumnData, Constant, LedgerError, Piece, Writes, assemble, block_columns, content_of_block,
-    content_of_table, file_key, read_block, read_table, write_block, write_table,
+    BLOCK_ROWS, BlockData, ColumnData, Constant, FailAt, LedgerError, Piece, Writes, assemble, block_columns,
+    content_of_block, content_of_table, file_key, read_block, read_table, write_block, write_table,
 };
 use spinledger_terms::{Cells, Column, Key, Table, Value};
 use std::fs;
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
 const KEY: Key = Key([7; 32]);
 
@@ -303,4 +304,27 @@ fn pieces_that_do_not_fit_leave_the_output_alone() {
     refuse(&[twice], vec![piece(&good, 10, 0)]);
     let list = Constant { name: "sizes".into(), unit: String::new(), value: Value::List(vec![]) };
     refuse(&[list], vec![piece(&good, 10, 0)]);
+}
+
+/// Wherever the disk fills up while a file is assembled, the file of before or the new one stands there, and nothing else.
+#[test]
+fn a_full_disk_leaves_the_output_whole() {
+    let blocks = Blocks { folder: tempfile::tempdir().unwrap() };
+    let path = blocks.write("block", &series(0, 1000, 1));
+    let pieces = || (0..4).map(|chain| piece(&path, if chain == 3 { 400 } else { 1000 }, chain));
+    let counter = Arc::new(FailAt::full(usize::MAX));
+    assemble(&Writes::new().with_faults(counter.clone()), &blocks.output(), &KEY, &constants(), pieces()).unwrap();
+    let whole = fs::read(blocks.output()).unwrap();
+    assert!(counter.seen() >= 6, "created, written, forced to the disk, renamed");
+    for at in 0..counter.seen() {
+        for fault in [FailAt::full(at), FailAt::short(at, 100)] {
+            fs::write(blocks.output(), "before").unwrap();
+            let writes = Writes::new().with_faults(Arc::new(fault));
+            let error = assemble(&writes, &blocks.output(), &KEY, &constants(), pieces()).unwrap_err();
+            assert!(error.is_disk_full(), "{error:?}");
+            let found = fs::read(blocks.output()).unwrap();
+            assert!(found == b"before" || (at + 1 == counter.seen() && found == whole), "change {at}");
+            assert_eq!(fs::read_dir(blocks.folder.path()).unwrap().count(), 2, "nothing is left behind");
+        }
+    }
 }
