@@ -1,0 +1,7 @@
+//! The models. Like the standard lattices, this folder is also compiled into the tests of the standard update rules.
+
+mod ising;
+mod potts;
+
+pub(crate) use ising::Ising;
+pub(crate) use potts::Potts;
