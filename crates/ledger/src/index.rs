@@ -19,6 +19,8 @@ pub struct Line {
     pub seconds: f64,
     /// Number of attempted spin updates.
     pub updates: u64,
+    /// Facts of an entry without tables as canonical text, which planning needs without opening its record; mostly empty.
+    pub note: String,
 }
 
 /// A place in a chain.
@@ -117,8 +119,8 @@ impl Index {
 }
 
 /// A total order of lines for one key.
-fn rank(line: &Line) -> (ContentHash, u64, u64, &str, Option<ChainPlace>) {
-    (line.content, line.seconds.to_bits(), line.updates, &line.kind, line.chain)
+fn rank(line: &Line) -> (ContentHash, u64, u64, &str, Option<ChainPlace>, &str) {
+    (line.content, line.seconds.to_bits(), line.updates, &line.kind, line.chain, &line.note)
 }
 
 #[cfg(test)]
@@ -129,6 +131,7 @@ mod tests {
         Line {
             key: Key([key; 32]),
             kind: "block".into(),
+            note: String::new(),
             chain: Some(ChainPlace { chain: Key([9; 32]), block, number: 0, rows }),
             content: ContentHash([key; 32]),
             seconds: 1.0,

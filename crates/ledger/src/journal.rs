@@ -1,7 +1,8 @@
 //! Journals: the ledger's index as files, one for each process that publishes, one line for each entry.
 //!
 //! A line is a JSON object: `k` key, `t` kind, `c` content, `s` seconds, `u` updates (absent when 0), `g` place in a chain as
-//! `[chain, block, number, rows]` (absent for others), and last `x`, the first eight digits of the BLAKE3 of the line's bytes
+//! `[chain, block, number, rows]` (absent for others), `n` note
+//! (absent when empty), and last `x`, the first eight digits of the BLAKE3 of the line's bytes
 //! before `,"x"`: a flipped digit in a content would otherwise pass into keys.
 
 use crate::error::{LedgerError, WriteError};
@@ -27,6 +28,9 @@ pub(crate) fn text_of(line: &Line) -> String {
     if let Some(ChainPlace { chain, block, number, rows }) = line.chain {
         let _ = write!(text, ",\"g\":[\"{chain}\",{block},{number},{rows}]");
     }
+    if !line.note.is_empty() {
+        let _ = write!(text, ",\"n\":{}", quoted(&line.note));
+    }
     let check = check(text.as_bytes());
     let _ = write!(text, ",\"x\":\"{check}\"}}");
     text
@@ -44,6 +48,8 @@ struct Raw<'a> {
     u: u64,
     #[serde(borrow, default)]
     g: Option<(&'a str, u32, u32, u64)>,
+    #[serde(default)]
+    n: String,
 }
 
 /// The line of a text; None where it is torn or damaged.
@@ -66,6 +72,7 @@ pub(crate) fn line_of(text: &[u8]) -> Option<Line> {
         content: raw.c.parse().ok()?,
         seconds: raw.s,
         updates: raw.u,
+        note: raw.n,
     })
 }
 
@@ -179,8 +186,8 @@ mod tests {
 
     fn any_line() -> impl Strategy<Value = Line> {
         let place = proptest::option::of((0u8..3, 0u32..4, 0u32..3, any::<u64>()));
-        (any::<u8>(), "[a-z\"\\\\é]{0,8}", any::<u8>(), 0.0..1e9, any::<u64>(), place).prop_map(
-            |(key, kind, content, seconds, updates, place)| Line {
+        (any::<u8>(), "[a-z\"\\\\é]{0,8}", any::<u8>(), 0.0..1e9, any::<u64>(), place, "[a-z\"{}]{0,8}").prop_map(
+            |(key, kind, content, seconds, updates, place, note)| Line {
                 key: Key([key; 32]),
                 kind,
                 chain: place.map(|(chain, block, number, rows)| ChainPlace {
@@ -192,6 +199,7 @@ mod tests {
                 content: ContentHash([content; 32]),
                 seconds,
                 updates,
+                note,
             },
         )
     }
@@ -222,7 +230,7 @@ mod tests {
         #[test]
         fn torn_lines_are_ignored(count in 1usize..5, cut in 0usize..1000) {
             let lines: Vec<Line> = (0..count).map(|i| Line {
-                key: Key([i as u8; 32]), kind: "averages".into(), chain: None, content: ContentHash([0; 32]), seconds: 0.5, updates: 0,
+                key: Key([i as u8; 32]), kind: "averages".into(), chain: None, content: ContentHash([0; 32]), seconds: 0.5, updates: 0, note: String::new(),
             }).collect();
             let text: String = lines.iter().map(|l| text_of(l) + "\n").collect();
             let cut = cut.min(text.len());
@@ -237,7 +245,7 @@ mod tests {
         /// No flipped byte passes.
         #[test]
         fn a_damaged_line_is_a_warning(place in any::<prop::sample::Index>(), with in any::<u8>()) {
-            let line = Line { key: Key([1; 32]), kind: "averages".into(), chain: None, content: ContentHash([2; 32]), seconds: 0.5, updates: 7 };
+            let line = Line { key: Key([1; 32]), kind: "averages".into(), chain: None, content: ContentHash([2; 32]), seconds: 0.5, updates: 7, note: "{\"a\":1}".into() };
             let good = text_of(&line);
             let mut bytes = good.clone().into_bytes();
             let place = place.index(bytes.len());

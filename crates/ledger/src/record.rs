@@ -79,8 +79,15 @@ pub struct Provenance {
     /// BLAKE3 of the pipeline's text, under which the ledger keeps it.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub pipeline: Option<ContentHash>,
+    /// Facts about the content that only its maker knows: number of sites, meaning of columns ...
+    #[serde(skip_serializing_if = "is_null")]
+    pub facts: Value,
     /// What else should be known: warnings, refusals to continue a saved state ...
     pub notes: Vec<String>,
+}
+
+fn is_null(value: &Value) -> bool {
+    *value == Value::Null
 }
 
 impl Default for Provenance {
@@ -90,6 +97,7 @@ impl Default for Provenance {
             seed: None,
             streams: None,
             plugins: Vec::new(),
+            facts: Value::Null,
             inputs: Vec::new(),
             program: Program::default(),
             processor: Processor::default(),
@@ -157,6 +165,11 @@ impl Record {
             content: self.content,
             seconds: self.provenance.seconds,
             updates: self.provenance.updates,
+            // Other entries' facts are read with their records: lines are kept short, since there is one for every block.
+            note: match &self.provenance.facts {
+                facts if self.tables.is_empty() && *facts != Value::Null => facts.canonical(),
+                _ => String::new(),
+            },
         }
     }
 
