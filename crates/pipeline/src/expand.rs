@@ -89,9 +89,9 @@ impl Step {
         let mut merge = Merge::new(self);
         let mut points = Vec::new();
         for group in drafts.chunk_by(|a, b| by_columns(a, b).is_eq()) {
-            let changes = merge.group(group);
+            let (block, changes) = merge.group(group);
             let cells = order.iter().map(|c| (columns[*c].name.clone(), group[0].cells[*c].clone())).collect();
-            points.push(Point::new(self.path.clone(), self.scan[group[0].block].base.clone(), changes, cells));
+            points.push(Point::new(self.path.clone(), self.scan[block].base.clone(), changes, cells));
         }
         if merge.problems.is_empty() { Ok(Expansion::Points(points)) } else { Err(merge.problems) }
     }

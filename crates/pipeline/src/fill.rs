@@ -63,7 +63,7 @@ impl Fill<'_> {
             if let AxisValues::FromStep(from) = &axis.values {
                 let mut next = Vec::new();
                 for p in partial {
-                    if let Some(values) = self.from_step(axis, from, &p, waits, problems) {
+                    if let Some(values) = self.table_values(axis, from, &p, waits, problems) {
                         next.extend(extend(p, i, &values));
                     }
                     if next.len() + drafts.len() > MOST_POINTS {
@@ -125,7 +125,7 @@ impl Fill<'_> {
         cell(value, kind, self.vocabulary)
     }
 
-    fn from_step(
+    fn table_values(
         &self,
         axis: &Axis,
         from: &FromStep,

@@ -14,8 +14,8 @@ pub(crate) struct Merge<'a> {
     loose: BTreeMap<Vec<String>, bool>,
     pub(crate) problems: Vec<Problem>,
     told: BTreeSet<(Vec<String>, usize, usize)>,
-    /// The addresses of each block's axes, shared by its points.
-    shared: Vec<Vec<Arc<[String]>>>,
+    /// The addresses and places of each block's axes, shared by its points.
+    shared: Vec<Vec<(Arc<[String]>, Arc<Path>)>>,
 }
 
 impl<'a> Merge<'a> {
@@ -24,33 +24,38 @@ impl<'a> Merge<'a> {
         let loose = step.scan.iter().flat_map(|block| &block.axes).map(|axis| (axis.path(), axis.address.clone()));
         let loose = loose.filter(|(path, _)| scan.no_column.contains(path));
         let loose = loose.map(|(path, address)| (address, scan.larger.contains(&path))).collect();
-        let shared =
-            step.scan.iter().map(|b| b.axes.iter().map(|axis| axis.address.clone().into()).collect()).collect();
+        let shared = step
+            .scan
+            .iter()
+            .map(|b| b.axes.iter().map(|axis| (axis.address.clone().into(), axis.place.clone().into())).collect())
+            .collect();
         Merge { step, loose, problems: Vec::new(), told: BTreeSet::new(), shared }
     }
 
-    /// The changes of the point that a group of drafts with equal columns is.
-    pub(crate) fn group(&mut self, group: &[Draft]) -> Vec<Change> {
-        let first = &group[0];
+    /// The block and the changes of the point that a group of drafts with equal columns is.
+    pub(crate) fn group(&mut self, group: &[Draft]) -> (usize, Vec<Change>) {
+        // Of `8` and `[8, 8]`, the same by columns, the number stands for both, whichever is named first.
+        let lists = |draft: &&Draft| draft.values.iter().filter(|(v, _)| matches!(v, Value::List(_))).count();
+        let Some(first) = group.iter().min_by_key(lists) else { return (0, Vec::new()) };
         let block = &self.step.scan[first.block];
         let mut changes: Vec<Change> = block
             .axes
             .iter()
             .zip(&first.values)
             .zip(&self.shared[first.block])
-            .map(|((axis, (value, number)), address)| Change {
+            .map(|((axis, (value, number)), (address, place))| Change {
                 address: address.clone(),
                 value: value.clone(),
-                place: axis.place.clone(),
+                place: place.clone(),
                 element: axis.each.then_some(*number),
             })
             .collect();
         if group.len() == 1 {
-            return changes;
+            return (first.block, changes);
         }
         for (address, larger) in self.loose.clone() {
             let mut best = self.loose(first, &address);
-            for other in &group[1..] {
+            for other in group {
                 let new = self.loose(other, &address);
                 if new.value == best.value {
                     continue;
@@ -64,9 +69,9 @@ impl<'a> Merge<'a> {
             }
             let Loose { value: Some(value), place, element } = best else { continue };
             changes.retain(|c| *c.address != *address);
-            changes.push(Change { address: address.into(), value, place, element });
+            changes.push(Change { address: address.into(), value, place: place.into(), element });
         }
-        changes
+        (first.block, changes)
     }
 
     /// The value of a draft at an address.

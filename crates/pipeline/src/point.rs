@@ -19,7 +19,8 @@ pub struct Point {
 pub(crate) struct Change {
     pub(crate) address: Arc<[String]>,
     pub(crate) value: Value,
-    pub(crate) place: Path,
+    /// The place of the axis, shared by the points of its block.
+    pub(crate) place: Arc<Path>,
     /// Its number, where it is an element of a list in the text.
     pub(crate) element: Option<usize>,
 }
@@ -72,7 +73,7 @@ impl Point {
             };
             let place = match change.element {
                 Some(index) => change.place.index(index),
-                None => change.place.clone(),
+                None => Path::clone(&change.place),
             };
             return rest.map_or(place.clone(), |rest| place.dotted(rest));
         }

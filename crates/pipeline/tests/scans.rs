@@ -124,6 +124,9 @@ fn sizes_by_direction() {
         ["size=\"12x8\" size_x=12 size_y=8", "size=\"6x6\" size_x=6 size_y=6"]
     );
     assert_eq!(rows("{ lattice.size: [[6, 6], 6] }"), ["size=\"6x6\" size_x=6 size_y=6"]);
+    for scan in ["{ lattice.size: [[6, 6], 6] }", "[{ lattice.size: 6 }, { lattice.size: [[6, 6]] }]"] {
+        assert_eq!(points(&with_scan(scan))[0].get("lattice.size"), Some(Value::Integer(6)));
+    }
     assert_eq!(rows("{ lattice.size: [8, 12] }"), ["size=8", "size=12"]);
     let cubic = with_scan("{ lattice.size: [[2, 3, 4]] }").replace("square", "cubic");
     assert_eq!(row(&points(&cubic)[0]), "size=\"2x3x4\" size_x=2 size_y=3 size_z=4");
@@ -292,5 +295,4 @@ fn large_scans_are_quick() {
     assert_eq!(points.len(), 10_000);
     assert!(bodies > 1_000_000);
     assert!(time.as_secs_f64() < 5.0, "{time:?}");
-    println!("{time:?}");
 }

@@ -6,6 +6,8 @@
 
 mod place;
 mod read;
+#[cfg(test)]
+mod tests;
 
 use spinledger_terms::{Mark, Path, Segment, Value};
 use std::collections::BTreeMap;

@@ -11,8 +11,9 @@ use std::fmt;
 /// Most nodes after aliases are expanded.
 const MOST_NODES: usize = 1_000_000;
 
-/// Most mistakes that are placed, each at the cost of a run of the parser: a file with more is not a pipeline.
+/// Most mistakes that are placed, and most bytes parsed for that: each place costs a run of the parser.
 const MOST_SLIPS: usize = 200;
+const MOST_BYTES: usize = 20 << 20;
 
 /// The tree of a text, if there is one, and what is wrong with its YAML. Repeated keys, keys that are not text, and tags leave a
 /// tree: the rest of it can still be checked.
@@ -39,7 +40,8 @@ pub(crate) fn read(text: &str) -> (Option<Document>, Vec<Problem>) {
             vec![Problem::at_value(&lines.path(place), message).expected("nothing after the first document")],
         );
     }
-    for slip in reading.slips.into_inner().into_iter().take(MOST_SLIPS) {
+    let most = (MOST_BYTES / text.len().max(1)).clamp(1, MOST_SLIPS);
+    for slip in reading.slips.into_inner().into_iter().take(most) {
         let at = |route: &[usize], mark| lines.path(offset(text, route, mark).unwrap_or(0));
         let mut problem = Problem::at_value(&at(&slip.route, slip.mark), slip.message);
         if let Some(expected) = slip.expected {
@@ -262,7 +264,7 @@ fn broken(error: &serde_yaml::Error, reading: &Reading, text: &str, lines: &Line
     let words = error.to_string();
     if reading.nodes.get() > MOST_NODES || words.starts_with("repetition limit") {
         let place = alias_on_the_way(text, &reading.route.borrow());
-        let message = "aliases of aliases expand to too many values here";
+        let message = "too many values here, counting aliases as often as they are used";
         let problem = Problem::at_value(&lines.path(place), message);
         return problem.expected("at most a million values in all");
     }
