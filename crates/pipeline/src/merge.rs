@@ -7,6 +7,9 @@ use spinledger_terms::{Path, Problem, Value};
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
+/// Address and place of an axis.
+type Shared = (Arc<[String]>, Arc<Path>);
+
 /// Makes one point of several with equal columns.
 pub(crate) struct Merge<'a> {
     step: &'a Step,
@@ -15,7 +18,7 @@ pub(crate) struct Merge<'a> {
     pub(crate) problems: Vec<Problem>,
     told: BTreeSet<(Vec<String>, usize, usize)>,
     /// The addresses and places of each block's axes, shared by its points.
-    shared: Vec<Vec<(Arc<[String]>, Arc<Path>)>>,
+    shared: Vec<Vec<Shared>>,
 }
 
 impl<'a> Merge<'a> {
