@@ -179,6 +179,9 @@ fn sums_of_every_length() {
 }
 
 proptest! {
+    // Failing inputs are printed; a file of them would be written beside the sources.
+    #![proptest_config(ProptestConfig { failure_persistence: None, ..ProptestConfig::default() })]
+
     #[test]
     fn sum_is_accurate(values in proptest::collection::vec(-1e6..1e6f64, 0..5000)) {
         // Exact by integers: the values are rounded to multiples of 2^-20 first.

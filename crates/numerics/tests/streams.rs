@@ -165,6 +165,9 @@ fn thresholds_at_their_ends() {
 }
 
 proptest! {
+    // Failing inputs are printed; a file of them would be written beside the sources.
+    #![proptest_config(ProptestConfig { failure_persistence: None, ..ProptestConfig::default() })]
+
     #[test]
     fn any_way_of_drawing_reads_one_stream(draws in proptest::collection::vec((0..5u8, 0..30usize), 0..20)) {
         let root = key("mixed");

@@ -16,7 +16,7 @@ use crate::matrix::{Matrix, dot};
 /// How [`local`] works.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct LocalParams {
-    /// Highest degree tried: 4.
+    /// Highest degree tried: 5.
     pub most_degree: usize,
     /// Nearest points used at most: 24.
     pub most_points: usize,
@@ -27,7 +27,7 @@ pub struct LocalParams {
 
 impl Default for LocalParams {
     fn default() -> Self {
-        Self { most_degree: 4, most_points: 24, smooth: false }
+        Self { most_degree: 5, most_points: 24, smooth: false }
     }
 }
 
@@ -41,7 +41,8 @@ pub struct Local {
     pub scale: f64,
     /// Row k takes the data to the coefficient of u^k.
     pub map: Matrix,
-    /// Standard deviation of the value at the centre between the models that were averaged.
+    /// Standard deviation of the value at the centre between the models that were averaged, beyond what the errors of
+    /// the data explain.
     pub model_error: f64,
     /// Chi-squared of the model with the largest weight; 0 if smooth.
     pub chi_squared: f64,
@@ -117,12 +118,19 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
     let right = x[first..last].iter().position(|place| *place >= centre).map_or(last - 1, |index| first + index);
     let right = right.clamp(first + 1, last - 1);
     let degrees = if params.smooth { last - first - 1..=last - first - 1 } else { 1..=params.most_degree.max(1) };
+    // A polynomial through as many points as it has coefficients fits whatever it is: a straight line through two
+    // points would weigh as much as a cubic through four. Only allowed where there is nothing better.
+    let interpolate = params.smooth || last - first < 4;
     let mut models: Vec<Model> = Vec::new();
     let mut failure = FitError::TooFew { data: points, parameters: 2 };
     for degree in degrees {
         for start in first..right {
             for end in right + 1..=last {
-                if end - start < degree + 1 || (params.smooth && end - start < last - first) {
+                let untested = end - start == degree + 1;
+                if end - start < degree + 1
+                    || (untested && !interpolate)
+                    || (params.smooth && end - start < last - first)
+                {
                     continue;
                 }
                 let design =
@@ -141,7 +149,6 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
     let total = spinledger_numerics::sum::sum(&weights);
     let most = models.iter().map(|model| model.map.rows()).max().unwrap_or(0);
     let mut map = Matrix::zeros(most, points);
-    let (mut mean, mut square) = (0.0, 0.0);
     for (model, weight) in models.iter().zip(&weights) {
         let weight = weight / total;
         for k in 0..model.map.rows() {
@@ -149,15 +156,25 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
                 map[(k, model.start + datum)] += weight * model.map[(k, datum)];
             }
         }
-        let difference = model.value - best.value;
-        mean += weight * difference;
-        square += weight * difference * difference;
+    }
+    // Models differ because the data fluctuate, too. That part is in the errors of the data already and is taken off.
+    let average = dot(map.row(0), y);
+    let mut square = 0.0;
+    for (model, weight) in models.iter().zip(&weights) {
+        let difference = model.value - average;
+        let mut expected = 0.0;
+        for datum in 0..points {
+            let used = datum.checked_sub(model.start).filter(|index| *index < model.map.columns());
+            let pull = (used.map_or(0.0, |index| model.map[(0, index)]) - map[(0, datum)]) * errors[datum];
+            expected += pull * pull;
+        }
+        square += weight / total * (difference * difference - expected);
     }
     Ok(Local {
         centre,
         scale,
         map,
-        model_error: (square - mean * mean).max(0.0).sqrt(),
+        model_error: square.max(0.0).sqrt(),
         chi_squared: if params.smooth { 0.0 } else { best.chi_squared },
         degrees: if params.smooth { 0 } else { best.degrees },
     })
