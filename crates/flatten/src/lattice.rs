@@ -38,17 +38,25 @@ impl LatticeParts {
         self.free
     }
 
+    /// A number of directions that a lattice may have.
+    ///
+    /// # Errors
+    /// Other than 1 to 16.
+    pub fn checked_dimension(dimension: usize) -> Result<usize> {
+        ensure!(
+            (1..=MOST_DIRECTIONS).contains(&dimension),
+            "a lattice has 1 to {MOST_DIRECTIONS} directions, not {dimension}"
+        );
+        Ok(dimension)
+    }
+
     /// Primitive vectors (a row each), unit cells per direction, and whether each is periodic.
     ///
     /// # Errors
     /// Called twice, lengths that do not fit, a direction without cells, components that are not finite.
     pub fn geometry(&mut self, vectors: &[f64], cells: &[i64], periodic: &[bool]) -> Result<()> {
-        let dimension = cells.len();
         ensure!(self.dimension == 0, "the geometry is given twice");
-        ensure!(
-            (1..=MOST_DIRECTIONS).contains(&dimension),
-            "a lattice has 1 to {MOST_DIRECTIONS} directions, not {dimension}"
-        );
+        let dimension = Self::checked_dimension(cells.len())?;
         ensure!(
             vectors.len() == dimension * dimension && periodic.len() == dimension,
             "the geometry does not have {dimension} directions throughout"

@@ -66,6 +66,24 @@ impl ModelParts {
         self.energy.custom
     }
 
+    /// A number of states that a discrete spin may have.
+    ///
+    /// # Errors
+    /// Other than 2 to 256.
+    pub fn checked_states(states: u32) -> Result<usize> {
+        ensure!((2..=256).contains(&states), "a discrete spin has 2 to 256 states, not {states}");
+        Ok(states as usize)
+    }
+
+    /// A number of components that a vector spin may have.
+    ///
+    /// # Errors
+    /// Other than 2 or 3.
+    pub fn checked_components(components: u32) -> Result<usize> {
+        ensure!(matches!(components, 2 | 3), "a vector spin has 2 or 3 components, not {components}");
+        Ok(components as usize)
+    }
+
     /// Discrete spins. `up` and `down` are the states of pinned sites, equal to `states` where there are none.
     ///
     /// # Errors
@@ -79,8 +97,7 @@ impl ModelParts {
         down: u32,
     ) -> Result<()> {
         self.ensure_first()?;
-        ensure!((2..=256).contains(&states), "a discrete spin has 2 to 256 states, not {states}");
-        let q = states as usize;
+        let q = Self::checked_states(states)?;
         if let Some(values) = values {
             ensure!(values.len() == q, "there are {} spin values for {q} states", values.len());
             ensure!(values.iter().all(|x| x.is_finite()), "a spin value is not finite");
@@ -111,7 +128,7 @@ impl ModelParts {
     /// Called twice; other than 2 or 3 components; a vector that is not of unit length within 1e-12.
     pub fn vectors(&mut self, up: &[f64]) -> Result<()> {
         self.ensure_first()?;
-        ensure!(matches!(up.len(), 2 | 3), "a vector spin has 2 or 3 components, not {}", up.len());
+        Self::checked_components(up.len() as u32)?;
         let square: f64 = up.iter().map(|x| x * x).sum();
         ensure!((square - 1.0).abs() <= 2e-12, "the vector of sites pinned up is not of unit length");
         self.energy.components = up.len();

@@ -8,7 +8,8 @@ use std::fmt;
 pub struct Unsound(String);
 
 impl Unsound {
-    pub(crate) fn new(what: impl Into<String>) -> Self {
+    /// From a sentence.
+    pub fn new(what: impl Into<String>) -> Self {
         Unsound(what.into())
     }
 }
