@@ -25,6 +25,10 @@ pub fn admit(kind: &Kind, raw: &Value, path: &Path, admission: &mut Admission<'_
             }
             Some(raw.clone())
         }
+        // People write 1e6 where a whole number stands: a whole double that is exact is taken as one.
+        (Kind::Integer { .. }, Value::Number(x)) if x.fract() == 0.0 && x.abs() <= 9_007_199_254_740_992.0 => {
+            admit(kind, &Value::Integer(*x as i64), path, admission)
+        }
         (Kind::Boolean {}, Value::Bool(_)) | (Kind::Text {}, Value::Text(_)) => Some(raw.clone()),
         (Kind::Step {}, Value::Text(name)) => {
             admission.references.push((path.clone(), name.clone()));
@@ -297,7 +301,8 @@ mod tests {
     #[test]
     fn numbers_are_canonical_by_declared_type() {
         assert_eq!(run(&Kind::NUMBER, Value::Integer(1)).0, Some(Value::Number(1.0)));
-        assert_eq!(run(&Kind::COUNT, Value::Number(1.0)).1.len(), 1);
+        assert_eq!(run(&Kind::COUNT, Value::Number(1e6)).0, Some(Value::Integer(1_000_000)));
+        assert_eq!(run(&Kind::COUNT, Value::Number(1.5)).1.len(), 1);
         assert_eq!(run(&Kind::POSITIVE, Value::Integer(0)).1[0].expected.as_deref(), Some("a number above 0"));
         assert_eq!(run(&Kind::NUMBER, Value::Number(f64::NAN)).1.len(), 1);
         assert_eq!(run(&Kind::NUMBER, Value::Number(-0.0)).0.unwrap().canonical(), "0.0");

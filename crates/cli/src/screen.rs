@@ -1,0 +1,123 @@
+//! The one object that prints. A closed pipe ends the printing, not the run.
+
+use std::io::{IsTerminal, Write};
+use std::time::{Duration, Instant};
+
+/// How often the line at the bottom of a terminal is drawn.
+const DRAW_EVERY: Duration = Duration::from_millis(150);
+/// How often a line is printed where there is no terminal.
+const LINE_EVERY: Duration = Duration::from_secs(15);
+
+/// What is shown, and how.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Style {
+    /// For a person.
+    Person,
+    /// Nothing but what went wrong.
+    Quiet,
+    /// JSON lines.
+    Json,
+}
+
+/// The screen.
+pub(crate) struct Screen {
+    style: Style,
+    terminal: bool,
+    colour: bool,
+    drawn: usize,
+    last: Instant,
+}
+
+impl Screen {
+    /// On standard output.
+    pub(crate) fn new(style: Style) -> Self {
+        let terminal = std::io::stdout().is_terminal();
+        let plain = std::env::var_os("NO_COLOR").is_some_and(|v| !v.is_empty());
+        let last = Instant::now();
+        Screen { style, terminal, colour: terminal && !plain, drawn: 0, last }
+    }
+
+    /// Whether JSON lines are wanted.
+    pub(crate) fn is_json(&self) -> bool {
+        self.style == Style::Json
+    }
+
+    /// A line for a person.
+    pub(crate) fn line(&mut self, text: &str) {
+        if self.style == Style::Person {
+            self.clear();
+            put(&format!("{text}\n"));
+        }
+    }
+
+    /// An event for a program.
+    pub(crate) fn event(&mut self, event: &serde_json::Value) {
+        if self.style == Style::Json {
+            put(&format!("{event}\n"));
+        }
+    }
+
+    /// Something that went wrong: for a person, in any style, on standard error.
+    pub(crate) fn trouble(&mut self, text: &str) {
+        self.clear();
+        complain(text);
+    }
+
+    /// The line at the bottom of a terminal; without a terminal a plain line now and then. `text` is made only when it is shown.
+    pub(crate) fn bottom(&mut self, text: impl FnOnce() -> String) {
+        if self.style != Style::Person {
+            return;
+        }
+        let every = if self.terminal { DRAW_EVERY } else { LINE_EVERY };
+        if self.last.elapsed() < every {
+            return;
+        }
+        self.last = Instant::now();
+        let text = text();
+        if self.terminal {
+            let text: String = text.chars().take(width().saturating_sub(1)).collect();
+            self.clear();
+            self.drawn = text.chars().count();
+            put(&text);
+        } else {
+            put(&format!("{text}\n"));
+        }
+    }
+
+    /// Marks text as good, bad or doubtful, where the terminal has colours; the words say it too.
+    pub(crate) fn tint(&self, text: &str, code: &str) -> String {
+        if self.colour { format!("\x1b[{code}m{text}\x1b[0m") } else { text.to_owned() }
+    }
+
+    fn clear(&mut self) {
+        if self.drawn > 0 {
+            put(&format!("\r{}\r", " ".repeat(self.drawn)));
+            self.drawn = 0;
+        }
+    }
+}
+
+impl Drop for Screen {
+    fn drop(&mut self) {
+        self.clear();
+    }
+}
+
+/// Columns of the terminal; 80 where there is none.
+pub(crate) fn width() -> usize {
+    let size = rustix::termios::tcgetwinsize(rustix::stdio::stdout());
+    size.ok().map(|s| usize::from(s.ws_col)).filter(|w| *w >= 20).unwrap_or(80)
+}
+
+/// Prints on standard output.
+pub(crate) fn put(text: &str) {
+    let mut out = std::io::stdout().lock();
+    // What cannot be written has no reader: nothing is lost but the text.
+    let _ = out.write_all(text.as_bytes()).and_then(|()| out.flush());
+}
+
+/// Prints on standard error.
+pub(crate) fn complain(text: &str) {
+    let mut out = std::io::stderr().lock();
+    let _ = writeln!(out, "{text}");
+}

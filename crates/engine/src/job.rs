@@ -1,0 +1,263 @@
+//! What the runner and its workers say to each other: JSON, a line each.
+
+use serde::{Deserialize, Serialize};
+use spinledger_plan::sample::{Group, Piece, Point};
+use spinledger_terms::{ColumnSpec, ContentHash, Key, Value};
+
+/// From the runner to a worker.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Order {
+    /// Do this.
+    Work(Box<Job>),
+    /// Save what can be saved and leave.
+    Stop,
+}
+
+/// One piece of work.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Job {
+    /// Sample the chains of a group.
+    Sample(Box<SampleJob>),
+    /// Close a point whose chains are complete: publish its series.
+    Close(CloseJob),
+    /// Compute an analysis parcel.
+    Analyse(AnalyseJob),
+}
+
+/// Sample the chains of a group up to a number of rows.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct SampleJob {
+    /// The point, with this one group.
+    pub point: Point,
+    /// Hash of the pipeline's text.
+    pub pipeline: Option<ContentHash>,
+}
+
+impl SampleJob {
+    /// The group to be sampled.
+    ///
+    /// # Panics
+    /// Where the point has no group; jobs are made with one.
+    pub fn group(&self) -> &Group {
+        &self.point.groups[0]
+    }
+}
+
+/// Publish the series of a point, and write its file.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct CloseJob {
+    /// Preimage of the series' key.
+    pub preimage: String,
+    /// Whether the series is not on record yet.
+    pub publish: bool,
+    /// The blocks.
+    pub pieces: Vec<Piece>,
+    /// Start configurations, in order.
+    pub starts: Vec<String>,
+    /// The file to write, if any.
+    pub layout: Option<Layout>,
+    /// Parameters for the record.
+    pub parameters: Value,
+    /// Hash of the pipeline's text.
+    pub pipeline: Option<ContentHash>,
+}
+
+/// A file of a series.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct Layout {
+    /// Where.
+    pub path: std::path::PathBuf,
+    /// Constant columns before `sites`: name, unit, value.
+    pub columns: Vec<(String, String, Value)>,
+}
+
+/// A series, as an analysis sees it.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct SeriesInput {
+    /// What it serves as.
+    pub role: String,
+    /// Its entry.
+    pub key: Key,
+    /// Its content.
+    pub content: ContentHash,
+    /// The scan columns of its point.
+    pub columns: Vec<(String, Value)>,
+    /// Facts that are not in its content.
+    pub facts: SeriesFacts,
+    /// The blocks.
+    pub pieces: Vec<Piece>,
+}
+
+/// What an analysis must know of a series beside its numbers.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SeriesFacts {
+    /// Free sites.
+    pub sites: u64,
+    /// Temperature in the pipeline's unit; None where infinite.
+    pub temperature: Option<f64>,
+    /// k_B T in energy units; None where infinite.
+    pub thermal_energy: Option<f64>,
+    /// Name of the energy unit.
+    pub energy_unit: String,
+    /// Name of the temperature unit.
+    pub temperature_unit: String,
+    /// Sweeps between rows.
+    pub every: u64,
+    /// Whether nothing was discarded before recording.
+    pub from_start: bool,
+    /// Start configurations, in order.
+    pub starts: Vec<String>,
+    /// The columns of the observables.
+    pub observed: Vec<ColumnSpec>,
+}
+
+/// What a `series` entry notes in the journal: facts that only a loaded lattice and observable know.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SeriesNote {
+    /// Free sites.
+    pub sites: u64,
+    /// The columns of the observables.
+    pub observed: Vec<ColumnSpec>,
+}
+
+/// A table, as an analysis sees it.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct TableInput {
+    /// What it serves as.
+    pub role: String,
+    /// Its entry.
+    pub key: Key,
+    /// The content of the entry.
+    pub content: ContentHash,
+}
+
+/// Compute an analysis parcel.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct AnalyseJob {
+    /// The step kind.
+    pub does: String,
+    /// Preimage of its key.
+    pub preimage: String,
+    /// Parameters without names of steps.
+    pub parameters: Value,
+    /// Series to read.
+    pub series: Vec<SeriesInput>,
+    /// Tables to read.
+    pub tables: Vec<TableInput>,
+    /// Hash of the pipeline's text.
+    pub pipeline: Option<ContentHash>,
+}
+
+/// From a worker to the runner.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Report {
+    /// The work goes on: attempted spin updates since the last report.
+    Progress {
+        /// Attempted spin updates since the last report.
+        updates: u64,
+    },
+    /// Something to be told.
+    Log {
+        /// The text.
+        text: String,
+    },
+    /// Done. The journal lines of everything published or found.
+    Done {
+        /// Whether anything was computed here; false where another run had done it all.
+        computed: bool,
+        /// Attempted spin updates since the last report.
+        updates: u64,
+        /// What is now on record, as lines of the journal.
+        entries: Vec<Entry>,
+    },
+    /// Another live process works on it.
+    Held {
+        /// Who.
+        by: String,
+    },
+    /// It cannot be done.
+    Broken {
+        /// Why.
+        message: String,
+    },
+    /// Stopped because the runner asked; what was done is on record.
+    Stopped {
+        /// What is now on record.
+        entries: Vec<Entry>,
+    },
+}
+
+/// A journal line, for the wire.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct Entry {
+    /// The entry.
+    pub key: Key,
+    /// Its kind.
+    pub kind: String,
+    /// Its place in a chain.
+    pub chain: Option<spinledger_ledger::ChainPlace>,
+    /// Its content.
+    pub content: ContentHash,
+    /// Seconds that it took.
+    pub seconds: f64,
+    /// Attempted spin updates.
+    pub updates: u64,
+    /// The note of its line.
+    pub note: String,
+}
+
+impl Entry {
+    /// From a line of the journal.
+    pub fn of(line: &spinledger_ledger::Line) -> Self {
+        Entry {
+            key: line.key,
+            kind: line.kind.to_string(),
+            chain: line.chain,
+            content: line.content,
+            seconds: line.seconds,
+            updates: line.updates,
+            note: line.note.to_string(),
+        }
+    }
+}
+
+impl SeriesNote {
+    /// As a value, for records and journals.
+    pub fn to_value(&self) -> Value {
+        let column = |c: &ColumnSpec| {
+            Value::map([
+                ("name", Value::text(&c.name)),
+                ("unit", Value::text(&c.unit)),
+                ("invariant", Value::Bool(c.invariant)),
+                ("about", Value::text(&c.about)),
+            ])
+        };
+        Value::map([
+            ("sites", Value::Integer(self.sites as i64)),
+            ("observed", Value::List(self.observed.iter().map(column).collect())),
+        ])
+    }
+
+    /// From a value; None where it is something else.
+    pub fn from_value(value: &Value) -> Option<Self> {
+        let text = |v: &Value, name: &str| Some(v.get(name)?.as_str()?.to_owned());
+        let column = |c: &Value| {
+            Some(ColumnSpec {
+                name: text(c, "name")?,
+                unit: text(c, "unit")?,
+                invariant: c.get("invariant")?.as_bool()?,
+                about: text(c, "about")?,
+            })
+        };
+        let observed = value.get("observed")?.as_list()?.iter().map(column).collect::<Option<_>>()?;
+        Some(SeriesNote { sites: u64::try_from(value.get("sites")?.as_i64()?).ok()?, observed })
+    }
+
+    /// From the note of a journal line.
+    pub fn from_text(text: &str) -> Option<Self> {
+        Self::from_value(&serde_json::from_str(text).ok()?)
+    }
+}

@@ -1,0 +1,275 @@
+//! `compare`: results against published values, other results, or brackets.
+
+use super::{Split, StepError, StepKind, Task, flags_text, no_check};
+use spinledger_terms::{Column, Field, Kind, StepSpec, Table, Value};
+
+/// The kind.
+pub(super) const KIND: StepKind =
+    StepKind { does: "compare", revision: 1, split: Split::Whole, spec, check: no_check, complete, analyse };
+
+/// Values without errors are the same when they differ by rounding only.
+const ROUNDING: f64 = 1e-12;
+
+fn spec() -> StepSpec {
+    let any = || Kind::Map { of: Box::new(Kind::Any {}) };
+    let take = vec![
+        Field::new("step", Kind::Step {}, "the step").required(),
+        Field::new("quantity", Kind::Text {}, "the row's quantity"),
+        Field::new("where", any(), "columns and values that the row must have"),
+        Field::new("table", Kind::Text {}, "which of the step's tables; the main one by default"),
+        Field::new("column", Kind::Text {}, "the column of the value; `value` by default"),
+    ];
+    let mut against = take.clone();
+    against[0].required = false;
+    against.extend([
+        Field::new("value", Kind::NUMBER, "a value"),
+        Field::new("error", Kind::NOT_NEGATIVE, "its standard error").default(Value::Integer(0)),
+        Field::new("source", Kind::Text {}, "where it is published"),
+        Field::new("lower", Kind::NUMBER, "lower end of a bracket"),
+        Field::new("upper", Kind::NUMBER, "upper end of a bracket"),
+    ]);
+    let item = vec![
+        Field::new("name", Kind::Text {}, "name of the row; `<step>.<quantity>` by default"),
+        Field::new("take", Kind::Tree { fields: take }, "the result").required(),
+        Field::new("against", Kind::Tree { fields: against }, "what it is held against").required(),
+        Field::new("within", Kind::POSITIVE, "standard errors").default(Value::Integer(3)),
+        Field::new("precision", Kind::POSITIVE, "a larger error than this makes the verdict `undecided`"),
+    ];
+    StepSpec {
+        does: "compare".into(),
+        about: "results held against published values, other results or brackets".into(),
+        fields: vec![Field::new("items", Kind::list(Kind::Tree { fields: item }), "what is compared").required()],
+        scan: None,
+    }
+}
+
+/// Names rows after the step and quantity, which do not enter the key otherwise.
+fn complete(parameters: &mut Value) {
+    let count = parameters.get("items").and_then(Value::as_list).map_or(0, <[Value]>::len);
+    for item in 0..count {
+        let at = |name: &str| parameters.at(&format!("items.{item}.{name}")).and_then(Value::as_str).map(str::to_owned);
+        if at("name").is_none() {
+            let quantity = at("take.quantity").or_else(|| at("take.column"));
+            let step = at("take.step").unwrap_or_default();
+            let name = quantity.map_or(step.clone(), |quantity| format!("{step}.{quantity}"));
+            parameters.set(&format!("items.{item}.name"), Value::text(name));
+        }
+    }
+}
+
+/// A value with its error and flags.
+struct Found {
+    value: Option<f64>,
+    error: Option<f64>,
+    flags: String,
+}
+
+/// What it is held against.
+enum Against {
+    Value { value: f64, error: f64, flags: String },
+    Bracket { lower: Option<f64>, upper: Option<f64>, flags: String },
+}
+
+/// One row.
+struct Row {
+    name: String,
+    found: Found,
+    reference: Option<f64>,
+    reference_error: Option<f64>,
+    deviation: Option<f64>,
+    verdict: &'static str,
+    flags: String,
+}
+
+fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+    let items = task.parameters.get("items").and_then(Value::as_list).unwrap_or_default();
+    let mut rows = Vec::new();
+    for (number, item) in items.iter().enumerate() {
+        let name = item.get("name").and_then(Value::as_str).unwrap_or_default().to_owned();
+        let in_item = |error: StepError| StepError(format!("{name}: {error}"));
+        let role = |side: &str| format!("items.{number}.{side}.step");
+        let found = take(task, &role("take"), item.get("take").unwrap_or(&Value::Null)).map_err(in_item)?;
+        let against = against(task, &role("against"), item.get("against").unwrap_or(&Value::Null)).map_err(in_item)?;
+        let number = |key: &str| item.get(key).and_then(Value::as_f64);
+        rows.push(judge(name.clone(), found, against, number("within").unwrap_or(3.0), number("precision")));
+    }
+    Ok(vec![("main".into(), table(&rows))])
+}
+
+/// The one row that is meant.
+fn take(task: &Task<'_>, role: &str, which: &Value) -> Result<Found, StepError> {
+    let text = |key: &str| which.get(key).and_then(Value::as_str);
+    let table = task.table(role, text("table").unwrap_or("main"))?;
+    let column = text("column").unwrap_or("value");
+    let values = &table.column(column).ok_or_else(|| no_column(&table, column))?.cells;
+    let mut wanted: Vec<(&str, Value)> = Vec::new();
+    if let Some(quantity) = text("quantity") {
+        wanted.push(("quantity", Value::text(quantity)));
+    }
+    for (name, value) in which.get("where").and_then(Value::as_map).into_iter().flatten() {
+        wanted.push((name, value.clone()));
+    }
+    let mut matching: Vec<usize> = (0..table.rows()).collect();
+    for (name, value) in &wanted {
+        let cells = &table.column(name).ok_or_else(|| no_column(&table, name))?.cells;
+        matching.retain(|row| same(&cells.value(*row), value));
+    }
+    let [row] = matching[..] else {
+        let wanted: Vec<String> =
+            wanted.iter().map(|(name, value)| format!("{name} = {}", value.canonical())).collect();
+        let wanted = if wanted.is_empty() { "no condition".to_owned() } else { wanted.join(", ") };
+        return Err(StepError(format!(
+            "{} rows match ({wanted}) where one must; narrow it with `where`",
+            matching.len()
+        )));
+    };
+    let error = if column == "value" { "error".to_owned() } else { format!("{column}_error") };
+    Ok(Found {
+        value: values.number(row),
+        error: table.column(&error).and_then(|c| c.cells.number(row)),
+        flags: table.text("flags", row).unwrap_or_default().to_owned(),
+    })
+}
+
+fn no_column(table: &Table, name: &str) -> StepError {
+    let known: Vec<&str> = table.columns.iter().map(|c| c.name.as_str()).collect();
+    StepError(format!("the table has no column `{name}`; it has: {}", known.join(", ")))
+}
+
+fn same(a: &Value, b: &Value) -> bool {
+    a == b || (a.as_f64().is_some() && a.as_f64() == b.as_f64())
+}
+
+fn against(task: &Task<'_>, role: &str, which: &Value) -> Result<Against, StepError> {
+    let number = |key: &str| which.get(key).and_then(Value::as_f64);
+    if let Some(value) = number("value") {
+        return Ok(Against::Value { value, error: number("error").unwrap_or(0.0), flags: String::new() });
+    }
+    if number("lower").is_some() || number("upper").is_some() {
+        return Ok(Against::Bracket { lower: number("lower"), upper: number("upper"), flags: String::new() });
+    }
+    if task.tables.iter().all(|table| table.role != role) {
+        return Err(StepError("`against` needs a value, a bracket or a step".into()));
+    }
+    if which.get("quantity").is_none() && which.get("column").is_none() {
+        let table = task.table(role, "main")?;
+        if let (Some(side), Some(value)) = (table.column("side"), table.column("value")) {
+            // The sharpest of each side.
+            let best = |word: &str, better: fn(f64, f64) -> f64| {
+                let rows = (0..table.rows()).filter(|row| side.cells.text(*row) == Some(word));
+                rows.filter_map(|row| value.cells.number(row)).reduce(better)
+            };
+            let flags = (0..table.rows()).filter_map(|row| table.text("flags", row)).collect::<Vec<_>>().join(";");
+            return Ok(Against::Bracket { lower: best("lower", f64::max), upper: best("upper", f64::min), flags });
+        }
+    }
+    let found = take(task, role, which)?;
+    let value = found.value.ok_or_else(|| StepError("the reference is not known".into()))?;
+    Ok(Against::Value { value, error: found.error.unwrap_or(0.0), flags: found.flags })
+}
+
+fn judge(name: String, found: Found, against: Against, within: f64, precision: Option<f64>) -> Row {
+    let (reference, reference_error, other_flags) = match &against {
+        Against::Value { value, error, flags } => (Some(*value), Some(*error), flags),
+        Against::Bracket { lower, upper, flags } => {
+            let near = found.value.and_then(|value| match (lower, upper) {
+                (Some(lower), _) if value < *lower => Some(*lower),
+                (_, Some(upper)) if value > *upper => Some(*upper),
+                (Some(lower), Some(upper)) => Some(if value - lower < upper - value { *lower } else { *upper }),
+                (one, other) => one.or(*other),
+            });
+            (near, Some(0.0), flags)
+        }
+    };
+    let mut flags: Vec<&str> = found.flags.split(';').chain(other_flags.split(';')).filter(|f| !f.is_empty()).collect();
+    let inside = match &against {
+        Against::Bracket { lower, upper, .. } => found
+            .value
+            .is_some_and(|value| lower.is_none_or(|lower| value >= lower) && upper.is_none_or(|upper| value <= upper)),
+        Against::Value { .. } => false,
+    };
+    let combined = found.error.map(|error| {
+        let other = reference_error.unwrap_or(0.0);
+        (error * error + other * other).sqrt()
+    });
+    let difference = found.value.zip(reference).map(|(value, reference)| if inside { 0.0 } else { value - reference });
+    let deviation = match (difference, combined) {
+        (Some(difference), Some(error)) if error > 0.0 => Some(difference / error),
+        (Some(difference), Some(_)) => {
+            let size = reference.unwrap_or(0.0).abs().max(1.0);
+            (difference.abs() <= ROUNDING * size).then_some(0.0)
+        }
+        _ => None,
+    };
+    if found.error.is_none() {
+        flags.push("no-error");
+    }
+    if precision.is_some_and(|precision| found.error.is_some_and(|error| error > precision)) {
+        flags.push("imprecise");
+    }
+    let verdict = if !flags.is_empty() || found.value.is_none() {
+        "undecided"
+    } else if deviation.is_some_and(|deviation| deviation.abs() <= within) {
+        "agrees"
+    } else {
+        "disagrees"
+    };
+    let flags = flags_text(&flags);
+    Row { name, found, reference, reference_error, deviation, verdict, flags }
+}
+
+fn table(rows: &[Row]) -> Table {
+    let numbers = |name: &str, get: fn(&Row) -> Option<f64>| Column::numbers(name, "", rows.iter().map(get).collect());
+    Table {
+        columns: vec![
+            Column::texts("name", rows.iter().map(|r| Some(r.name.clone())).collect()),
+            numbers("value", |r| r.found.value),
+            numbers("error", |r| r.found.error),
+            numbers("reference", |r| r.reference),
+            numbers("reference_error", |r| r.reference_error),
+            numbers("deviation", |r| r.deviation),
+            Column::texts("verdict", rows.iter().map(|r| Some(r.verdict.to_owned())).collect()),
+            Column::texts("flags", rows.iter().map(|r| Some(r.flags.clone())).collect()),
+        ],
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn found(value: f64, error: f64, flags: &str) -> Found {
+        Found { value: Some(value), error: Some(error), flags: flags.into() }
+    }
+
+    fn value(value: f64, error: f64) -> Against {
+        Against::Value { value, error, flags: String::new() }
+    }
+
+    fn verdict(found: Found, against: Against, precision: Option<f64>) -> (&'static str, Option<f64>) {
+        let row = judge("x".into(), found, against, 3.0, precision);
+        (row.verdict, row.deviation)
+    }
+
+    #[test]
+    fn verdicts_follow_errors_flags_and_precision() {
+        assert_eq!(verdict(found(2.0, 0.3, ""), value(1.0, 0.4), None), ("agrees", Some(2.0)));
+        assert_eq!(verdict(found(3.0, 0.3, ""), value(1.0, 0.4), None), ("disagrees", Some(4.0)));
+        assert_eq!(verdict(found(2.0, 0.3, "bad-fit"), value(1.0, 0.4), None).0, "undecided");
+        assert_eq!(verdict(found(2.0, 0.3, ""), value(1.0, 0.4), Some(0.2)).0, "undecided");
+        let without = Found { value: Some(1.0), error: None, flags: String::new() };
+        assert_eq!(verdict(without, value(1.0, 0.0), None), ("undecided", None));
+        assert_eq!(verdict(found(1.0, 0.0, ""), value(1.0, 0.0), None), ("agrees", Some(0.0)));
+        assert_eq!(verdict(found(1.1, 0.0, ""), value(1.0, 0.0), None), ("disagrees", None));
+    }
+
+    #[test]
+    fn brackets_hold_what_is_inside_or_near() {
+        let bracket = || Against::Bracket { lower: Some(2.0), upper: Some(2.5), flags: String::new() };
+        assert_eq!(verdict(found(2.2, 0.01, ""), bracket(), None), ("agrees", Some(0.0)));
+        assert_eq!(verdict(found(1.98, 0.01, ""), bracket(), None).0, "agrees");
+        assert_eq!(verdict(found(2.6, 0.01, ""), bracket(), None).0, "disagrees");
+        let open = Against::Bracket { lower: None, upper: Some(2.5), flags: String::new() };
+        assert_eq!(verdict(found(-7.0, 0.01, ""), open, None).0, "agrees");
+    }
+}

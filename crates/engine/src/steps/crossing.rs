@@ -1,0 +1,258 @@
+//! `crossing`: where the curves of several sizes cross, and where that tends as sizes grow.
+
+use super::settled::{self, Chains};
+use super::{Checked, Split, StepError, StepKind, Task, as_is, flags_text};
+use crate::job::SeriesInput;
+use crate::series::SeriesReader;
+use spinledger_numerics::sum::CompensatedSum;
+use spinledger_stats::autocorrelation::{AutocorrelationParams, autocorrelation};
+use spinledger_stats::crossing::{CrossingFlag, CrossingInfo, CrossingParams, Curve, Replicates, crossing};
+use spinledger_stats::jackknife::{Blocks, blocks_per_chain};
+use spinledger_terms::{Column, Field, Kind, Problem, StepSpec, Table, Value};
+use std::collections::BTreeMap;
+
+/// The kind.
+pub(super) const KIND: StepKind =
+    StepKind { does: "crossing", revision: 1, split: Split::Whole, spec, check, complete: as_is, analyse };
+
+fn spec() -> StepSpec {
+    StepSpec {
+        does: "crossing".into(),
+        about:
+            "the ordering temperature from where the curves of several sizes cross, extrapolated with a correction term"
+                .into(),
+        fields: vec![
+            Field::new("of", Kind::Step {}, "the sample step").required(),
+            Field::new("quantity", Kind::words(&["binder"]), "what crosses").default(Value::text("binder")),
+            Field::new("one_over_nu", Kind::POSITIVE, "1/nu, if it is known; from the slopes otherwise"),
+            Field::new(
+                "correction",
+                Kind::POSITIVE,
+                "exponent of the correction term, if it is known; averaged over 0.5 to 2.5 otherwise",
+            ),
+        ],
+        scan: None,
+    }
+}
+
+fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
+    super::must_be_of(step, "of", &["sample"], problems);
+}
+
+/// Columns that the step concludes over.
+const CONCLUDED: [&str; 8] =
+    ["size", "size_x", "size_y", "size_z", "temperature", "inverse_temperature", "sites", "start"];
+
+/// Scan columns that tell one set of curves from another.
+type Rest = Vec<(String, Value)>;
+
+fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+    // Series that differ in anything else that is scanned (a field, a coupling) are curves of their own.
+    let mut sets: BTreeMap<String, (Rest, Vec<&SeriesInput>)> = BTreeMap::new();
+    for series in task.series {
+        let rest: Vec<(String, Value)> =
+            series.columns.iter().filter(|(name, _)| !CONCLUDED.contains(&name.as_str())).cloned().collect();
+        let label = Value::Map(rest.iter().cloned().collect()).canonical();
+        sets.entry(label).or_insert_with(|| (rest, Vec::new())).1.push(series);
+    }
+    let mut out = Tables::default();
+    for (rest, series) in sets.into_values() {
+        let mut flags = Vec::new();
+        let mut curves: BTreeMap<u64, Vec<(f64, Vec<f64>, f64)>> = BTreeMap::new();
+        for input in series {
+            let (size, temperature) = place(input)?;
+            let reader = task.read(input);
+            let discarded = settled::discarded(&reader)?;
+            flags.extend(settled::flags(&reader, discarded)?);
+            let (value, replicates) = cumulant(&reader, discarded.rows)?;
+            curves.entry(size).or_default().push((temperature, replicates, value));
+            (task.progress)();
+        }
+        let curves: Vec<Curve> = curves.into_iter().map(|(size, points)| curve(size, points)).collect();
+        let number = |name: &str| task.parameters.get(name).and_then(Value::as_f64);
+        let mut params = CrossingParams { inverse_nu: number("one_over_nu"), ..CrossingParams::default() };
+        if let Some(exponent) = number("correction") {
+            params.corrections = vec![exponent];
+        }
+        let found = crossing(&curves, &params).map_err(|e| StepError(crate::chain_text(&e)))?;
+        flags.extend(found.flags.iter().map(|flag| match flag {
+            CrossingFlag::NoCrossing => "no-crossing",
+            CrossingFlag::BadFit => "bad-fit",
+            _ => "few-sizes",
+        }));
+        out.add(&rest, &found, &flags_text(&flags));
+    }
+    let unit = task.series.first().map_or("", |s| s.facts.temperature_unit.as_str());
+    Ok(out.tables(unit))
+}
+
+/// Size and temperature of a series.
+fn place(input: &SeriesInput) -> Result<(u64, f64), StepError> {
+    let size = input.columns.iter().find(|(name, _)| name == "size").map(|(_, value)| value);
+    let size = size.and_then(Value::as_i64).and_then(|n| u64::try_from(n).ok());
+    let size = size.ok_or_else(|| StepError("a crossing needs sizes that are one number each".into()))?;
+    let temperature =
+        input.facts.temperature.ok_or_else(|| StepError("a crossing needs finite temperatures".into()))?;
+    Ok((size, temperature))
+}
+
+/// The cumulant of a series and its jackknife replicates over blocks that are long against the autocorrelation time.
+fn cumulant(reader: &SeriesReader<'_>, discarded: usize) -> Result<(f64, Vec<f64>), StepError> {
+    let squared = reader.has("order_squared");
+    let column = if squared { "order_squared" } else { "magnetisation" };
+    if !reader.has(column) {
+        return Err(StepError("the cumulant needs `magnetisation` or `order-parameter` observed".into()));
+    }
+    let mut chains = Chains::read(reader, column, discarded)?;
+    chains.apply(if squared { |x| x } else { |x| x * x });
+    let tau = autocorrelation(&chains.slices(), &AutocorrelationParams::default()).map_or(0.5, |found| found.tau);
+    let mut blocks = Blocks::new(2);
+    for chain in &chains.values {
+        let count = blocks_per_chain(chain.len(), chains.values.len(), tau).min(chain.len());
+        for block in 0..count {
+            let rows = &chain[block * chain.len() / count..(block + 1) * chain.len() / count];
+            let (mut second, mut fourth) = (CompensatedSum::new(), CompensatedSum::new());
+            for square in rows {
+                second.add(*square);
+                fourth.add(square * square);
+            }
+            blocks.push(rows.len() as f64, &[second.value(), fourth.value()]);
+        }
+    }
+    let found = blocks
+        .jackknife(1, |means, out| out[0] = 1.0 - means[1] / (3.0 * means[0] * means[0]))
+        .map_err(|e| StepError(format!("the cumulant of a series: {}", crate::chain_text(&e))))?;
+    let replicates = (0..blocks.len()).map(|block| found.replicates[(block, 0)]).collect();
+    Ok((found.estimates[0], replicates))
+}
+
+fn curve(size: u64, mut points: Vec<(f64, Vec<f64>, f64)>) -> Curve {
+    points.sort_by(|a, b| a.0.total_cmp(&b.0));
+    Curve {
+        size: size as f64,
+        x: points.iter().map(|p| p.0).collect(),
+        y: points.iter().map(|p| p.2).collect(),
+        replicates: Replicates::Separate(points.into_iter().map(|p| p.1).collect()),
+    }
+}
+
+/// Rows of the three tables.
+#[derive(Default)]
+struct Tables {
+    rest: Vec<Vec<(String, Value)>>,
+    main: Vec<(usize, &'static str, Option<Line>, String)>,
+    pairs: Vec<(usize, [f64; 6], String)>,
+    covariance: Vec<(usize, [f64; 5], String)>,
+}
+
+struct Line {
+    value: f64,
+    error: f64,
+    chi_squared: Option<f64>,
+    degrees: Option<usize>,
+    p: Option<f64>,
+}
+
+impl Tables {
+    fn add(&mut self, rest: &[(String, Value)], found: &CrossingInfo, flags: &str) {
+        let set = self.rest.len();
+        self.rest.push(rest.to_vec());
+        let whole = |fit: &spinledger_stats::crossing::Extrapolated| Line {
+            value: fit.value,
+            error: fit.error,
+            chi_squared: Some(fit.chi_squared),
+            degrees: Some(fit.degrees),
+            p: Some(fit.p),
+        };
+        let constant = |fit: &spinledger_stats::crossing::Extrapolated| Line {
+            value: fit.constant.value,
+            error: fit.constant.error,
+            chi_squared: Some(fit.constant.chi_squared),
+            degrees: Some(fit.constant.degrees),
+            p: None,
+        };
+        let (nu, nu_error) = found.inverse_nu;
+        let exponent = Line { value: nu, error: nu_error, chi_squared: None, degrees: None, p: None };
+        let lines = [
+            ("critical_temperature", found.place.as_ref().map(whole)),
+            ("crossing_value", found.value.as_ref().map(whole)),
+            // For comparison only: without a correction the error does not tell how far off it is.
+            ("critical_temperature_uncorrected", found.place.as_ref().map(constant)),
+            ("crossing_value_uncorrected", found.value.as_ref().map(constant)),
+            ("one_over_nu_used", Some(exponent).filter(|line| line.value.is_finite())),
+        ];
+        for (name, line) in lines {
+            self.main.push((set, name, line, flags.to_owned()));
+        }
+        for pair in &found.pairs {
+            let row = [pair.size, pair.partner, pair.place, pair.error, pair.value, pair.value_error];
+            self.pairs.push((set, row, flags.to_owned()));
+        }
+        for (i, a) in found.pairs.iter().enumerate() {
+            for (j, b) in found.pairs.iter().enumerate() {
+                let row = [a.size, a.partner, b.size, b.partner, found.covariance[(i, j)]];
+                self.covariance.push((set, row, flags.to_owned()));
+            }
+        }
+    }
+
+    /// Columns that tell the curves of one set from those of another; none where there is one set.
+    fn rest_columns(&self, sets: &[usize]) -> Vec<Column> {
+        let Some(first) = self.rest.first() else { return Vec::new() };
+        let cell = |set: usize, at: usize| self.rest[set][at].1.clone();
+        let column = |at: usize| {
+            let name = &first[at].0;
+            if self.rest.iter().all(|rest| rest[at].1.as_i64().is_some()) {
+                Column::integers(name, "", sets.iter().map(|s| cell(*s, at).as_i64()).collect())
+            } else if self.rest.iter().all(|rest| rest[at].1.as_f64().is_some()) {
+                Column::numbers(name, "", sets.iter().map(|s| cell(*s, at).as_f64()).collect())
+            } else {
+                let text = |value: Value| value.as_str().map_or_else(|| value.canonical(), str::to_owned);
+                Column::texts(name, sets.iter().map(|s| Some(text(cell(*s, at)))).collect())
+            }
+        };
+        (0..first.len()).map(column).collect()
+    }
+
+    fn tables(self, unit: &str) -> Vec<(String, Table)> {
+        let count = |x: f64| Some(x as i64);
+        let sets: Vec<usize> = self.main.iter().map(|row| row.0).collect();
+        let mut main = self.rest_columns(&sets);
+        let numbers = |get: fn(&Line) -> Option<f64>| self.main.iter().map(|r| r.2.as_ref().and_then(get)).collect();
+        main.push(Column::texts("quantity", self.main.iter().map(|r| Some(r.1.to_owned())).collect()));
+        main.push(Column::numbers("value", "", numbers(|l| Some(l.value))));
+        main.push(Column::numbers("error", "", numbers(|l| Some(l.error))));
+        main.push(Column::numbers("chi_squared", "", numbers(|l| l.chi_squared)));
+        let degrees = self.main.iter().map(|r| r.2.as_ref().and_then(|l| l.degrees).map(|d| d as i64)).collect();
+        main.push(Column::integers("degrees", "", degrees));
+        main.push(Column::numbers("p_value", "", numbers(|l| l.p)));
+        main.push(Column::texts("flags", self.main.iter().map(|r| Some(r.3.clone())).collect()));
+
+        let sets: Vec<usize> = self.pairs.iter().map(|row| row.0).collect();
+        let mut pairs = self.rest_columns(&sets);
+        let cells = |at: usize| self.pairs.iter().map(|row| Some(row.1[at])).collect::<Vec<_>>();
+        pairs.push(Column::integers("size", "", self.pairs.iter().map(|row| count(row.1[0])).collect()));
+        pairs.push(Column::integers("partner", "", self.pairs.iter().map(|row| count(row.1[1])).collect()));
+        pairs.push(Column::numbers("temperature", unit, cells(2)));
+        pairs.push(Column::numbers("error", unit, cells(3)));
+        pairs.push(Column::numbers("value", "", cells(4)));
+        pairs.push(Column::numbers("value_error", "", cells(5)));
+        pairs.push(Column::texts("flags", self.pairs.iter().map(|row| Some(row.2.clone())).collect()));
+
+        let sets: Vec<usize> = self.covariance.iter().map(|row| row.0).collect();
+        let mut covariance = self.rest_columns(&sets);
+        for (at, name) in ["size", "partner", "other_size", "other_partner"].into_iter().enumerate() {
+            let cells = self.covariance.iter().map(|row| count(row.1[at])).collect();
+            covariance.push(Column::integers(name, "", cells));
+        }
+        let squared = if unit.is_empty() { String::new() } else { format!("{unit}^2") };
+        let cells = self.covariance.iter().map(|row| Some(row.1[4])).collect();
+        covariance.push(Column::numbers("covariance", &squared, cells));
+        covariance.push(Column::texts("flags", self.covariance.iter().map(|row| Some(row.2.clone())).collect()));
+        vec![
+            ("main".into(), Table { columns: main }),
+            ("pairs".into(), Table { columns: pairs }),
+            ("covariance".into(), Table { columns: covariance }),
+        ]
+    }
+}

@@ -1,0 +1,148 @@
+//! The kinds of step: one file each, one line each in [`KINDS`].
+//!
+//! A kind says what its parameters are, how its work is split into parcels, what is wrong with a step beyond its parameters' types, and, for
+//! analyses, how tables come from series and tables. Everything else (keys, workers, records, results) is the same for all.
+
+mod averages;
+mod compare;
+mod crossing;
+pub mod sample;
+pub(crate) mod settled;
+
+use crate::job::{SeriesInput, TableInput};
+use crate::series::SeriesReader;
+use spinledger_ledger::Ledger;
+use spinledger_terms::{Path, Problem, StepSpec, Table, Value, Vocabulary};
+use std::collections::BTreeMap;
+
+/// All kinds.
+pub const KINDS: &[&StepKind] = &[&sample::KIND, &averages::KIND, &crossing::KIND, &compare::KIND];
+
+/// How the work of a step is split into parcels.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Split {
+    /// Groups of chains at points: sampling.
+    Chains,
+    /// One parcel for each point of the series that it is of.
+    Points,
+    /// One parcel.
+    Whole,
+}
+
+/// A kind of step.
+pub struct StepKind {
+    /// The word after `does:`.
+    pub does: &'static str,
+    /// Counts changes of what it computes.
+    pub revision: i64,
+    /// How its work is split.
+    pub split: Split,
+    /// Its parameters.
+    pub spec: fn() -> StepSpec,
+    /// Checks a step beyond the types of its parameters.
+    pub check: fn(&Checked<'_>, &mut Vec<Problem>),
+    /// Completes parameters with what the step's surroundings tell, before they enter a key.
+    pub complete: fn(&mut Value),
+    /// Makes tables, the first of them `main`. Not for sampling.
+    pub analyse: fn(&Task<'_>) -> Result<NamedTables, StepError>,
+}
+
+/// Tables by name, in order.
+pub type NamedTables = Vec<(String, Table)>;
+
+/// The kind of a name.
+pub fn kind(does: &str) -> Option<&'static StepKind> {
+    KINDS.iter().copied().find(|kind| kind.does == does)
+}
+
+/// A step to be checked.
+pub struct Checked<'a> {
+    /// Its place.
+    pub path: &'a Path,
+    /// Its points: one without columns where it is not scanned, none where its scan waits for an earlier step.
+    pub points: &'a [spinledger_pipeline::Point],
+    /// What kind the steps that it refers to are.
+    pub kinds: &'a BTreeMap<String, String>,
+    /// Items and step kinds.
+    pub vocabulary: &'a Vocabulary,
+}
+
+/// An analysis parcel at work.
+pub struct Task<'a> {
+    /// Parameters without names of steps.
+    pub parameters: &'a Value,
+    /// The series it takes.
+    pub series: &'a [SeriesInput],
+    /// The tables it takes.
+    pub tables: &'a [TableInput],
+    /// The ledger they are in.
+    pub ledger: &'a Ledger,
+    /// To be called now and then: the work goes on.
+    pub progress: &'a dyn Fn(),
+}
+
+impl Task<'_> {
+    /// Reads a series.
+    pub fn read<'a>(&'a self, series: &'a SeriesInput) -> SeriesReader<'a> {
+        SeriesReader::new(self.ledger, series)
+    }
+
+    /// Reads a table of the input with a role.
+    ///
+    /// # Errors
+    /// Where there is no such input or table, or it cannot be read.
+    pub fn table(&self, role: &str, name: &str) -> Result<Table, StepError> {
+        let input = self.tables.iter().find(|input| input.role == role);
+        let input = input.ok_or_else(|| StepError(format!("there is no input for `{role}`")))?;
+        let record = self.ledger.read_record(&input.key).map_err(|e| StepError(e.to_string()))?;
+        if record.tables.iter().all(|table| table.name != name) {
+            let known: Vec<&str> = record.tables.iter().map(|t| t.name.as_str()).collect();
+            return Err(StepError(format!("the step has no table `{name}`; it has: {}", known.join(", "))));
+        }
+        self.ledger.read_table(&input.key, name).map_err(|e| StepError(e.to_string()))
+    }
+}
+
+/// Why a parcel broke, in words.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct StepError(pub String);
+
+impl std::fmt::Display for StepError {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        f.write_str(&self.0)
+    }
+}
+
+impl std::error::Error for StepError {}
+
+impl From<spinledger_ledger::LedgerError> for StepError {
+    fn from(error: spinledger_ledger::LedgerError) -> Self {
+        StepError(crate::chain_text(&error))
+    }
+}
+
+/// Nothing to check.
+pub(crate) fn no_check(_: &Checked<'_>, _: &mut Vec<Problem>) {}
+
+/// The step that a parameter names must be of one of some kinds.
+pub(crate) fn must_be_of(step: &Checked<'_>, parameter: &str, kinds: &[&str], problems: &mut Vec<Problem>) {
+    let Some(point) = step.points.first() else { return };
+    let Some(name) = point.get(parameter) else { return };
+    let Some(kind) = name.as_str().and_then(|name| step.kinds.get(name)) else { return };
+    if !kinds.contains(&kind.as_str()) {
+        let message = format!("`{}` does {kind}", name.as_str().unwrap_or_default());
+        let problem = Problem::at_value(&point.place(parameter), message);
+        problems.push(problem.expected(format!("a step that does: {}", kinds.join(", "))));
+    }
+}
+
+/// Nothing to complete.
+pub(crate) fn as_is(_: &mut Value) {}
+
+/// Joins flags as tables have them: sorted, without repetition, `;` between.
+pub fn flags_text(flags: &[&str]) -> String {
+    let mut flags = flags.to_vec();
+    flags.sort_unstable();
+    flags.dedup();
+    flags.join(";")
+}

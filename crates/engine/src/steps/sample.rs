@@ -1,0 +1,311 @@
+//! `sample`: time series from chains.
+
+use super::{Checked, Split, StepError, StepKind, Task, as_is};
+use spinledger_pipeline::Point;
+use spinledger_plan::dynamics::{nominal_sites, rule_lanes};
+use spinledger_plan::sample::Ask;
+use spinledger_terms::{
+    Field, Item, ItemKind, Kind, Problem, ScanSpec, StepSpec, Table, Trait, Value, Vocabulary, nearest,
+};
+use std::collections::BTreeSet;
+
+/// The kind.
+pub const KIND: StepKind = StepKind {
+    does: "sample",
+    revision: spinledger_plan::dynamics::REVISION,
+    split: Split::Chains,
+    spec,
+    check,
+    complete: as_is,
+    analyse,
+};
+
+/// Most sites of a lattice: they are numbered with 32 bits.
+const MOST_SITES: u64 = u32::MAX as u64;
+
+fn spec() -> StepSpec {
+    let plugin = |of| Kind::Plugin { of };
+    let rules = Kind::Either { of: vec![plugin(ItemKind::Update), Kind::list(plugin(ItemKind::Update))] };
+    let equilibrate = Kind::Either { of: vec![Kind::COUNT_FROM_ZERO, Kind::words(&["auto"])] };
+    StepSpec {
+        does: "sample".into(),
+        about: "time series of observables from Markov chains".into(),
+        fields: vec![
+            Field::new("lattice", plugin(ItemKind::Lattice), "sites and bonds").required(),
+            Field::new("model", plugin(ItemKind::Model), "the Hamiltonian").required(),
+            Field::new("update", rules, "the rule, or several that make one sweep in turn").required(),
+            Field::new("observe", Kind::list(plugin(ItemKind::Observable)), "what is measured").required(),
+            Field::new("temperature", Kind::POSITIVE, "temperature").unit("temperature"),
+            Field::new("inverse_temperature", Kind::NOT_NEGATIVE, "1/(k_B T)").unit("1/energy"),
+            Field::new("equilibrate", equilibrate, "sweeps before the first measurement").default(Value::text("auto")),
+            Field::new("measure", Kind::COUNT, "measurements per chain").required(),
+            Field::new("every", Kind::COUNT, "sweeps between measurements").default(Value::Integer(1)),
+            Field::new("chains", Kind::Integer { min: Some(1), max: Some(1 << 20) }, "independent chains per point")
+                .default(Value::Integer(4)),
+            Field::new("start", Kind::words(&["random", "ordered", "both"]), "configuration to start from")
+                .default(Value::text("random")),
+            Field::new("settle", Kind::COUNT_FROM_ZERO, "sweeps of adapting step widths before everything")
+                .default(Value::Integer(0)),
+        ],
+        scan: Some(ScanSpec {
+            no_column: ["measure", "equilibrate", "every", "chains", "settle"].map(String::from).to_vec(),
+            larger: ["measure", "chains"].map(String::from).to_vec(),
+            follow: String::new(),
+        }),
+    }
+}
+
+fn analyse(_: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+    Err(StepError("sampling is not an analysis".into()))
+}
+
+/// What a point asks for beside its dynamics.
+pub fn ask(body: &Value) -> Ask {
+    let count = |name: &str| body.get(name).and_then(Value::as_i64).unwrap_or(1);
+    let starts = match body.get("start").and_then(Value::as_str) {
+        Some("both") => vec!["ordered".to_owned(), "random".to_owned()],
+        Some(one) => vec![one.to_owned()],
+        None => vec!["random".to_owned()],
+    };
+    Ask { measure: count("measure") as u64, chains: u32::try_from(count("chains")).unwrap_or(1), starts }
+}
+
+fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
+    // Many points share their mistakes: each is told once, at the first point that has it.
+    let mut told = BTreeSet::new();
+    for point in step.points {
+        let mut found = Vec::new();
+        check_point(step, point, &mut found);
+        for problem in found {
+            if told.insert((problem.path.clone(), problem.message.clone())) {
+                problems.push(problem);
+            }
+        }
+    }
+}
+
+fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
+    let body = &point.body();
+    match (body.get("temperature"), body.get("inverse_temperature")) {
+        (None, None) => problems.push(
+            Problem::at_value(step.path, "a sample step needs a temperature")
+                .expected("`temperature` or `inverse_temperature`, in the step or in its scan"),
+        ),
+        (Some(_), Some(_)) => problems.push(
+            Problem::at_key(&point.place("inverse_temperature"), "temperature and inverse temperature are both given")
+                .expected("one of them")
+                .other(point.place("temperature"), "the other"),
+        ),
+        _ => {}
+    }
+    let item = |kind: ItemKind, value: Option<&Value>| -> Option<Item> {
+        Some(step.vocabulary.item(kind, value?.get("plugin")?.as_str()?)?.1.clone())
+    };
+    let Some(lattice) = item(ItemKind::Lattice, body.get("lattice")) else { return };
+    let Some(model) = item(ItemKind::Model, body.get("model")) else { return };
+    check_lattice(point, body, &lattice, &model, problems);
+    check_model(point, body, &lattice, &model, problems);
+    if let Some(update) = body.get("update") {
+        let listed = update.as_list().is_some();
+        for (i, rule) in update.as_list().unwrap_or(std::slice::from_ref(update)).iter().enumerate() {
+            let place = if listed { format!("update.{i}") } else { "update".to_owned() };
+            if let Some(rule) = item(ItemKind::Update, Some(rule)) {
+                check_rule(step.vocabulary, point, body, &place, &rule, &model, problems);
+            }
+        }
+        check_lanes(step.vocabulary, point, update, problems);
+    }
+    let mut columns: BTreeSet<String> = BTreeSet::new();
+    for (i, observable) in body.get("observe").and_then(Value::as_list).unwrap_or_default().iter().enumerate() {
+        let Some(observable) = item(ItemKind::Observable, Some(observable)) else { continue };
+        let place = point.place(&format!("observe.{i}"));
+        let Some(traits) = &observable.observable else { continue };
+        for need in &traits.needs {
+            if !offers(&model, body.get("model"), need) {
+                let message =
+                    format!("the observable `{}` cannot be measured with the model `{}`", observable.name, model.name);
+                problems.push(Problem::at_value(&place, message).expected(format!("a model that offers: {need}")));
+            }
+        }
+        if traits.chains != 1 {
+            let message = format!("the observable `{}` reads two chains at once", observable.name);
+            problems.push(Problem::at_value(&place, message).expected("an observable of one chain"));
+        }
+        for column in &traits.columns {
+            if !columns.insert(column.name.clone()) {
+                problems.push(Problem::at_value(&place, format!("the column `{}` is observed twice", column.name)));
+            }
+        }
+    }
+}
+
+fn check_lattice(point: &Point, body: &Value, lattice: &Item, model: &Item, problems: &mut Vec<Problem>) {
+    let Some(traits) = &lattice.lattice else { return };
+    let Some(parameters) = body.get("lattice") else { return };
+    let size_place = point.place(&format!("lattice.{}", traits.size));
+    if nominal_sites(parameters, lattice) > MOST_SITES {
+        let message = "the lattice would have more sites than can be numbered";
+        problems.push(Problem::at_value(&size_place, message).expected(format!("at most {MOST_SITES} sites")));
+    }
+    let Some(boundaries) = &traits.boundaries else { return };
+    let place = point.place(&format!("lattice.{}", boundaries.parameter));
+    let per_direction = |name: &str| -> Vec<Value> {
+        match parameters.at(name) {
+            Some(Value::List(list)) => list.clone(),
+            Some(value) => vec![value.clone(); traits.dimension as usize],
+            None => Vec::new(),
+        }
+    };
+    let words = per_direction(&boundaries.parameter);
+    let sizes = per_direction(&traits.size);
+    let any = |word: &str| words.iter().any(|w| w.as_str() == Some(word));
+    if any("antiperiodic") && !offers(model, body.get("model"), "negation") {
+        let message = format!("`antiperiodic` needs spins with a negative; the model `{}` has none", model.name);
+        problems.push(Problem::at_value(&place, message).expected("periodic, free, plus or minus"));
+    }
+    if (any("plus") || any("minus")) && !offers(model, body.get("model"), "directions") {
+        let message = format!("the model `{}` does not know up and down, which pinned boundaries need", model.name);
+        problems.push(Problem::at_value(&place, message).expected("periodic or free"));
+    }
+    for (word, size) in words.iter().zip(&sizes) {
+        let small = size.as_i64().is_some_and(|n| n < boundaries.antiperiodic_minimum);
+        if word.as_str() == Some("antiperiodic") && small {
+            let message = "an antiperiodic direction cannot be this short";
+            let expected = format!("a size of at least {}", boundaries.antiperiodic_minimum);
+            problems
+                .push(Problem::at_value(&size_place, message).expected(expected).other(place.clone(), "the boundary"));
+        }
+    }
+}
+
+/// Couplings by class must name classes that the lattice has.
+fn check_model(point: &Point, body: &Value, lattice: &Item, model: &Item, problems: &mut Vec<Problem>) {
+    let (Some(lattice), Some(model)) = (&lattice.lattice, &model.model) else { return };
+    if lattice.classes.is_empty() {
+        return;
+    }
+    for name in &model.by_class {
+        let Some(Value::Map(map)) = body.get("model").and_then(|m| m.at(name)) else { continue };
+        for key in map.keys() {
+            let prefix = format!("{key}.");
+            if lattice.classes.iter().all(|class| class != key && !class.starts_with(&prefix)) {
+                let mut known: Vec<&str> = lattice.classes.iter().map(String::as_str).collect();
+                known.extend(lattice.classes.iter().filter_map(|class| class.split('.').next()));
+                known.sort_unstable();
+                known.dedup();
+                let place = point.place(&format!("model.{name}")).key(key);
+                let near = nearest(key, known.iter().copied());
+                let problem = Problem::at_key(&place, format!("the lattice has no bond class `{key}`"));
+                problems.push(problem.expected(format!("one of: {}", known.join(", "))).nearest(near));
+            }
+        }
+    }
+}
+
+fn check_rule(
+    vocabulary: &Vocabulary,
+    point: &Point,
+    body: &Value,
+    place: &str,
+    rule: &Item,
+    model: &Item,
+    problems: &mut Vec<Problem>,
+) {
+    let reasons = refusals(rule, model, body.get("model"));
+    if reasons.is_empty() {
+        return;
+    }
+    let able: BTreeSet<&str> = vocabulary
+        .items
+        .iter()
+        .map(|(_, item)| item)
+        .filter(|item| item.kind == ItemKind::Update && refusals(item, model, body.get("model")).is_empty())
+        .map(|item| item.name.as_str())
+        .collect();
+    let able: Vec<&str> = able.into_iter().collect();
+    let expected = if able.is_empty() {
+        "no rule that was found serves it".into()
+    } else {
+        format!("one of: {}", able.join(", "))
+    };
+    let message = format!("the rule `{}` cannot serve the model `{}`: {}", rule.name, model.name, reasons.join("; "));
+    problems.push(Problem::at_value(&point.place(place), message).expected(expected));
+}
+
+/// Why a rule cannot serve a model with these parameters; empty where it can.
+fn refusals(rule: &Item, model: &Item, parameters: Option<&Value>) -> Vec<String> {
+    let (Some(rule), Some(traits)) = (&rule.update, &model.model) else {
+        return vec!["its manifest is incomplete".into()];
+    };
+    let mut reasons = Vec::new();
+    for form in traits.forms.iter().filter(|form| !rule.forms.contains(form)) {
+        reasons.push(format!("it does not serve energies of the form `{form}`"));
+    }
+    let states = traits
+        .states
+        .or_else(|| parameters?.at(&traits.states_parameter)?.as_i64().and_then(|q| u64::try_from(q).ok()));
+    if let (Some(most), Some(states)) = (rule.most_states, states)
+        && states > most {
+            reasons.push(format!("it serves at most {most} states, here are {states}"));
+        }
+    for need in rule.needs.iter().filter(|need| !offers(model, parameters, need)) {
+        reasons.push(missing(model, parameters, need));
+    }
+    reasons
+}
+
+/// In words, why a need is not met: never offered, or spoiled by a parameter.
+fn missing(model: &Item, parameters: Option<&Value>, need: &str) -> String {
+    let wanted: Vec<&str> = need.split('|').collect();
+    let spoiled =
+        model.model.iter().flat_map(|m| &m.offers).filter(|t| wanted.contains(&t.name.as_str())).find_map(|t| {
+            let condition = t.unless.iter().find(|c| parameters.is_some_and(|p| c.holds(p)))?;
+            Some(format!("it needs {}, and `{}` is {}", words_of(&t.name), condition.parameter, condition.is))
+        });
+    spoiled.unwrap_or_else(|| {
+        let wanted: Vec<&str> = wanted.into_iter().map(words_of).collect();
+        format!("it needs {}", wanted.join(" or "))
+    })
+}
+
+/// What a trait means, for messages.
+fn words_of(name: &str) -> &str {
+    match name {
+        "scalar" => "states with spin values",
+        "negation" => "spins with a negative",
+        "directions" => "known directions",
+        "inversion" => "an energy that is unchanged when all spins are reversed",
+        "permutation" => "an energy that is unchanged when colours are permuted",
+        "ferromagnetic" => "couplings that are not negative",
+        "colours" => "Potts colours",
+        "vectors" => "vector spins",
+        other => other,
+    }
+}
+
+/// Whether a model with these parameters offers one of the traits in `need` (`a|b`).
+fn offers(model: &Item, parameters: Option<&Value>, need: &str) -> bool {
+    let traits: &[Trait] = model.model.as_ref().map_or(&[], |m| m.offers.as_slice());
+    need.split('|').any(|name| {
+        traits
+            .iter()
+            .any(|t| t.name == name && !t.unless.iter().any(|condition| parameters.is_some_and(|p| condition.holds(p))))
+    })
+}
+
+/// Rules of one sweep must advance the same number of chains together.
+fn check_lanes(vocabulary: &Vocabulary, point: &Point, update: &Value, problems: &mut Vec<Problem>) {
+    let rules = update.as_list().unwrap_or(std::slice::from_ref(update));
+    let lanes: Vec<u32> = rules
+        .iter()
+        .filter_map(|rule| {
+            let (_, item) = vocabulary.item(ItemKind::Update, rule.get("plugin")?.as_str()?)?;
+            Some(rule_lanes(rule, item))
+        })
+        .collect();
+    if let Some(i) = lanes.iter().position(|n| *n != lanes[0]) {
+        let message = format!("this rule advances {} chains together, the first {}", lanes[i], lanes[0]);
+        let problem = Problem::at_value(&point.place(&format!("update.{i}")), message);
+        problems.push(problem.expected("rules with the same `lanes`").other(point.place("update.0"), "the first rule"));
+    }
+}
