@@ -1,6 +1,6 @@
 //! Functions of means, with errors that know about autocorrelation.
 //!
-//! Projected series (Wolff 2004 Comput. Phys. Commun. 156 143, sect. 3.2): for F(<a_1>, <a_2> ...) the series
+//! Projected series (Wolff 2004 Comput. Phys. Commun. 156 143, sect. 3.2): for a function F of the means of a_1, a_2 ... the series
 //! y = sum_k (dF/da_k) a_k has, to first order, the fluctuations of F; its error of the mean, autocorrelation time
 //! and effective number are those of F. The bias of F, of relative order 1/effective, is left in: it is
 //! smaller than the error by the square root of that.

@@ -153,7 +153,7 @@ fn limit_of_exact_cumulants_is_the_critical_temperature() {
             assert!(mean.abs() < 0.6 && (0.3..1.35).contains(&width), "{name} at {error}: {mean} {width}");
         }
         // An error that covers everything would prove nothing.
-        assert!(moments(&errors).0 < 0.005 + 15.0 * error, "{:?}", moments(&errors));
+        assert!(moments(&errors).0 < 0.006 + 15.0 * error, "{:?}", moments(&errors));
         assert!(moments(&constant).0 < -4.0, "{:?}", moments(&constant));
     }
 }

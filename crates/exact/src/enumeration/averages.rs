@@ -10,23 +10,23 @@ use super::degeneracies::Degeneracies;
 pub struct Averages {
     /// ln Z of the whole system.
     pub log_z: f64,
-    /// <E>/N.
+    /// `<E>/N`.
     pub energy: f64,
-    /// (<E^2> - <E>^2)/(N T^2).
+    /// `(<E^2> - <E>^2)/(N T^2)`.
     pub heat_capacity: f64,
-    /// -T ln Z/N; `None` at infinite temperature.
+    /// `-T ln Z/N`; `None` at infinite temperature.
     pub free_energy: Option<f64>,
-    /// (ln Z + <E>/T)/N.
+    /// `(ln Z + <E>/T)/N`.
     pub entropy: f64,
-    /// Mean order per site by component: <m>, or <order> for colours.
+    /// Mean order per site by component: `<m>`, or `<order>` for colours.
     pub order: [f64; 3],
-    /// <|m|>, the mean length of the order parameter.
+    /// `<|m|>`, the mean length of the order parameter.
     pub order_abs: f64,
-    /// <m^2>.
+    /// `<m^2>`.
     pub order_squared: f64,
-    /// <m^4>.
+    /// `<m^4>`.
     pub order_fourth: f64,
-    /// 1 - <m^4>/(3 <m^2>^2); `None` where the order vanishes in every state.
+    /// `1 - <m^4>/(3 <m^2>^2)`; `None` where the order vanishes in every state.
     pub binder: Option<f64>,
 }
 
