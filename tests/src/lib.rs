@@ -1,1 +1,4 @@
-//! whole-program tests and checks against published values
+//! What whole-program tests share: the built program and desks to run it at ([`program`]).
+#![forbid(unsafe_code)]
+
+pub mod program;
