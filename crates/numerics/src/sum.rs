@@ -61,7 +61,7 @@ impl Extend<f64> for CompensatedSum {
 
 /// Sum of a slice: chunks of [`CHUNK`] values over eight accumulators, the chunks joined by a [`CompensatedSum`].
 ///
-/// Cost: about a quarter of a nanosecond a value. The empty sum is 0.
+/// One pass. The empty sum is 0.
 #[must_use]
 pub fn sum(values: &[f64]) -> f64 {
     sum_by(values.len(), |index| values[index])
