@@ -1,0 +1,12 @@
+//! Distribution, totals, saved states and the order of draws.
+
+mod distribution;
+mod exact;
+#[allow(dead_code, reason = "the standard lattices as they are; not all are needed here")]
+#[path = "../../../lattices/src/standard/mod.rs"]
+mod lattices;
+mod mechanics;
+#[path = "../../../models/src/standard/mod.rs"]
+mod models;
+
+mod systems;
