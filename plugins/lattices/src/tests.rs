@@ -75,7 +75,10 @@ fn check_soundness(graph: &Graph<'_>, colours: usize, colour_sites: &[u32], colo
     for face in graph.face_offsets.windows(2) {
         let corners = &graph.face_sites[face[0] as usize..face[1] as usize];
         let joined = |a: u32, b: u32| graph.neighbours_of(a as usize).contains(&b);
-        assert!((0..corners.len()).all(|k| joined(corners[k], corners[(k + 1) % corners.len()])), "{label}: face {corners:?}");
+        assert!(
+            (0..corners.len()).all(|k| joined(corners[k], corners[(k + 1) % corners.len()])),
+            "{label}: face {corners:?}"
+        );
         assert_eq!(corners.iter().collect::<BTreeSet<_>>().len(), corners.len(), "{label}: face {corners:?}");
     }
 }
@@ -108,10 +111,14 @@ fn check_all<L: Lattice>(directions: usize, sizes: &[usize], coordination: usize
                 }
             }
             if boundaries.iter().all(|b| closed(b) || *b == "plus" || *b == "minus") {
-                assert!((0..sites).all(|s| graph.neighbours_of(s).len() == coordination), "{label}: with the rim, all have z neighbours");
+                assert!(
+                    (0..sites).all(|s| graph.neighbours_of(s).len() == coordination),
+                    "{label}: with the rim, all have z neighbours"
+                );
             }
             for (bond, wraps) in graph.bonds.iter().zip(graph.wraps.chunks(directions)) {
-                let seams: i32 = wraps.iter().zip(&boundaries).filter(|(_, b)| **b == "antiperiodic").map(|(w, _)| w.abs()).sum();
+                let seams: i32 =
+                    wraps.iter().zip(&boundaries).filter(|(_, b)| **b == "antiperiodic").map(|(w, _)| w.abs()).sum();
                 assert_eq!(bond.sign, if seams % 2 == 0 { 1 } else { -1 }, "{label}: {bond:?}");
             }
         }

@@ -68,6 +68,7 @@ fn classes_without_a_coupling_are_not_coupled() {
 
 #[test]
 fn unknown_classes_are_refused() {
-    let message = Bench::try_new::<Triple, Ising>(&params("{}"), &params(r#"{"coupling": {"second": 1}}"#)).unwrap_err().0;
+    let message =
+        Bench::try_new::<Triple, Ising>(&params("{}"), &params(r#"{"coupling": {"second": 1}}"#)).unwrap_err().0;
     assert!(message.contains("`second`") && message.contains("first.x"), "{message}");
 }

@@ -80,13 +80,17 @@ impl Brick {
                 return Err(Error::new("`size` must be at least 1"));
             }
             if size == 1 && boundary == Boundary::Antiperiodic {
-                return Err(Error::new("an antiperiodic direction needs at least 2 cells: a spin cannot be minus itself"));
+                return Err(Error::new(
+                    "an antiperiodic direction needs at least 2 cells: a spin cannot be minus itself",
+                ));
             }
             entries = entries.saturating_mul(size as u64);
             sides.push(Side { cells: size as i64, boundary });
         }
         if entries > MOST_ENTRIES {
-            return Err(Error::new(format!("this lattice has more than the {MOST_ENTRIES} bond ends that can be numbered")));
+            return Err(Error::new(format!(
+                "this lattice has more than the {MOST_ENTRIES} bond ends that can be numbered"
+            )));
         }
         Ok(Brick { shape, sides })
     }
@@ -166,7 +170,8 @@ impl Brick {
         classes: &[ClassIndex],
         rim: &BTreeMap<(Vec<i64>, usize), u32>,
     ) -> Option<Vec<u32>> {
-        let mut candidates: Vec<Option<Vec<u32>>> = self.shape.colourings.iter().map(|c| Some(self.colour(*c))).collect();
+        let mut candidates: Vec<Option<Vec<u32>>> =
+            self.shape.colourings.iter().map(|c| Some(self.colour(*c))).collect();
         self.visit_ends(|end| {
             let class = classes[end.step];
             let (other, free) = match end.place {

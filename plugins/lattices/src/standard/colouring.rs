@@ -19,8 +19,8 @@ pub(crate) fn thirds(cell: &[i64], _site: usize, sides: &[Side]) -> u32 {
 
 #[cfg(test)]
 mod tests {
-    use super::*;
     use super::super::boundary::Boundary;
+    use super::*;
 
     #[test]
     fn rings_of_odd_period_are_coloured_with_three() {

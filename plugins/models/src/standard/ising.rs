@@ -17,8 +17,13 @@ impl Model for Ising {
         formula: "H = -sum J s_i s_j - sum h s_i, s = +1 or -1; J > 0 is ferromagnetic",
         source: "Ising 1925 Z. Phys. 31 253",
         parameters: &[
-            Parameter::optional("coupling", kinds::NUMBER_BY_CLASS, "1", "J: a number, or a mapping from bond class to number")
-                .unit("energy"),
+            Parameter::optional(
+                "coupling",
+                kinds::NUMBER_BY_CLASS,
+                "1",
+                "J: a number, or a mapping from bond class to number",
+            )
+            .unit("energy"),
             Parameter::optional("field", kinds::NUMBER, "0", "h, in the energy unit").unit("energy"),
         ],
         states: 2,

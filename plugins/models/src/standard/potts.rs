@@ -18,8 +18,13 @@ impl Model for Potts {
         source: "Potts 1952 Proc. Camb. Phil. Soc. 48 106",
         parameters: &[
             Parameter::required("q", r#"{"integer":{"min":2,"max":256}}"#, "number of colours"),
-            Parameter::optional("coupling", kinds::NUMBER_BY_CLASS, "1", "J: a number, or a mapping from bond class to number")
-                .unit("energy"),
+            Parameter::optional(
+                "coupling",
+                kinds::NUMBER_BY_CLASS,
+                "1",
+                "J: a number, or a mapping from bond class to number",
+            )
+            .unit("energy"),
         ],
         states_parameter: "q",
         offers: &[

@@ -1,0 +1,12 @@
+//! Distribution, totals, saved states and frozen chains. Systems and the chi-squared test are those of the single-spin rules.
+
+#[path = "../../../local-updates/src/tests/exact.rs"]
+mod exact;
+#[allow(dead_code, reason = "the standard lattices as they are; not all are needed here")]
+#[path = "../../../lattices/src/standard/mod.rs"]
+mod lattices;
+mod mechanics;
+#[path = "../../../models/src/standard/mod.rs"]
+mod models;
+#[path = "../../../local-updates/src/tests/systems.rs"]
+mod systems;

@@ -1,0 +1,342 @@
+//! Single clusters.
+
+use crate::adjacency::Adjacency;
+use crate::bonds::{self, Line, Rows};
+use crate::symmetry::Symmetry;
+use crate::words::Words;
+use spinledger_numerics::random::below_u32;
+use spinledger_numerics::sum::sum_by;
+use spinledger_sdk::{
+    Error, Host, Parameter, Params, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View,
+    kinds,
+};
+
+/// Half words below it leave the next cluster as it is: one in 16. See `README.md`, "Why some clusters rest".
+const REST: u32 = 1 << 28;
+
+/// The update rule `wolff`.
+#[derive(Debug)]
+pub(crate) struct Wolff {
+    clusters: usize,
+}
+
+impl Update for Wolff {
+    const SPEC: UpdateSpec = UpdateSpec {
+        name: "wolff",
+        about: "single-cluster rule: a cluster grown from a random site is flipped",
+        formula: "a neighbour is added with probability max(0, 1 - exp(-(E(R a, b) - E(a, b))/T)), a and b the states of both ends, R the \
+                  symmetry operation; one cluster in 16, drawn beforehand, and each that takes in a pinned site is left as it is",
+        source: "Wolff 1989 Phys. Rev. Lett. 62 361",
+        parameters: &[Parameter::optional("clusters", kinds::COUNT, "1", "clusters in a sweep")],
+        forms: &["pair"],
+        needs: &["inversion|permutation", "inversion|ferromagnetic"],
+        ..UpdateSpec::EMPTY
+    };
+    type Instance<'a> = Chain<'a>;
+
+    fn new(params: &Params) -> Result<Self> {
+        Ok(Wolff { clusters: params.count("clusters")? })
+    }
+
+    fn prepare<'a>(&'a self, prepare: Prepare<'a>) -> Result<Self::Instance<'a>> {
+        Chain::new(self.clusters, prepare)
+    }
+}
+
+/// A chain under single-cluster updates.
+pub(crate) struct Chain<'a> {
+    clusters: usize,
+    inverse_temperature: f64,
+    host: Host<'a>,
+    problem: Problem<'a>,
+    adjacency: Adjacency<'a>,
+    symmetry: Symmetry,
+    /// Rows of each involution, or one set that is rewritten for each exchange.
+    rows: Vec<Rows>,
+    /// For exchanges, see [`Rows::exchange`].
+    costs: Vec<(Line, Line)>,
+    /// States, pinned sites after free ones.
+    states: Vec<u8>,
+    /// The same while a cluster grows: the state before the flip, plus q if the site waits in the queue, plus 2 q if it was worked off.
+    marks: Vec<u16>,
+    /// Sites of the cluster in the order in which they were added. One longer than there are sites, since the place behind the last one is
+    /// written to before it is known whether a site is added.
+    queue: Vec<u32>,
+    words: Words,
+    energy: f64,
+}
+
+impl<'a> Chain<'a> {
+    /// Gets ready, with all spins in state 0 until a configuration is imported.
+    ///
+    /// # Errors
+    /// Where spins are vectors, energies other than pairs are there, no symmetry is given or the tables contradict it, or several chains
+    /// are asked for.
+    fn new(clusters: usize, prepare: Prepare<'a>) -> Result<Self> {
+        let problem = prepare.problem;
+        let energy = &problem.energy;
+        if energy.states == 0 || energy.custom.is_some() || !energy.factors.is_empty() {
+            return Err(Error::new("this rule serves discrete spins with pair energies only"));
+        }
+        let [key] = &prepare.lane_keys[..] else { return Err(Error::new("this rule advances one chain at a time")) };
+        let symmetry = Symmetry::of(energy)?;
+        let adjacency = Adjacency::new(&problem);
+        let beta = prepare.inverse_temperature;
+        let costs = bonds::exchange_costs(&symmetry, &adjacency.ties, energy.pair_tables, beta);
+        let rows = match &symmetry {
+            Symmetry::Involutions(maps) => {
+                maps.iter().map(|map| Rows::of_involution(map, &adjacency.ties, energy.pair_tables, beta)).collect()
+            }
+            Symmetry::Exchanges(q) => vec![Rows::of_exchanges(*q, adjacency.ties.len())],
+        };
+        let mut states = vec![0; problem.graph.sites];
+        states.extend_from_slice(energy.pinned_states);
+        let mut chain = Chain {
+            clusters,
+            inverse_temperature: beta,
+            host: prepare.host,
+            adjacency,
+            symmetry,
+            rows,
+            costs,
+            marks: vec![0; states.len()],
+            queue: vec![0; states.len() + 1],
+            states,
+            words: Words::new(key),
+            energy: 0.0,
+            problem,
+        };
+        chain.begin();
+        Ok(chain)
+    }
+
+    /// Marks and energy from the states.
+    fn begin(&mut self) {
+        self.marks.iter_mut().zip(&self.states).for_each(|(mark, state)| *mark = u16::from(*state));
+        self.energy = total(&self.problem, &self.states);
+    }
+
+    /// For tests: a fault of two percent in the probability of every bond.
+    #[cfg(test)]
+    pub(crate) fn spoil(&mut self) {
+        let spoil = |line: &mut Line| line.limit -= line.limit / 50;
+        self.rows.iter_mut().flat_map(|rows| &mut rows.lines).for_each(spoil);
+        self.costs.iter_mut().for_each(|(alike, apart)| [alike, apart].into_iter().for_each(spoil));
+    }
+
+    /// For tests: as if there were too many kinds of bonds for rows.
+    #[cfg(test)]
+    pub(crate) fn forget_rows(&mut self) {
+        self.adjacency.ties.clear();
+    }
+
+    /// Grows a cluster and flips it, unless it rests or touches a pinned site.
+    fn cluster(&mut self) {
+        let sites = self.problem.graph.sites as u32;
+        let words = &mut self.words;
+        if words.next() < REST {
+            return;
+        }
+        let seed = below_u32(sites, || words.next());
+        let operation = match &self.symmetry {
+            Symmetry::Involutions(maps) if maps.len() > 1 => below_u32(maps.len() as u32, || words.next()) as usize,
+            Symmetry::Involutions(_) => 0,
+            Symmetry::Exchanges(q) => {
+                let own = self.states[seed as usize];
+                let choice = if *q > 2 { below_u32(*q as u32 - 1, || words.next()) as u8 } else { 0 };
+                self.rows[0].exchange(own, choice + u8::from(choice >= own), &self.costs);
+                0
+            }
+        };
+        let (size, change, frozen) = match (self.adjacency.is_varied(), self.adjacency.tie.is_empty()) {
+            (true, _) => self.grow(seed, operation, Bonds::Varied),
+            (false, true) => self.grow(seed, operation, Bonds::Alike),
+            (false, false) => self.grow(seed, operation, Bonds::Kinds),
+        };
+        let map = &self.rows[operation].map;
+        for site in &self.queue[..size] {
+            let (state, mark) = (&mut self.states[*site as usize], &mut self.marks[*site as usize]);
+            if !frozen {
+                *state = map[*state as usize];
+            }
+            *mark = u16::from(*state);
+        }
+        if !frozen {
+            self.energy += change;
+        }
+    }
+
+    /// Grows a cluster first in, first out, a half word for every neighbour looked at; returns its size, the change of energy if it flips,
+    /// and whether it took in a pinned site.
+    #[inline(always)]
+    fn grow(&mut self, seed: u32, operation: usize, kind: Bonds) -> (usize, f64, bool) {
+        let rows = &self.rows[operation];
+        let (sites, q) = (self.problem.graph.sites as u32, self.problem.energy.states as u16);
+        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.words);
+        let (mut head, mut tail, mut change) = (0, 1, 0.0);
+        queue[0] = seed;
+        marks[seed as usize] += q;
+        while head < tail {
+            let site = queue[head];
+            head += 1;
+            if site >= sites {
+                return (tail, 0.0, true);
+            }
+            let state = marks[site as usize] - q;
+            marks[site as usize] += q;
+            let row = rows.row(state as usize);
+            let entries =
+                self.adjacency.offsets[site as usize] as usize..self.adjacency.offsets[site as usize + 1] as usize;
+            for (entry, &neighbour) in entries.clone().zip(&self.adjacency.neighbours[entries]) {
+                let mark = marks[neighbour as usize];
+                let line = match kind {
+                    Bonds::Alike => rows.lines[row + mark as usize],
+                    Bonds::Kinds => {
+                        rows.lines[self.adjacency.tie[entry] as usize * rows.stride() + row + mark as usize]
+                    }
+                    Bonds::Varied => varied(
+                        self.inverse_temperature,
+                        &self.problem,
+                        self.adjacency.tie_of(entry),
+                        &rows.map,
+                        state,
+                        mark,
+                    ),
+                };
+                // The sign of the difference: added, 1, or not, 0, without a branch that would be mispredicted.
+                let added = u64::from(words.next()).wrapping_sub(line.limit) >> 63;
+                marks[neighbour as usize] = mark + q * added as u16;
+                queue[tail] = neighbour;
+                tail += added as usize;
+                change += line.change;
+            }
+        }
+        (tail, change, false)
+    }
+}
+
+/// How thresholds are found.
+#[derive(Clone, Copy)]
+enum Bonds {
+    /// One kind of bond.
+    Alike,
+    /// Several kinds, a row of lines for each.
+    Kinds,
+    /// Too many kinds: computed each time.
+    Varied,
+}
+
+/// The line of a bond that has no row.
+fn varied(
+    inverse_temperature: f64,
+    problem: &Problem<'_>,
+    tie: crate::adjacency::Tie,
+    map: &[u8; 256],
+    state: u16,
+    mark: u16,
+) -> Line {
+    let q = problem.energy.states;
+    let (own, part, other) = (state as usize, mark as usize / q, mark as usize % q);
+    let pairs = &problem.energy.pair_tables[tie.table as usize * q * q..];
+    let cost = tie.strength * (pairs[map[own] as usize * q + other] - pairs[own * q + other]);
+    match part {
+        0 => bonds::line(inverse_temperature, cost),
+        1 => Line { limit: 0, change: cost },
+        _ => Line { limit: 0, change: -cost },
+    }
+}
+
+/// Total energy of a configuration: bonds and sites, by ordered sums.
+fn total(problem: &Problem<'_>, states: &[u8]) -> f64 {
+    let (graph, energy) = (&problem.graph, &problem.energy);
+    let q = energy.states;
+    let mut total = 0.0;
+    if !energy.pair_tables.is_empty() {
+        total += sum_by(graph.bonds.len(), |number| {
+            let bond = graph.bonds[number];
+            let pair = states[bond.i as usize] as usize * q + states[bond.j as usize] as usize;
+            let strength = energy.bond_strengths.get(number).copied().unwrap_or(1.0);
+            strength * energy.pair_tables[energy.bond_tables[number] as usize * q * q + pair]
+        });
+    }
+    if !energy.site_tables.is_empty() {
+        total += sum_by(graph.sites, |site| {
+            let strength = energy.site_strengths.get(site).copied().unwrap_or(1.0);
+            strength * energy.site_tables[energy.site_class[site] as usize * q + states[site] as usize]
+        });
+    }
+    total
+}
+
+impl UpdateInstance for Chain<'_> {
+    fn import(&mut self, lane: usize, view: &View<'_>) -> Result<()> {
+        let (graph, states) = (&self.problem.graph, self.problem.energy.states);
+        if lane != 0 || view.sites() != graph.total || matches!(view, View::Vectors { .. }) {
+            return Err(Error::new(format!("one configuration of {} discrete spins is needed", graph.total)));
+        }
+        if let Some(site) = (0..graph.sites).find(|s| view.state(*s) as usize >= states) {
+            return Err(Error::new(format!("site {site} is in state {}; there are {states}", view.state(site))));
+        }
+        // Pinned sites keep the states that the Hamiltonian gives them.
+        (0..graph.sites).for_each(|site| self.states[site] = view.state(site));
+        self.begin();
+        Ok(())
+    }
+
+    fn export(&self, _lane: usize, spins: &mut Spins<'_>) {
+        if let Spins::States(out) = spins {
+            out.copy_from_slice(&self.states);
+        }
+    }
+
+    fn sweep(&mut self, count: u64) -> Result<()> {
+        for _ in 0..count {
+            if self.host.cancelled() {
+                return Err(Error::cancelled());
+            }
+            for _ in 0..self.clusters {
+                self.cluster();
+            }
+        }
+        Ok(())
+    }
+
+    fn view(&mut self, _lane: usize) -> View<'_> {
+        View::bytes(&self.states)
+    }
+
+    fn tallies(&self, _lane: usize) -> Tallies {
+        let values = self.problem.energy.values;
+        let mut counts = vec![0_u64; values.len()];
+        if !values.is_empty() {
+            self.states[..self.problem.graph.sites].iter().for_each(|s| counts[*s as usize] += 1);
+        }
+        // Counted when asked for: exact for the usual values, and without a history.
+        let sum = counts.iter().zip(values).map(|(count, value)| *count as f64 * value).sum();
+        Tallies {
+            energy: Some(self.energy),
+            magnetisation: (!values.is_empty()).then_some([sum, 0.0, 0.0]),
+            acceptance: None,
+        }
+    }
+
+    fn save(&self, out: &mut Vec<u8>) {
+        out.extend_from_slice(&self.states);
+        out.extend_from_slice(&self.energy.to_bits().to_le_bytes());
+        self.words.save(out);
+    }
+
+    fn restore(&mut self, bytes: &[u8]) -> Result<()> {
+        let wrong = || Error::new("the saved state is of another lattice or model");
+        let (states, rest) = bytes.split_at_checked(self.states.len()).ok_or_else(wrong)?;
+        let (energy, words) = rest.split_first_chunk::<8>().ok_or_else(wrong)?;
+        if states.iter().any(|s| *s as usize >= self.problem.energy.states) {
+            return Err(wrong());
+        }
+        self.words = Words::restore(words)?;
+        self.states.copy_from_slice(states);
+        self.begin();
+        self.energy = f64::from_bits(u64::from_le_bytes(*energy));
+        Ok(())
+    }
+}
