@@ -161,6 +161,11 @@ impl Catalogue {
         &self.refusals
     }
 
+    /// The same, to be kept or thrown.
+    pub fn into_refusals(self) -> Vec<Refusal> {
+        self.refusals
+    }
+
     /// What may surprise.
     pub fn notes(&self) -> &[Note] {
         &self.notes

@@ -197,3 +197,76 @@ unsafe extern "C" fn cos(x: f64) -> f64 {
 unsafe extern "C" fn pow(x: f64, y: f64) -> f64 {
     elementary::pow(x, y)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use std::sync::Mutex;
+    use std::sync::atomic::AtomicU64;
+
+    /// Squares of all tiles, each tile to its own place.
+    unsafe extern "C" fn square(argument: *mut c_void, tile: usize) {
+        // SAFETY: the test hands over places that live longer than the loop.
+        let places = unsafe { &*argument.cast::<Vec<AtomicU64>>() };
+        places[tile].fetch_add((tile * tile) as u64, Ordering::Relaxed);
+    }
+
+    #[test]
+    fn every_tile_runs_once_with_any_number_of_threads() {
+        for threads in [0, 1, 2, 5] {
+            let host = HostTable::start(Services { threads, ..Services::default() }).unwrap();
+            let mut places: Vec<AtomicU64> = (0..97).map(|_| AtomicU64::new(1)).collect();
+            let loop_ = host.raw.parallel_for.unwrap();
+            // SAFETY: context, body and argument belong together.
+            unsafe { loop_(host.raw.context, places.len(), Some(square), (&raw mut places).cast()) };
+            for (tile, place) in places.into_iter().enumerate() {
+                assert_eq!(place.into_inner(), (tile * tile) as u64 + 1, "{threads} threads");
+            }
+        }
+    }
+
+    #[test]
+    fn streams_of_the_table_are_those_of_the_numerics() {
+        let host = HostTable::start(Services::default()).unwrap();
+        let key = StreamKey::from_text("a stream");
+        let (mut stream, mut words) = (SlStream { state: [0; 4] }, [0; 5]);
+        // SAFETY: all pointers lead to what they should.
+        unsafe {
+            host.raw.open_stream.unwrap()(host.raw.context, &SlKey { bytes: key.0 }, &mut stream);
+            host.raw.fill.unwrap()(host.raw.context, &mut stream, words.as_mut_ptr(), 2);
+            host.raw.fill.unwrap()(host.raw.context, &mut stream, words[2..].as_mut_ptr(), 3);
+        }
+        let mut generator = Xoshiro::from_key(&key);
+        assert_eq!(words, std::array::from_fn(|_| generator.next()));
+    }
+
+    #[test]
+    fn lines_arrive_and_a_failing_listener_harms_nobody() {
+        static LINES: Mutex<Vec<(Level, String)>> = Mutex::new(Vec::new());
+        let log: Log = Box::new(|level, line| {
+            LINES.lock().unwrap().push((level, line.to_owned()));
+            assert!(!line.contains("panic"), "as asked");
+        });
+        let host = HostTable::start(Services { threads: 1, log }).unwrap();
+        let say = |level, text: &str| {
+            let raw = SlText { data: text.as_ptr(), length: text.len() };
+            // SAFETY: the text lives for the call.
+            unsafe { host.raw.log.unwrap()(host.raw.context, level, raw) };
+        };
+        say(0, "a note");
+        say(1, "panic");
+        assert_eq!(LINES.lock().unwrap_or_else(|e| e.into_inner()).len(), 2);
+    }
+
+    #[test]
+    fn cancelling_is_seen_and_taken_back() {
+        let host = HostTable::start(Services::default()).unwrap();
+        // SAFETY: the table's own context.
+        let seen = || unsafe { host.raw.cancelled.unwrap()(host.raw.context) };
+        assert_eq!(seen(), 0);
+        host.set_cancelled(true);
+        assert_eq!(seen(), 1);
+        host.set_cancelled(false);
+        assert_eq!(seen(), 0);
+    }
+}

@@ -18,7 +18,7 @@ pub type Factor = spinledger_abi::SlFactor;
 ///
 /// sum over bonds b of strength(b) E\[table(b)\]\[s_i\]\[s_j\] + sum over free sites of strength(i) E\[class(i)\]\[s_i\] + factors,
 ///
-/// for vector spins the sum over bonds of S_i^T M S_j plus S^T A S + f . S over free sites; [`Custom`] energy is added where there is any.
+/// for vector spins the sum over bonds of strength(b) S_i^T M S_j plus strength(i) (S^T A S + f . S) over free sites; [`Custom`] energy is added where there is any.
 /// Signs of antiperiodic bonds are folded into the tables. Slices that do not apply are empty.
 #[derive(Clone, Debug)]
 pub struct Energy<'a> {
