@@ -3,6 +3,7 @@
 use serde::{Deserialize, Serialize};
 use spinledger_pipeline::Units;
 use spinledger_terms::{Identity, Item, ItemKind, Value, Vocabulary};
+use std::collections::BTreeMap;
 
 /// Counts changes of the engine's own part in what is recorded: start configurations, order of rules within a sweep, when rows are
 /// measured, streams. A change makes new keys of all chains.
@@ -70,6 +71,7 @@ impl Dynamics {
             let mut parameters = value.as_map()?.clone();
             parameters.remove("plugin");
             let times = parameters.remove("times").and_then(|t| t.as_i64()).unwrap_or(1);
+            in_energy_units(&mut parameters, item, units);
             let reference = ItemRef { identity: identity.clone(), parameters: Value::Map(parameters) };
             Some((reference, item.clone(), u64::try_from(times).ok()?))
         };
@@ -155,6 +157,26 @@ impl Dynamics {
     /// Whether code that did not come with the program takes part.
     pub fn is_foreign(&self) -> bool {
         self.identities().iter().any(|identity| !identity.standard)
+    }
+}
+
+/// Fields that a pipeline gives in tesla become energies, which is all that plugins and keys know.
+fn in_energy_units(parameters: &mut BTreeMap<String, Value>, item: &Item, units: &Units) {
+    fn scale(value: &mut Value, factor: f64) {
+        match value {
+            Value::Number(x) => *x *= factor,
+            Value::List(list) => list.iter_mut().for_each(|value| scale(value, factor)),
+            Value::Map(map) => map.values_mut().for_each(|value| scale(value, factor)),
+            _ => {}
+        }
+    }
+    if units.moment.is_none() {
+        return;
+    }
+    for field in item.parameters.iter().filter(|field| field.unit == "field") {
+        if let Some(value) = parameters.get_mut(&field.name) {
+            scale(value, units.field_energy());
+        }
     }
 }
 
