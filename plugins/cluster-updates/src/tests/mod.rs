@@ -2,7 +2,7 @@
 
 #[path = "../../../local-updates/src/tests/exact.rs"]
 mod exact;
-#[allow(dead_code, reason = "the standard lattices as they are; not all are needed here")]
+#[allow(dead_code, unused_imports, reason = "the standard lattices as they are; not all are needed here")]
 #[path = "../../../lattices/src/standard/mod.rs"]
 mod lattices;
 mod mechanics;
