@@ -18,32 +18,44 @@ fn target() -> PathBuf {
     root().join("target/test-plugins")
 }
 
+/// Builds a workspace outside the project's own.
+fn build(folder: &Path) {
+    // The versions that the root pins, so that what is built there can be built here, also without a network. By way of
+    // another name, since several test programs may do this at once.
+    let lock = folder.join(format!("Cargo.lock.{}", std::process::id()));
+    std::fs::copy(root().join("Cargo.lock"), &lock).expect("the lock file can be copied");
+    std::fs::rename(&lock, folder.join("Cargo.lock")).expect("the lock file can be put in its place");
+    let cargo = std::env::var_os("CARGO").unwrap_or_else(|| "cargo".into());
+    let mut command = Command::new(cargo);
+    command.args(["build", "--quiet", "--manifest-path"]).arg(folder.join("Cargo.toml"));
+    let status = command.arg("--target-dir").arg(target()).status().expect("cargo runs");
+    assert!(status.success(), "{} cannot be built", folder.display());
+}
+
+/// The file of a library that was built.
+fn library(name: &str) -> PathBuf {
+    let file = format!("{}{name}{}", std::env::consts::DLL_PREFIX, std::env::consts::DLL_SUFFIX);
+    target().join("debug").join(file).canonicalize().expect("the library was built")
+}
+
 /// The two Rust libraries.
 fn built() -> &'static (PathBuf, PathBuf) {
     static BUILT: OnceLock<(PathBuf, PathBuf)> = OnceLock::new();
     BUILT.get_or_init(|| {
-        let (root, folder) = (root(), root().join("tests/plugins"));
-        // The versions that the root pins, so that what is built there can be built here, also without a network. By way of
-        // another name, since several test programs may do this at once.
-        let lock = folder.join(format!("Cargo.lock.{}", std::process::id()));
-        std::fs::copy(root.join("Cargo.lock"), &lock).expect("the lock file can be copied");
-        std::fs::rename(&lock, folder.join("Cargo.lock")).expect("the lock file can be put in its place");
-        let cargo = std::env::var_os("CARGO").unwrap_or_else(|| "cargo".into());
-        let status = Command::new(cargo)
-            .args(["build", "--quiet", "--manifest-path"])
-            .arg(folder.join("Cargo.toml"))
-            .arg("--target-dir")
-            .arg(target())
-            .env_remove("CARGO_ENCODED_RUSTFLAGS")
-            .status()
-            .expect("cargo runs");
-        assert!(status.success(), "the plugin libraries for tests cannot be built");
-        let library = |name: &str| {
-            let file =
-                format!("{}spinledger_test_{name}{}", std::env::consts::DLL_PREFIX, std::env::consts::DLL_SUFFIX);
-            target().join("debug").join(file).canonicalize().expect("the library was built")
-        };
-        (library("forms"), library("faulty"))
+        build(&root().join("tests/plugins"));
+        (library("spinledger_test_forms"), library("spinledger_test_faulty"))
+    })
+}
+
+/// The example of a plugin (`minimal-lattice`) with the lattice `ladder`, as its author would build it.
+///
+/// # Panics
+/// Where it cannot be built.
+pub fn minimal_lattice() -> &'static Path {
+    static BUILT: OnceLock<PathBuf> = OnceLock::new();
+    BUILT.get_or_init(|| {
+        build(&root().join("plugins/examples/minimal-lattice"));
+        library("minimal_lattice")
     })
 }
 

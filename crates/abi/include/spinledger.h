@@ -69,7 +69,7 @@
 // The host asked to stop (`SlHost::cancelled`) and the function did.
 #define SL_CANCELLED 3
 
-// Item kinds.
+// Kinds of items: sites and bonds.
 #define SL_LATTICE 1
 
 // A Hamiltonian.

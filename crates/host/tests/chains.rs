@@ -254,6 +254,54 @@ fn a_panic_is_an_error_and_ends_the_chain() {
     assert!(matches!(chain.export(0).unwrap_err(), HostError::Broken { .. }));
 }
 
+/// The panic of the lowest tile is the one that is told, whoever ran it.
+#[test]
+fn a_panic_in_a_parallel_loop_is_an_error_too() {
+    for threads in [1, 3] {
+        let bench = Bench::with_threads(&[plugins::forms(), plugins::faulty()], threads);
+        let graph = bench.graph("test-grid", r#"{"size": 2, "boundary": "periodic"}"#);
+        let energy = bench.energy("test-ising", ISING, &graph);
+        let mut chain = sampler(&bench, "faulty-tile", &graph, &energy, 0.4, 1);
+        let error = chain.sweep(1).unwrap_err();
+        assert!(matches!(&error, HostError::Panicked { message, .. } if message == "tile 3 panics"), "{error}");
+    }
+}
+
+#[test]
+fn a_rule_that_asks_whether_it_should_stop_is_stopped() {
+    let bench = Bench::forms();
+    let graph = bench.graph("test-grid", r#"{"size": 2, "boundary": "periodic"}"#);
+    let energy = bench.energy("test-ising", ISING, &graph);
+    let mut chain = sampler(&bench, "faulty-patient", &graph, &energy, 0.4, 1);
+    std::thread::scope(|scope| {
+        let sweeping = scope.spawn(|| chain.sweep(1).unwrap_err());
+        bench.loader.set_cancelled(true);
+        let error = sweeping.join().unwrap();
+        assert!(matches!(error, HostError::Cancelled { .. }), "{error}");
+    });
+}
+
+/// Bits of a measurement that runs in a parallel loop, and the line that the observable logs.
+#[test]
+fn threads_change_no_bits_and_lines_arrive() {
+    use std::sync::Mutex;
+    static LINES: Mutex<Vec<String>> = Mutex::new(Vec::new());
+    let bits = [0, 1, 2, 4].map(|threads| {
+        let mut bench = Bench::with_threads(&[plugins::forms()], threads);
+        let log = Box::new(|_: spinledger_host::Level, line: &str| LINES.lock().unwrap().push(line.to_owned()));
+        bench.loader = spinledger_host::Loader::new(spinledger_host::Services { threads, log }).unwrap();
+        let graph = bench.graph("test-grid", r#"{"size": [13, 17], "boundary": "periodic"}"#);
+        let energy = bench.energy("test-rotor", r#"{"coupling": 1, "field": 0.1, "anisotropy": 0}"#, &graph);
+        let mut chain = sampler(&bench, "probe-vectors", &graph, &energy, 0.8, 1);
+        chain.sweep(5).unwrap();
+        let mut out = [0.0];
+        observer(&bench, "probe-mean", &graph, &energy).measure(&mut chain, &[0], &mut out).unwrap();
+        out[0].to_bits()
+    });
+    assert!(bits.iter().all(|b| *b == bits[0]), "{bits:?}");
+    assert_eq!(*LINES.lock().unwrap(), ["probe-mean is prepared"; 4]);
+}
+
 #[test]
 fn states_that_do_not_exist_are_noticed() {
     let bench = Bench::forms();

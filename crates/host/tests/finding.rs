@@ -141,3 +141,18 @@ fn the_vocabulary_of_a_pipeline_is_what_is_found() {
     let models: Vec<&str> = vocabulary.names(ItemKind::Model).collect();
     assert_eq!(models, ["test-ising", "test-four-spin", "test-rotor", "test-chain-term", "c-triple", "c-factor"]);
 }
+
+/// The section is part of what is loaded, so that no tool takes it for debugging information.
+#[test]
+#[cfg(target_os = "linux")]
+fn the_manifest_survives_strip() {
+    let folder = tempfile::tempdir().unwrap();
+    for (name, library) in [("rust.so", plugins::forms()), ("c.so", plugins::c_forms())] {
+        let file = folder.path().join(name);
+        fs::copy(library, &file).unwrap();
+        assert!(std::process::Command::new("strip").arg(&file).status().unwrap().success());
+        assert!(fs::metadata(&file).unwrap().len() < fs::metadata(library).unwrap().len(), "it was stripped");
+        let (before, after) = (catalogue(&[library]), catalogue(&[&file]));
+        assert_eq!(before.libraries()[0].1, after.libraries()[0].1);
+    }
+}

@@ -32,6 +32,14 @@ fn a_proper_library_is_loaded_and_builds() {
 }
 
 #[test]
+fn the_example_of_a_plugin_is_found_loaded_and_builds() {
+    let bench = Bench::new(&[plugins::minimal_lattice()]);
+    let graph = bench.graph("ladder", r#"{"size": 5}"#);
+    assert_eq!((graph.sites, graph.bonds.len()), (10, 15));
+    assert_eq!(graph.class_names, ["first.leg", "first.rung"]);
+}
+
+#[test]
 fn everything_wrong_with_the_code_is_its_own_refusal() {
     assert!(matches!(refusal("NO_SYMBOL"), LoadError::NoSymbol { .. }));
     assert!(matches!(refusal("RETURNS_NULL"), LoadError::NotALibrary { .. }));

@@ -1,6 +1,6 @@
 //! A plugin library for tests whose update rules go wrong when they are asked to sweep, each in its own way.
 
-use spinledger_sdk::{Params, Prepare, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View};
+use spinledger_sdk::{Error, Host, Params, Prepare, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View};
 
 /// What a rule does instead of sweeping.
 #[derive(Clone, Copy, PartialEq)]
@@ -10,16 +10,22 @@ enum Fault {
     Null,
     Loop,
     Garbage,
+    /// In a tile of a parallel loop.
+    Tile,
+    /// Works until it is asked to stop.
+    Patient,
+    /// Says that it tracks an energy.
     Energy,
 }
 
 /// Chains that nothing happens to, until the fault does.
-struct Chains {
+struct Chains<'a> {
     fault: Fault,
+    host: Host<'a>,
     chains: Vec<Vec<u8>>,
 }
 
-impl UpdateInstance for Chains {
+impl UpdateInstance for Chains<'_> {
     fn import(&mut self, lane: usize, view: &View<'_>) -> Result<()> {
         self.chains[lane] = (0..view.sites()).map(|s| view.state(s)).collect();
         Ok(())
@@ -42,6 +48,13 @@ impl UpdateInstance for Chains {
                 std::thread::sleep(std::time::Duration::from_millis(20));
             },
             Fault::Garbage => self.chains.iter_mut().for_each(|states| states.fill(200)),
+            Fault::Tile => self.host.parallel_for(9, |tile| assert!(tile < 3, "tile {tile} panics")),
+            Fault::Patient => loop {
+                if self.host.cancelled() {
+                    return Err(Error::cancelled());
+                }
+                std::thread::sleep(std::time::Duration::from_millis(1));
+            },
             Fault::Energy => {}
         }
         Ok(())
@@ -72,15 +85,15 @@ macro_rules! faulty {
 
         impl Update for $rule {
             const SPEC: UpdateSpec = UpdateSpec { name: $name, about: $about, ..UpdateSpec::EMPTY };
-            type Instance<'a> = Chains;
+            type Instance<'a> = Chains<'a>;
 
             fn new(_: &Params) -> Result<Self> {
                 Ok($rule)
             }
 
-            fn prepare<'a>(&'a self, prepare: Prepare<'a>) -> Result<Chains> {
+            fn prepare<'a>(&'a self, prepare: Prepare<'a>) -> Result<Chains<'a>> {
                 let chains = vec![vec![0; prepare.problem.graph.total]; prepare.lane_keys.len()];
-                Ok(Chains { fault: Fault::$rule, chains })
+                Ok(Chains { fault: Fault::$rule, host: prepare.host, chains })
             }
         }
     )*};
@@ -92,10 +105,12 @@ faulty! {
     Null, "faulty-null", "Reads through a null pointer when it is to sweep.";
     Loop, "faulty-loop", "Never ends when it is to sweep.";
     Garbage, "faulty-garbage", "Has states that do not exist after a sweep.";
+    Tile, "faulty-tile", "Panics in a tile of a parallel loop.";
+    Patient, "faulty-patient", "Sweeps until it is asked to stop.";
     Energy, "faulty-energy", "Says that it tracks an energy, and does not.";
 }
 
 spinledger_sdk::export! {
     library: "test-faulty", version: env!("CARGO_PKG_VERSION"), licence: "MIT OR Apache-2.0",
-    updates: [Panic, Abort, Null, Loop, Garbage, Energy],
+    updates: [Panic, Abort, Null, Loop, Garbage, Tile, Patient, Energy],
 }
