@@ -1,5 +1,7 @@
 //! The tables against the formulas, and what is refused.
 
+mod published;
+
 use crate::standard::{Ising, Potts};
 use spinledger_sdk::testing::{Bench, params};
 use spinledger_sdk::{Lattice, LatticeBuilder, LatticeSpec, Model, Params, Result};
