@@ -70,8 +70,7 @@ pub fn forms() -> &'static Path {
 }
 
 /// A library (`test-faulty`) whose update rules go wrong when they sweep: `faulty-panic`, `faulty-abort`, `faulty-null`, `faulty-loop`,
-/// `faulty-garbage`,
-/// `faulty-energy`.
+/// `faulty-garbage`, `faulty-tile` (in a parallel loop), `faulty-patient` (until it is asked to stop), `faulty-energy` (a wrong tally).
 ///
 /// # Panics
 /// Where it cannot be built.
@@ -85,7 +84,16 @@ pub fn faulty() -> &'static Path {
 /// Where there is no C compiler.
 pub fn c_forms() -> &'static Path {
     static BUILT: OnceLock<PathBuf> = OnceLock::new();
-    BUILT.get_or_init(|| compile("forms.c", "", "c-forms"))
+    BUILT.get_or_init(|| compile("tests/plugins/c/forms.c", "", "c-forms"))
+}
+
+/// The example of a plugin in C (`neighbours`) with the observable `neighbour-product`.
+///
+/// # Panics
+/// Where there is no C compiler.
+pub fn c_observable() -> &'static Path {
+    static BUILT: OnceLock<PathBuf> = OnceLock::new();
+    BUILT.get_or_init(|| compile("plugins/examples/c-observable/neighbours.c", "", "neighbours"))
 }
 
 /// A library in C with the lattice `pair-of-sites`, and with the one thing wrong with it that `switch` names (see `tests/plugins/c/variant.c`);
@@ -94,7 +102,7 @@ pub fn c_forms() -> &'static Path {
 /// # Panics
 /// Where there is no C compiler.
 pub fn variant(switch: &str) -> PathBuf {
-    compile("variant.c", switch, &format!("variant-{}", switch.to_lowercase().replace('_', "-")))
+    compile("tests/plugins/c/variant.c", switch, &format!("variant-{}", switch.to_lowercase().replace('_', "-")))
 }
 
 /// Compiles a library, by way of another name, since several test programs may do this at once.
@@ -109,7 +117,7 @@ fn compile(source: &str, switch: &str, name: &str) -> PathBuf {
     if !switch.is_empty() {
         command.arg(format!("-D{switch}"));
     }
-    command.arg("-I").arg(root.join("crates/abi/include")).arg(root.join("tests/plugins/c").join(source));
+    command.arg("-I").arg(root.join("crates/abi/include")).arg(root.join(source));
     let status = command.arg("-o").arg(&draft).status().expect("a C compiler runs");
     assert!(status.success(), "{source} cannot be compiled with {switch:?}");
     std::fs::rename(&draft, &file).expect("the library can be put in its place");

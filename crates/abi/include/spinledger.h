@@ -335,8 +335,9 @@ typedef struct SlCustom {
 
 // A Hamiltonian on a graph, flattened by the host. Energy = pairs + sites + factors + vectors + custom, each where present.
 //
-// For discrete spins: sum over bonds b of strength(b) E[table(b)][s_i][s_j] + sum over free sites of strength(i) E[class(i)][s_i] + sum
-// over factors. For vector spins: sum over bonds of strength(b) S_i^T M S_j + sum over free sites of strength(i) (S^T A S + f . S).
+// For discrete spins: sum over bonds b of `strength(b) E[table(b)][s_i][s_j]`, plus sum over free sites of `strength(i) E[class(i)][s_i]`,
+// plus sum over factors. For vector spins: sum over bonds of `strength(b) S_i^T M S_j`, plus sum over free sites of
+// `strength(i) (S^T A S + f . S)`.
 // Signs of antiperiodic bonds are folded into the tables.
 typedef struct SlEnergy {
   // Size of this struct in bytes.

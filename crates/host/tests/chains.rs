@@ -242,6 +242,22 @@ fn an_observable_in_c_reads_a_rule_in_rust() {
 }
 
 #[test]
+fn the_example_of_an_observable_in_c_measures() {
+    let bench = Bench::new(&[plugins::forms(), plugins::c_observable()]);
+    let graph = bench.graph("test-grid", r#"{"size": [3, 4], "boundary": ["antiperiodic", "minus"]}"#);
+    let energy = bench.energy("test-ising", ISING, &graph);
+    let mut chain = sampler(&bench, "probe-pair", &graph, &energy, 0.2, 1);
+    let mut product = observer(&bench, "neighbour-product", &graph, &energy);
+    assert!(product.columns()[0].invariant);
+    let mut out = [f64::NAN];
+    product.measure(&mut chain, &[0], &mut out).unwrap();
+    let Configuration::States(states) = chain.export(0).unwrap() else { panic!("states") };
+    let spin = |site: u32| 1.0 - 2.0 * f64::from(states[site as usize]);
+    let sum: f64 = graph.bonds.iter().map(|b| f64::from(b.sign) * spin(b.i) * spin(b.j)).sum();
+    assert_eq!(out[0], sum / graph.bonds.len() as f64);
+}
+
+#[test]
 fn a_panic_is_an_error_and_ends_the_chain() {
     let bench = Bench::forms();
     let graph = bench.graph("test-grid", r#"{"size": 2, "boundary": "periodic"}"#);

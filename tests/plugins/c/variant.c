@@ -71,6 +71,7 @@ static int32_t build(const void *lattice, const SlLatticeSink *sink, SlMessage *
     SlBond bond = { 0, 1, 0, 1, 0 };
     (void)lattice;
     (void)message;
+    (void)positions;
     (void)directions;
     (void)colours;
 #if defined(BAD_BOND)

@@ -50,7 +50,7 @@ impl Lattice for Grid {
         let classes = [b.class("first.x"), b.class("first.y")];
         // Pinned sites come after all free ones and before the bonds.
         let mut rim = Vec::new();
-        for d in 0..2 {
+        for (d, &class) in classes.iter().enumerate() {
             let direction = match self.boundary[d].as_str() {
                 "plus" => 1,
                 "minus" => -1,
@@ -63,7 +63,7 @@ impl Lattice for Grid {
                     } else {
                         (at(k, inside), [k as f64, outside])
                     };
-                    rim.push((site, b.pinned(&place, 0, direction), classes[d]));
+                    rim.push((site, b.pinned(&place, 0, direction), class));
                 }
             }
         }
@@ -86,7 +86,7 @@ impl Lattice for Grid {
         for (site, pinned, class) in rim {
             b.bond(site, pinned, class);
         }
-        if (0..2).all(|d| !closed[d] || self.size[d] % 2 == 0) {
+        if (0..2).all(|d| !closed[d] || self.size[d].is_multiple_of(2)) {
             b.colours((0..lx * ly).map(|s| ((s / ly + s % ly) % 2) as u32).collect());
         }
         Ok(())
