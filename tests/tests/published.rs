@@ -8,8 +8,8 @@
 #[expect(dead_code, reason = "shared by several test programs, none of which uses all of it")]
 mod table;
 
-use spinledger_tests::program::Desk;
 use spinledger_terms::Table;
+use spinledger_tests::program::Desk;
 use table::Table as Reference;
 
 /// Standard errors that a value may be off.
@@ -64,7 +64,10 @@ impl Deviations {
             .unwrap_or_else(|| panic!("{what}: no {quantity} at {column} = {at}"));
         let (value, error) = (number("value", row).expect("a value"), number("error", row).expect("an error"));
         if error == 0.0 {
-            assert!((value - exact).abs() <= 1e-12 * exact.abs().max(1.0), "{what}: {quantity} is {value} without error, exactly {exact}");
+            assert!(
+                (value - exact).abs() <= 1e-12 * exact.abs().max(1.0),
+                "{what}: {quantity} is {value} without error, exactly {exact}"
+            );
             return;
         }
         let deviation = (value - exact) / error;
@@ -81,7 +84,11 @@ impl Deviations {
         assert!(self.all.len() >= least, "{} values were checked, {least} expected", self.all.len());
         let square = self.all.iter().map(|d| d * d).sum::<f64>() / self.all.len() as f64;
         let spread = 5.0 * (6.0 / self.all.len() as f64).sqrt();
-        assert!(square < 1.0 + spread && square > (1.0 - spread).max(0.1), "mean square deviation {square} of {}", self.all.len());
+        assert!(
+            square < 1.0 + spread && square > (1.0 - spread).max(0.1),
+            "mean square deviation {square} of {}",
+            self.all.len()
+        );
     }
 }
 
@@ -92,7 +99,14 @@ fn tori_have_kaufmans_energies() {
     for (size, rules) in [(16, &RULES[..3]), (32, &RULES[2..3])] {
         for rule in rules {
             let scan = "temperature: [2, 2.2, 2.3, 2.5, 3]";
-            let text = pipeline("kaufman", &format!("plugin: square, size: {size}"), "plugin: ising", rule, scan, "measure: 20000");
+            let text = pipeline(
+                "kaufman",
+                &format!("plugin: square, size: {size}"),
+                "plugin: ising",
+                rule,
+                scan,
+                "measure: 20000",
+            );
             let averages = averages(&text);
             let side = size.to_string();
             for row in reference.rows().filter(|r| r.text("nx") == side && r.text("ny") == side) {
@@ -124,7 +138,14 @@ fn small_systems_have_enumerated_averages() {
     for (number, (system, lattice)) in systems.into_iter().enumerate() {
         let rules = [RULES[number % 4], RULES[(number + 1) % 4]];
         for rule in rules {
-            let text = pipeline(system, lattice, "plugin: ising", rule, "temperature: [1.5, 2.5, 4]", "measure: 20000\n    every: 2");
+            let text = pipeline(
+                system,
+                lattice,
+                "plugin: ising",
+                rule,
+                "temperature: [1.5, 2.5, 4]",
+                "measure: 20000\n    every: 2",
+            );
             let averages = averages(&text);
             for row in reference.rows().filter(|r| r.text("system") == system) {
                 let t = row.number("T");
@@ -142,7 +163,15 @@ fn small_systems_have_enumerated_averages() {
                     deviations.take(&averages, quantity, "temperature", t, row.number(column), &what);
                 }
                 let susceptibility = {
-                    let sites: f64 = if system.starts_with("cubic") { 12.0 } else if system.contains("3x3") { 9.0 } else if system.contains("2x4") { 8.0 } else { 16.0 };
+                    let sites: f64 = if system.starts_with("cubic") {
+                        12.0
+                    } else if system.contains("3x3") {
+                        9.0
+                    } else if system.contains("2x4") {
+                        8.0
+                    } else {
+                        16.0
+                    };
                     sites * (row.number("m2") - row.number("abs_m").powi(2)) / t
                 };
                 deviations.take(&averages, "susceptibility", "temperature", t, susceptibility, &what);
@@ -180,14 +209,22 @@ fn the_infinite_lattice_is_onsagers_and_yangs() {
     let mut deviations = Deviations::default();
     let scan = "temperature: [1.5, 1.8, 3, 3.5]";
     let more = "measure: 10000\n    start: ordered";
-    let averages = averages(&pipeline("infinite", "plugin: square, size: 64", "plugin: ising", "heat-bath", scan, more));
+    let averages =
+        averages(&pipeline("infinite", "plugin: square, size: 64", "plugin: ising", "heat-bath", scan, more));
     for row in reference.rows() {
         let t = row.number("T");
         if [1.5, 1.8, 3.0, 3.5].contains(&t) {
             deviations.take(&averages, "energy", "temperature", t, row.number("energy"), "infinite");
             deviations.take(&averages, "heat_capacity", "temperature", t, row.number("specific_heat"), "infinite");
             if t < 2.0 {
-                deviations.take(&averages, "magnetisation_abs", "temperature", t, row.number("magnetisation"), "infinite");
+                deviations.take(
+                    &averages,
+                    "magnetisation_abs",
+                    "temperature",
+                    t,
+                    row.number("magnetisation"),
+                    "infinite",
+                );
             }
         }
     }
@@ -204,7 +241,14 @@ fn rings_in_a_field_are_exact() {
             let (k, h) = (row.number("K"), row.number("h_over_T"));
             // In units of T: coupling K, field h, temperature 1.
             let model = format!("plugin: ising, coupling: {k}, field: {h}");
-            let text = pipeline("ring", "plugin: chain, size: 10", &model, rule, "temperature: [1]", "measure: 10000\n    every: 2");
+            let text = pipeline(
+                "ring",
+                "plugin: chain, size: 10",
+                &model,
+                rule,
+                "temperature: [1]",
+                "measure: 10000\n    every: 2",
+            );
             let averages = averages(&text);
             let what = format!("ring, K = {k}, h = {h}, {rule}");
             deviations.take(&averages, "magnetisation", "temperature", 1.0, row.number("m"), &what);
@@ -221,7 +265,14 @@ fn potts_colours_are_enumerated() {
     let mut deviations = Deviations::default();
     for rule in ["metropolis", "heat-bath", "wolff", "{ plugin: metropolis, lanes: 64 }"] {
         let scan = "inverse_temperature: [0, 0.4, 1.1]";
-        let text = pipeline("potts", "plugin: square, size: 3", "plugin: potts, q: 3", rule, scan, "measure: 10000\n    every: 2");
+        let text = pipeline(
+            "potts",
+            "plugin: square, size: 3",
+            "plugin: potts, q: 3",
+            rule,
+            scan,
+            "measure: 10000\n    every: 2",
+        );
         let averages = averages(&text.replace("[energy, magnetisation]", "[energy, order-parameter]"));
         for beta in [0.0, 0.4, 1.1] {
             let (mut z, mut energy, mut order) = (0.0, 0.0, 0.0);

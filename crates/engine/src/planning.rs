@@ -219,9 +219,10 @@ pub struct Parcel {
 pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &Products) -> Option<AnalysisPlan> {
     let mut parameters = Value::Map(step.body.clone());
     if let Ok(Expansion::Points(points)) = step.expand(&|_| None, &study.vocabulary)
-        && let Some(point) = points.first() {
-            parameters = point.body();
-        }
+        && let Some(point) = points.first()
+    {
+        parameters = point.body();
+    }
     (kind.complete)(&mut parameters);
     let roles = references(&step.spec.fields, &parameters);
     for (role, _) in &roles {
@@ -411,9 +412,10 @@ pub fn foreign_files(study: &Study, step: &Step) -> Vec<String> {
             (Kind::Plugin { of }, value) => {
                 let name = value.as_str().or_else(|| value.get("plugin").and_then(Value::as_str));
                 if let Some((identity, _)) = name.and_then(|name| study.vocabulary.item(*of, name))
-                    && !identity.standard {
-                        out.push(identity.file.clone());
-                    }
+                    && !identity.standard
+                {
+                    out.push(identity.file.clone());
+                }
             }
             (Kind::List { of, .. }, Value::List(list)) => list.iter().for_each(|v| walk(of, v, study, out)),
             (Kind::Either { of }, value) => of.iter().for_each(|kind| walk(kind, value, study, out)),

@@ -342,14 +342,15 @@ impl Chains<'_> {
         let scale = energy_scale(&self.problem.energy, &self.problem.graph).max(energy.abs());
         let off = |found: f64| (found - energy).abs() > ENERGY_TOLERANCE * scale || found.is_nan();
         if let Some(tracked) = sampler.tallies(lane).map_err(|e| chain_text(&e))?.energy
-            && off(tracked) {
-                let rule = &self.point.dynamics.update[self.holder].0.identity.item;
-                return Err(format!(
-                    "after {} sweeps the rule `{rule}` tracks a total energy of {tracked}, recomputed it is {energy}: the \
+            && off(tracked)
+        {
+            let rule = &self.point.dynamics.update[self.holder].0.identity.item;
+            return Err(format!(
+                "after {} sweeps the rule `{rule}` tracks a total energy of {tracked}, recomputed it is {energy}: the \
                      rule's or the model's change of energy is wrong",
-                    self.swept
-                ));
-            }
+                self.swept
+            ));
+        }
         let standard = self.point.dynamics.observe.iter().any(|o| o.identity.standard && o.identity.item == "energy");
         let column = data.columns.iter().find(|c| standard && c.name == "energy");
         if let Some(recorded) = column.and_then(|c| c.values.last()) {

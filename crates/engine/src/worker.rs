@@ -36,9 +36,10 @@ impl Line {
         let Ok(mut text) = serde_json::to_vec(report) else { return };
         text.push(b'\n');
         if let Ok(mut stream) = self.stream.lock()
-            && stream.write_all(&text).is_err() {
-                self.stop.store(true, Ordering::Relaxed);
-            }
+            && stream.write_all(&text).is_err()
+        {
+            self.stop.store(true, Ordering::Relaxed);
+        }
     }
 
     /// Tells that the work goes on; sent at most a few times a second.

@@ -245,9 +245,10 @@ fn refusals(rule: &Item, model: &Item, parameters: Option<&Value>) -> Vec<String
         .states
         .or_else(|| parameters?.at(&traits.states_parameter)?.as_i64().and_then(|q| u64::try_from(q).ok()));
     if let (Some(most), Some(states)) = (rule.most_states, states)
-        && states > most {
-            reasons.push(format!("it serves at most {most} states, here are {states}"));
-        }
+        && states > most
+    {
+        reasons.push(format!("it serves at most {most} states, here are {states}"));
+    }
     for need in rule.needs.iter().filter(|need| !offers(model, parameters, need)) {
         reasons.push(missing(model, parameters, need));
     }
