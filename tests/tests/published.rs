@@ -5,7 +5,6 @@
 //! about 350 values are checked in all, so that the false-alarm rate of this file is 6e-4. The mean square of all deviations guards the other side.
 
 #[path = "../reference/table.rs"]
-#[expect(dead_code, reason = "shared by several test programs, none of which uses all of it")]
 mod table;
 
 use spinledger_terms::Table;

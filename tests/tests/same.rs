@@ -3,10 +3,12 @@
 
 use spinledger_tests::program::Desk;
 use std::collections::BTreeMap;
-use std::time::{Duration, Instant};
+use std::time::Duration;
 
 /// Every standard rule, two lattices, several blocks a chain (large lattices have short blocks).
 fn pipeline(sizes: &str, chains: u32, measure: u64) -> String {
+    // Blocks of the large lattice have 128 rows: a chain has some.
+    let large = measure / 4;
     format!(
         r#"spinledger: 1
 pipeline: same
@@ -35,6 +37,17 @@ steps:
     measure: 150
     every: 2
     chains: {chains}
+  large:
+    does: sample
+    lattice: {{ plugin: square, size: 256, boundary: [antiperiodic, periodic] }}
+    model: {{ plugin: ising, coupling: {{ first.x: 1, first.y: 0.7 }} }}
+    update: metropolis
+    observe: [energy, magnetisation]
+    temperature: 2.0
+    equilibrate: 500
+    measure: {large}
+    every: 16
+    chains: {chains}
   means: {{ does: averages, of: spins }}
   more: {{ does: averages, of: colours }}
 "#
@@ -50,7 +63,7 @@ fn results(text: &str, options: &[&str]) -> BTreeMap<String, Vec<u8>> {
 
 #[test]
 fn workers_and_threads_do_not_matter() {
-    let text = pipeline("[3, 4]", 2, 300);
+    let text = pipeline("[3, 4]", 2, 800);
     let reference = results(&text, &["--workers", "1", "--threads", "1"]);
     assert!(reference.len() > 10);
     assert!(reference == results(&text, &["--workers", "2", "--threads", "1"]), "two workers");
@@ -59,32 +72,31 @@ fn workers_and_threads_do_not_matter() {
 
 #[test]
 fn turns_do_not_matter() {
-    let whole = pipeline("[3, 4]", 4, 300);
+    let whole = pipeline("[3, 4]", 4, 800);
     let reference = results(&whole, &[]);
     let desk = Desk::new();
     // Fewer chains, then a part of the scan, then all: what is on record is a subset each time.
-    for text in [pipeline("[4]", 2, 300), pipeline("[3]", 3, 100), whole] {
+    for text in [pipeline("[4]", 2, 800), pipeline("[3]", 3, 300), whole] {
         desk.write("same.yaml", &text);
         desk.run_pipeline("same.yaml", &[], 0);
     }
     assert!(reference == desk.parquet("results"));
 }
 
-/// Twenty kills at moments spread over the run, of the runner with its workers or of one worker alone; then the run is let through.
+/// Twenty kills at moments spread over the first third of a second, of the runner with its workers or of one worker alone. Each run asks for more
+/// than the one before, so that there is always something to be in the middle of; the last is let through.
 #[test]
 fn kills_do_not_matter() {
-    let text = pipeline("[3, 4]", 4, 3000);
-    let start = Instant::now();
-    let reference = results(&text, &[]);
-    let whole = start.elapsed();
+    const KILLS: u64 = 20;
+    let text = |kill: u64| pipeline("[3, 4]", 4, 400 * (kill + 1));
     let desk = Desk::new();
-    desk.write("same.yaml", &text);
     let mut state = 1u64;
     let mut unfinished = 0;
-    for kill in 0..20 {
-        // Moments from a fixed sequence (Knuth's multiplier), over about the time that the whole run takes.
+    for kill in 0..KILLS {
+        desk.write("same.yaml", &text(kill));
+        // Moments from a fixed sequence (Knuth's multiplier).
         state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
-        let wait = Duration::from_secs_f64(whole.as_secs_f64() * 0.6 * ((state >> 33) as f64 / (1u64 << 31) as f64));
+        let wait = Duration::from_secs_f64(0.02 + 0.33 * ((state >> 33) as f64 / (1u64 << 31) as f64));
         let mut child = desk.start(&["run", "same.yaml", "--quiet"]);
         std::thread::sleep(wait);
         let pid = rustix::process::Pid::from_child(&child);
@@ -97,9 +109,11 @@ fn kills_do_not_matter() {
         let status = child.wait().expect("the run ends");
         unfinished += u32::from(!status.success());
     }
-    assert!(unfinished >= 5, "most kills came too late to prove anything: {unfinished} of 20 runs were broken off");
+    assert!(unfinished >= 10, "most kills came too late to prove anything: {unfinished} of {KILLS} runs were broken off");
+    let whole = text(KILLS);
+    desk.write("same.yaml", &whole);
     desk.run_pipeline("same.yaml", &[], 0);
-    assert!(reference == desk.parquet("results"), "the resumed results are not those of an undisturbed run");
+    assert!(results(&whole, &[]) == desk.parquet("results"), "the resumed results are not those of an undisturbed run");
     let again = desk.run_pipeline("same.yaml", &[], 0);
     assert_eq!(again.counts().0, 0);
 }

@@ -16,8 +16,10 @@ use spinledger_plan::sample::{Group, Point};
 use spinledger_terms::{ColumnSpec, Key, Value};
 use std::time::{Duration, Instant};
 
-/// How often the state is saved.
-const SAVE_EVERY: Duration = Duration::from_secs(2);
+/// How often the state is saved at most.
+const SAVE_EVERY: Duration = Duration::from_millis(500);
+/// Saving takes at most one part in so many of the time.
+const SAVE_SHARE: u32 = 50;
 /// How often the claim is kept alive.
 const TOUCH_EVERY: Duration = Duration::from_secs(60);
 /// How long sweeps may go on before progress is told and a stop is looked for.
@@ -59,6 +61,7 @@ pub(crate) fn sample(job: &SampleJob, ledger: &Ledger, loaded: &mut Loaded, line
         line,
         last_look: Instant::now(),
         last_save: Instant::now(),
+        save_pause: SAVE_EVERY,
         last_touch: Instant::now(),
         ledger,
         claim,
@@ -119,6 +122,7 @@ struct Chains<'a> {
     line: &'a Line,
     last_look: Instant,
     last_save: Instant,
+    save_pause: Duration,
     last_touch: Instant,
     ledger: &'a Ledger,
     claim: ClaimGuard,
@@ -184,11 +188,14 @@ impl Chains<'_> {
 
     /// Saves the state.
     fn save(&mut self) -> Result<(), String> {
+        let started = Instant::now();
         let blobs: Vec<Vec<u8>> =
             self.rules.iter_mut().map(|(s, _)| s.save()).collect::<Result<_, _>>().map_err(|e| chain_text(&e))?;
-        self.last_save = Instant::now();
         let bytes = saved::pack(self.holder, &blobs);
-        self.ledger.save_state(&self.group.key, self.swept, &bytes).map_err(|e| chain_text(&e))
+        self.ledger.save_state(&self.group.key, self.swept, &bytes).map_err(|e| chain_text(&e))?;
+        self.save_pause = SAVE_EVERY.max(started.elapsed() * SAVE_SHARE);
+        self.last_save = Instant::now();
+        Ok(())
     }
 
     /// Does sweeps up to a number; false where it was stopped on the way.
@@ -257,7 +264,7 @@ impl Chains<'_> {
             // A claim that was lost costs double work at worst; an entry is published once all the same.
             let _ = self.claim.touch();
         }
-        if self.swept < self.sweeps_at(0) && self.last_save.elapsed() > SAVE_EVERY {
+        if self.swept < self.sweeps_at(0) && self.last_save.elapsed() > self.save_pause {
             self.save()?;
         }
         Ok(!self.line.stopping())
@@ -271,6 +278,7 @@ impl Chains<'_> {
     fn record(&mut self, job: &SampleJob, covered: &[u64], entries: &mut Vec<Entry>) -> Result<(bool, u64), String> {
         let width = self.columns.len();
         let mut values = vec![0.0; width];
+        let mut looked = false;
         for block in blocks(self.point.measure, self.point.block_rows) {
             let end = block.first + block.rows;
             if covered.iter().all(|rows| *rows >= end) {
@@ -288,6 +296,13 @@ impl Chains<'_> {
                 }
                 if !self.sweep_to(self.sweeps_at(row))? {
                     return Ok((false, block.first));
+                }
+                if !looked {
+                    // Observables trust the states that they are shown: a rule that makes others is found out before, and named.
+                    for lane in 0..self.lanes() {
+                        self.rules[self.holder].0.export(lane).map_err(|e| chain_text(&e))?;
+                    }
+                    looked = true;
                 }
                 for (lane, data) in lanes.iter_mut().enumerate() {
                     let Some(data) = data.as_mut().filter(|d| block.first + d.rows() as u64 == row) else { continue };
@@ -307,7 +322,7 @@ impl Chains<'_> {
                     entries.push(self.publish(job, lane as u32, block, data, &started)?);
                 }
             }
-            if self.last_save.elapsed() > SAVE_EVERY {
+            if self.last_save.elapsed() > self.save_pause {
                 self.save()?;
             }
         }

@@ -81,7 +81,8 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
         stop: stop.clone(),
     };
     let (send, receive) = mpsc::channel();
-    std::thread::spawn(move || listen(stream, &stop, &send));
+    let back = line.clone();
+    std::thread::spawn(move || listen(stream, &stop, &send, &back));
     let ledger = Ledger::open(ledger)?;
     let mut loaded = Loaded::new(threads, line.clone())?;
     while let Ok(job) = receive.recv() {
@@ -100,16 +101,20 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
     Ok(())
 }
 
-fn listen(stream: UnixStream, stop: &AtomicBool, send: &mpsc::Sender<Job>) {
+fn listen(stream: UnixStream, stop: &AtomicBool, send: &mpsc::Sender<Job>, back: &Line) {
     for text in BufReader::new(stream).lines() {
-        let order = text.ok().and_then(|text| serde_json::from_str::<Order>(&text).ok());
-        match order {
-            Some(Order::Work(job)) => {
+        let Ok(text) = text else { break };
+        match serde_json::from_str::<Order>(&text) {
+            Ok(Order::Work(job)) => {
                 if send.send(*job).is_err() {
                     return;
                 }
             }
-            Some(Order::Stop) | None => break,
+            Ok(Order::Stop) => break,
+            Err(error) => {
+                let message = format!("a defect of spinledger: an order cannot be read: {error}");
+                back.send(&Report::Broken { message });
+            }
         }
     }
     stop.store(true, Ordering::Relaxed);

@@ -46,6 +46,7 @@ pub struct Dynamics {
     /// 1/(k_B T) in 1/energy: the one canonical form of temperature.
     pub inverse_temperature: f64,
     /// Temperature in the pipeline's unit; infinite at inverse temperature 0.
+    #[serde(with = "infinite_as_null")]
     pub temperature: f64,
     /// k_B in energy units per temperature unit.
     pub boltzmann: f64,
@@ -157,6 +158,19 @@ impl Dynamics {
     /// Whether code that did not come with the program takes part.
     pub fn is_foreign(&self) -> bool {
         self.identities().iter().any(|identity| !identity.standard)
+    }
+}
+
+/// JSON has no infinity, and an infinite temperature is a temperature.
+mod infinite_as_null {
+    use serde::{Deserialize, Deserializer, Serialize, Serializer};
+
+    pub(super) fn serialize<S: Serializer>(x: &f64, s: S) -> Result<S::Ok, S::Error> {
+        Some(*x).filter(|x| x.is_finite()).serialize(s)
+    }
+
+    pub(super) fn deserialize<'de, D: Deserializer<'de>>(d: D) -> Result<f64, D::Error> {
+        Ok(Option::<f64>::deserialize(d)?.unwrap_or(f64::INFINITY))
     }
 }
 

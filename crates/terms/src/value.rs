@@ -176,6 +176,9 @@ impl Value {
     }
 }
 
+/// The key under which JSON holds a number that is not finite.
+const NOT_FINITE: &str = "not finite";
+
 /// A double as canonical text. NaN, which no canonical value holds, becomes `nan`.
 pub fn number_text(x: f64) -> String {
     if x == f64::INFINITY {
@@ -215,8 +218,12 @@ impl Serialize for Value {
             Value::Null => s.serialize_unit(),
             Value::Bool(b) => s.serialize_bool(*b),
             Value::Integer(i) => s.serialize_i64(*i),
-            // JSON has no infinities; text keeps them readable.
-            Value::Number(x) if !x.is_finite() => s.serialize_str(&number_text(*x)),
+            // JSON has no infinities, and a bare text would come back as text.
+            Value::Number(x) if !x.is_finite() => {
+                let mut out = s.serialize_map(Some(1))?;
+                out.serialize_entry(NOT_FINITE, &number_text(*x))?;
+                out.end()
+            }
             Value::Number(x) => s.serialize_f64(*x),
             Value::Text(t) => s.serialize_str(t),
             Value::List(list) => {
@@ -281,6 +288,13 @@ impl<'de> Deserialize<'de> for Value {
                 while let Some((key, item)) = access.next_entry()? {
                     map.insert(key, item);
                 }
+                if let (1, Some(Value::Text(text))) = (map.len(), map.get(NOT_FINITE)) {
+                    return Ok(match text.as_str() {
+                        "inf" => Value::Number(f64::INFINITY),
+                        "-inf" => Value::Number(f64::NEG_INFINITY),
+                        _ => Value::Number(f64::NAN),
+                    });
+                }
                 Ok(Value::Map(map))
             }
         }
@@ -319,6 +333,19 @@ mod tests {
         assert_eq!(v.at("update.0.clusters"), Some(&Value::Integer(3)));
         assert_eq!(v.at("lattice.size").and_then(Value::as_i64), Some(8));
         assert_eq!(v.at("lattice.size.x"), None);
+    }
+
+    /// Values go to workers and back as JSON, also those that JSON has no numbers for.
+    #[test]
+    fn json_keeps_every_number() {
+        let v = Value::List(vec![
+            Value::Number(f64::INFINITY),
+            Value::Number(-f64::INFINITY),
+            Value::Integer(1),
+            Value::Number(1.0),
+        ]);
+        let text = serde_json::to_string(&v).unwrap();
+        assert_eq!(serde_json::from_str::<Value>(&text).unwrap(), v, "{text}");
     }
 
     proptest::proptest! {
