@@ -109,7 +109,10 @@ fn kills_do_not_matter() {
         let status = child.wait().expect("the run ends");
         unfinished += u32::from(!status.success());
     }
-    assert!(unfinished >= 10, "most kills came too late to prove anything: {unfinished} of {KILLS} runs were broken off");
+    assert!(
+        unfinished >= 10,
+        "most kills came too late to prove anything: {unfinished} of {KILLS} runs were broken off"
+    );
     let whole = text(KILLS);
     desk.write("same.yaml", &whole);
     desk.run_pipeline("same.yaml", &[], 0);

@@ -43,7 +43,7 @@ pub(crate) struct RunArgs {
     pub(crate) pipeline: PathBuf,
     #[command(flatten)]
     pub(crate) ledger: LedgerArgs,
-    /// The folder of results [default: results/<pipeline>]
+    /// The folder of results [default: results/PIPELINE]
     #[arg(long, value_name = "DIR")]
     pub(crate) out: Option<PathBuf>,
     /// Worker processes [default: the number of processors]
