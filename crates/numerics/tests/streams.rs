@@ -75,8 +75,8 @@ fn damaged_states_are_refused() {
     let mut bytes = Vec::new();
     Eight::from_key(&key("damage")).save(&mut bytes);
     assert_eq!(bytes.len(), SAVED_LEN);
-    assert_eq!(Eight::restore(&bytes[1..]), Err(RestoreError::Length { found: SAVED_LEN - 1 }));
-    assert_eq!(Eight::restore(&[]), Err(RestoreError::Length { found: 0 }));
+    assert_eq!(Eight::restore(&bytes[1..]), Err(RestoreError::Length { found: SAVED_LEN - 1, needed: SAVED_LEN }));
+    assert_eq!(Eight::restore(&[]), Err(RestoreError::Length { found: 0, needed: SAVED_LEN }));
     let at = |index: usize, value: u8| {
         let mut damaged = bytes.clone();
         damaged[index] = value;

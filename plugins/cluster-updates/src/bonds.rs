@@ -32,8 +32,8 @@ pub(crate) struct Rows {
     pub(crate) lines: Vec<Line>,
     /// Rows of a kind.
     rows: usize,
-    /// Row of each state.
-    row_of: [u16; 256],
+    /// Where the row of each state begins among the lines of a kind.
+    row_of: [u32; 256],
     /// The operation.
     pub(crate) map: [u8; 256],
     /// Number of states.
@@ -67,7 +67,7 @@ impl Rows {
         Rows {
             lines: vec![Line::default(); ties * rows * 3 * states],
             rows,
-            row_of: std::array::from_fn(|s| if s < rows { s as u16 } else { 0 }),
+            row_of: std::array::from_fn(|s| if s < rows { (s * 3 * states) as u32 } else { 0 }),
             map: std::array::from_fn(|s| s as u8),
             states,
         }
@@ -90,7 +90,7 @@ impl Rows {
         self.map[one as usize] = other;
         self.map[other as usize] = one;
         self.row_of[one as usize] = 0;
-        self.row_of[other as usize] = 1;
+        self.row_of[other as usize] = 3 * self.states as u32;
     }
 
     fn set(&mut self, tie: usize, row: usize, state: usize, line: Line) {
@@ -106,10 +106,16 @@ impl Rows {
         self.rows * 3 * self.states
     }
 
+    /// The row of a state, where there is one kind of bond.
+    #[inline]
+    pub(crate) fn of(&self, state: usize) -> &[Line] {
+        &self.lines[self.row(state)..][..3 * self.states]
+    }
+
     /// Where the row of a state begins among the lines of a kind.
     #[inline]
     pub(crate) fn row(&self, state: usize) -> usize {
-        self.row_of[state] as usize * 3 * self.states
+        self.row_of[state] as usize
     }
 }
 

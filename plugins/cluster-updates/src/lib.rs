@@ -7,14 +7,11 @@
 
 mod adjacency;
 mod bonds;
+mod even;
 mod symmetry;
 #[cfg(test)]
 mod tests;
 mod wolff;
-// One source of buffered half words serves both libraries; plugins are shared libraries and cannot be linked to each other.
-#[allow(dead_code, reason = "single-spin rules draw in more ways")]
-#[path = "../../local-updates/src/words.rs"]
-mod words;
 
 use wolff::Wolff;
 

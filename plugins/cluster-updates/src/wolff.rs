@@ -2,9 +2,9 @@
 
 use crate::adjacency::Adjacency;
 use crate::bonds::{self, Line, Rows};
+use crate::even::Even;
 use crate::symmetry::Symmetry;
-use crate::words::Words;
-use spinledger_numerics::random::below_u32;
+use spinledger_numerics::random::{Halves, below_u32};
 use spinledger_numerics::sum::sum_by;
 use spinledger_sdk::{
     Error, Host, Parameter, Params, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View,
@@ -50,6 +50,8 @@ pub(crate) struct Chain<'a> {
     host: Host<'a>,
     problem: Problem<'a>,
     adjacency: Adjacency<'a>,
+    /// The same once more, where it is simple.
+    even: Option<Even>,
     symmetry: Symmetry,
     /// Rows of each involution, or one set that is rewritten for each exchange.
     rows: Vec<Rows>,
@@ -62,7 +64,7 @@ pub(crate) struct Chain<'a> {
     /// Sites of the cluster in the order in which they were added. One longer than there are sites, since the place behind the last one is
     /// written to before it is known whether a site is added.
     queue: Vec<u32>,
-    words: Words,
+    words: Halves,
     energy: f64,
 }
 
@@ -95,6 +97,7 @@ impl<'a> Chain<'a> {
             clusters,
             inverse_temperature: beta,
             host: prepare.host,
+            even: Even::new(&adjacency),
             adjacency,
             symmetry,
             rows,
@@ -102,7 +105,7 @@ impl<'a> Chain<'a> {
             marks: vec![0; states.len()],
             queue: vec![0; states.len() + 1],
             states,
-            words: Words::new(key),
+            words: Halves::from_key(key),
             energy: 0.0,
             problem,
         };
@@ -128,6 +131,13 @@ impl<'a> Chain<'a> {
     #[cfg(test)]
     pub(crate) fn forget_rows(&mut self) {
         self.adjacency.ties.clear();
+        self.even = None;
+    }
+
+    /// For tests: as if the lattice looked different from every site.
+    #[cfg(test)]
+    pub(crate) fn forget_steps(&mut self) {
+        assert!(self.even.take().is_some(), "an even lattice");
     }
 
     /// Grows a cluster and flips it, unless it rests or touches a pinned site.
@@ -148,10 +158,14 @@ impl<'a> Chain<'a> {
                 0
             }
         };
-        let (size, change, frozen) = match (self.adjacency.is_varied(), self.adjacency.tie.is_empty()) {
-            (true, _) => self.grow(seed, operation, Bonds::Varied),
-            (false, true) => self.grow(seed, operation, Bonds::Alike),
-            (false, false) => self.grow(seed, operation, Bonds::Kinds),
+        let (size, change, frozen) = match self.even.as_ref().map(|even| even.degree) {
+            Some(2) => self.grow_even::<2>(seed, operation),
+            Some(3) => self.grow_even::<3>(seed, operation),
+            Some(4) => self.grow_even::<4>(seed, operation),
+            Some(6) => self.grow_even::<6>(seed, operation),
+            Some(8) => self.grow_even::<8>(seed, operation),
+            Some(12) => self.grow_even::<12>(seed, operation),
+            _ => self.grow_any(seed, operation),
         };
         let map = &self.rows[operation].map;
         for site in &self.queue[..size] {
@@ -164,6 +178,52 @@ impl<'a> Chain<'a> {
         if !frozen {
             self.energy += change;
         }
+    }
+
+    fn grow_any(&mut self, seed: u32, operation: usize) -> (usize, f64, bool) {
+        match (self.adjacency.is_varied(), self.adjacency.tie.is_empty()) {
+            (true, _) => self.grow(seed, operation, Bonds::Varied),
+            (false, true) => self.grow(seed, operation, Bonds::Alike),
+            (false, false) => self.grow(seed, operation, Bonds::Kinds),
+        }
+    }
+
+    /// As [`Chain::grow`], on an even lattice.
+    fn grow_even<const DEGREE: usize>(&mut self, seed: u32, operation: usize) -> (usize, f64, bool) {
+        let Some(even) = self.even.as_ref() else { return self.grow_any(seed, operation) };
+        let rows = &self.rows[operation];
+        let steps = even.steps.as_chunks::<DEGREE>().0;
+        let (sites, q) = (self.problem.graph.sites, self.problem.energy.states as u16);
+        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.words);
+        let (mut head, mut tail, mut change) = (0, 1, 0.0);
+        queue[0] = seed;
+        marks[seed as usize] += q;
+        while head < tail {
+            let site = queue[head];
+            head += 1;
+            if site as usize >= sites {
+                return (tail, 0.0, true);
+            }
+            let own = marks[site as usize];
+            marks[site as usize] = own + q;
+            let lines = rows.of((own - q) as usize);
+            let steps = &steps[even.rows[site as usize] as usize];
+            let (words, _) = words.few(DEGREE).as_chunks::<DEGREE>();
+            // All neighbours are looked at before one is marked: they differ, and loads need not wait for stores.
+            let neighbours: [u32; DEGREE] = std::array::from_fn(|k| site.wrapping_add(steps[k]));
+            let seen: [u16; DEGREE] = std::array::from_fn(|k| marks[neighbours[k] as usize]);
+            let mut step = 0.0;
+            for k in 0..DEGREE {
+                let line = lines[seen[k] as usize];
+                let added = u64::from(words[0][k]).wrapping_sub(line.limit) >> 63;
+                marks[neighbours[k] as usize] = seen[k] + (q & (added as u16).wrapping_neg());
+                queue[tail] = neighbours[k];
+                tail += added as usize;
+                step += line.change;
+            }
+            change += step;
+        }
+        (tail, change, false)
     }
 
     /// Grows a cluster first in, first out, a half word for every neighbour looked at; returns its size, the change of energy if it flips,
@@ -187,30 +247,32 @@ impl<'a> Chain<'a> {
             let row = rows.row(state as usize);
             // Summed by site first: sites follow each other faster than one long chain of additions would let them.
             let mut step = 0.0;
-            let entries =
-                self.adjacency.offsets[site as usize] as usize..self.adjacency.offsets[site as usize + 1] as usize;
-            for (entry, &neighbour) in entries.clone().zip(&self.adjacency.neighbours[entries]) {
-                let mark = marks[neighbour as usize];
-                let line = match kind {
-                    Bonds::Alike => rows.lines[row + mark as usize],
-                    Bonds::Kinds => {
-                        rows.lines[self.adjacency.tie[entry] as usize * rows.stride() + row + mark as usize]
-                    }
-                    Bonds::Varied => varied(
-                        self.inverse_temperature,
-                        &self.problem,
-                        self.adjacency.tie_of(entry),
-                        &rows.map,
-                        state,
-                        mark,
-                    ),
-                };
-                // The sign of the difference: added, 1, or not, 0, without a branch that would be mispredicted.
-                let added = u64::from(words.next()).wrapping_sub(line.limit) >> 63;
-                marks[neighbour as usize] = mark + q * added as u16;
-                queue[tail] = neighbour;
-                tail += added as usize;
-                step += line.change;
+            let mut entry = self.adjacency.offsets[site as usize] as usize;
+            let end = self.adjacency.offsets[site as usize + 1] as usize;
+            while entry < end {
+                let neighbours = &self.adjacency.neighbours[entry..end.min(entry + Halves::FEW)];
+                let words = words.few(neighbours.len());
+                for (place, (&neighbour, &word)) in neighbours.iter().zip(words).enumerate() {
+                    let mark = marks[neighbour as usize];
+                    let line = match kind {
+                        Bonds::Alike => rows.lines[row + mark as usize],
+                        Bonds::Kinds => {
+                            let tie = self.adjacency.tie[entry + place] as usize;
+                            rows.lines[tie * rows.stride() + row + mark as usize]
+                        }
+                        Bonds::Varied => {
+                            let tie = self.adjacency.tie_of(entry + place);
+                            varied(self.inverse_temperature, &self.problem, tie, &rows.map, state, mark)
+                        }
+                    };
+                    // The sign of the difference: added, 1, or not, 0, without a branch that would be mispredicted.
+                    let added = u64::from(word).wrapping_sub(line.limit) >> 63;
+                    marks[neighbour as usize] = mark + q * added as u16;
+                    queue[tail] = neighbour;
+                    tail += added as usize;
+                    step += line.change;
+                }
+                entry += neighbours.len();
             }
             change += step;
         }
@@ -336,7 +398,8 @@ impl UpdateInstance for Chain<'_> {
         if states.iter().any(|s| *s as usize >= self.problem.energy.states) {
             return Err(wrong());
         }
-        self.words = Words::restore(words)?;
+        self.words =
+            Halves::restore(words).map_err(|error| Error::new(format!("the saved random numbers: {error}")))?;
         self.states.copy_from_slice(states);
         self.begin();
         self.energy = f64::from_bits(u64::from_le_bytes(*energy));

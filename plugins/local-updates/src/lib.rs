@@ -21,7 +21,6 @@ mod tally;
 #[cfg(test)]
 mod tests;
 mod two;
-mod words;
 
 use heat_bath::HeatBath;
 use metropolis::Metropolis;

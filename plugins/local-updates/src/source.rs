@@ -2,14 +2,13 @@
 
 use crate::group::LANES_TOGETHER;
 use crate::rule::Draw;
-use crate::words::Words;
-use spinledger_numerics::random::{StreamKey, Xoshiro, below_u32};
+use spinledger_numerics::random::{Halves, StreamKey, Xoshiro, below_u32};
 use spinledger_sdk::{Error, Result};
 
 /// The streams of a group.
 pub(crate) struct Source {
     /// Of the only chain, or of all 64 together.
-    pub(crate) words: Words,
+    pub(crate) words: Halves,
     /// Streams of the 64 chains, for rejected proposals; empty with one chain.
     own: Vec<Xoshiro>,
 }
@@ -18,8 +17,8 @@ impl Source {
     /// The beginning of all streams.
     pub(crate) fn new(lanes: usize, lane_keys: &[StreamKey], group_key: &StreamKey) -> Self {
         match lane_keys {
-            [only] if lanes == 1 => Source { words: Words::new(only), own: Vec::new() },
-            _ => Source { words: Words::new(group_key), own: lane_keys.iter().map(Xoshiro::from_key).collect() },
+            [only] if lanes == 1 => Source { words: Halves::from_key(only), own: Vec::new() },
+            _ => Source { words: Halves::from_key(group_key), own: lane_keys.iter().map(Xoshiro::from_key).collect() },
         }
     }
 
@@ -65,12 +64,12 @@ impl Source {
     /// Where the bytes do not fit.
     pub(crate) fn restore(&mut self, bytes: &[u8]) -> Result<()> {
         let wrong = || Error::new("the saved random streams cannot be read");
-        let (words, rest) = bytes.split_at_checked(Words::SAVED).ok_or_else(wrong)?;
+        let (words, rest) = bytes.split_at_checked(Halves::SAVED).ok_or_else(wrong)?;
         let (states, left) = rest.as_chunks::<32>();
         if states.len() != self.own.len() || !left.is_empty() {
             return Err(wrong());
         }
-        self.words = Words::restore(words)?;
+        self.words = Halves::restore(words).map_err(|_| wrong())?;
         for (own, bytes) in self.own.iter_mut().zip(states) {
             let mut state = [0; 4];
             state.iter_mut().zip(bytes.as_chunks::<8>().0).for_each(|(word, bytes)| *word = u64::from_le_bytes(*bytes));

@@ -11,6 +11,9 @@ use super::xoshiro::{REPLACEMENT, words};
 /// Lanes, words in a block.
 const LANES: usize = 8;
 
+/// Lanes that are stepped together: what the narrowest vector registers hold.
+const TOGETHER: usize = 2;
+
 /// Bytes written by [`Eight::save`].
 pub const SAVED_LEN: usize = 32 * LANES + 8 * LANES + 6;
 
@@ -56,19 +59,34 @@ impl Eight {
     /// One step of every lane.
     #[inline]
     fn step(&mut self) -> [u64; LANES] {
-        let [s0, s1, s2, s3] = &mut self.state;
-        let mut output = [0; LANES];
-        for lane in 0..LANES {
-            output[lane] = s0[lane].wrapping_add(s3[lane]).rotate_left(23).wrapping_add(s0[lane]);
-            let shifted = s1[lane] << 17;
-            s2[lane] ^= s0[lane];
-            s3[lane] ^= s1[lane];
-            s1[lane] ^= s2[lane];
-            s0[lane] ^= s3[lane];
-            s2[lane] ^= shifted;
-            s3[lane] = s3[lane].rotate_left(45);
+        let mut block = [[0; LANES]];
+        self.steps(&mut block);
+        block[0]
+    }
+
+    /// Steps of every lane, a block each. Lane by lane through all blocks would be the same words; a pair of lanes goes through them together
+    /// and stays in registers meanwhile.
+    fn steps(&mut self, blocks: &mut [[u64; LANES]]) {
+        for first in (0..LANES).step_by(TOGETHER) {
+            let mut state: [[u64; TOGETHER]; 4] =
+                std::array::from_fn(|word| std::array::from_fn(|lane| self.state[word][first + lane]));
+            for block in &mut *blocks {
+                let [s0, s1, s2, s3] = &mut state;
+                for lane in 0..TOGETHER {
+                    block[first + lane] = s0[lane].wrapping_add(s3[lane]).rotate_left(23).wrapping_add(s0[lane]);
+                    let shifted = s1[lane] << 17;
+                    s2[lane] ^= s0[lane];
+                    s3[lane] ^= s1[lane];
+                    s1[lane] ^= s2[lane];
+                    s0[lane] ^= s3[lane];
+                    s2[lane] ^= shifted;
+                    s3[lane] = s3[lane].rotate_left(45);
+                }
+            }
+            for (row, pair) in self.state.iter_mut().zip(state) {
+                row[first..first + TOGETHER].copy_from_slice(&pair);
+            }
         }
-        output
     }
 
     /// The next word.
@@ -111,8 +129,11 @@ impl Eight {
             *word = self.next();
         }
         let (blocks, tail) = rest.as_chunks_mut::<LANES>();
-        for block in blocks {
-            *block = self.next_block();
+        if self.drawn == LANES {
+            self.steps(blocks);
+        } else {
+            // Only where a whole block waits, or the slice has ended.
+            blocks.iter_mut().for_each(|block| *block = self.next_block());
         }
         for word in tail {
             *word = self.next();
@@ -159,7 +180,8 @@ impl Eight {
     /// # Errors
     /// The bytes have another length, or could not have been written by [`Eight::save`].
     pub fn restore(bytes: &[u8]) -> Result<Self, RestoreError> {
-        let bytes: &[u8; SAVED_LEN] = bytes.try_into().map_err(|_| RestoreError::Length { found: bytes.len() })?;
+        let bytes: &[u8; SAVED_LEN] =
+            bytes.try_into().map_err(|_| RestoreError::Length { found: bytes.len(), needed: SAVED_LEN })?;
         let (chunks, tail) = bytes.as_chunks::<8>();
         let mut words = chunks.iter().map(|chunk| u64::from_le_bytes(*chunk));
         let mut state = [[0; LANES]; 4];
@@ -226,14 +248,16 @@ impl TryRng for Eight {
     }
 }
 
-/// Why [`Eight::restore`] refused.
+/// Why [`Eight::restore`] or [`Halves::restore`](super::Halves::restore) refused.
 #[derive(Clone, Debug, PartialEq, Eq)]
 #[non_exhaustive]
 pub enum RestoreError {
-    /// Not [`SAVED_LEN`] bytes.
+    /// Too few bytes or too many.
     Length {
         /// Bytes given.
         found: usize,
+        /// Bytes that a saved state has.
+        needed: usize,
     },
     /// Bytes that no generator writes.
     Content,
@@ -242,9 +266,7 @@ pub enum RestoreError {
 impl fmt::Display for RestoreError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            Self::Length { found } => {
-                write!(f, "a saved stream has {SAVED_LEN} bytes, not {found}")
-            }
+            Self::Length { found, needed } => write!(f, "a saved stream has {needed} bytes, not {found}"),
             Self::Content => f.write_str("these bytes are not a saved stream"),
         }
     }

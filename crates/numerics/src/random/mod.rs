@@ -8,6 +8,7 @@
 //! of `rand` change between releases and are therefore not used.
 
 mod eight;
+mod halves;
 mod key;
 mod maps;
 mod splitmix;
@@ -15,6 +16,7 @@ mod threshold;
 mod xoshiro;
 
 pub use eight::{Eight, RestoreError, SAVED_LEN};
+pub use halves::Halves;
 pub use key::StreamKey;
 pub use maps::{below, below_u32, open_unit_f64, unit_f64};
 pub use splitmix::SplitMix;

@@ -136,6 +136,24 @@ fn rows_choose_as_direct_computation_does() {
     assert_eq!(configuration(&with, &system.bench), configuration(&without, &system.bench));
 }
 
+/// The same on lattices that look alike from nearly everywhere.
+#[test]
+fn steps_lead_where_the_adjacency_does() {
+    for (model, inverse_temperature) in [("{}", 0.44), (r#"{"coupling": -1}"#, 0.6)] {
+        let bench = Bench::new::<Square, Ising>(&params(r#"{"size": [8, 9]}"#), &params(model));
+        let rule = rule(2);
+        let mut with = start(&rule, &bench, inverse_temperature);
+        let mut without = start(&rule, &bench, inverse_temperature);
+        without.forget_steps();
+        with.sweep(300).expect("swept");
+        without.sweep(300).expect("swept");
+        let (mut a, mut b) = (Vec::new(), Vec::new());
+        with.save(&mut a);
+        without.save(&mut b);
+        assert_eq!(a, b);
+    }
+}
+
 /// Only the inversion is offered, and the zero state stays: the number of zeros is conserved, and given it, the distribution is Boltzmann's.
 #[test]
 fn states_that_the_operation_leaves_stay() {

@@ -4,9 +4,9 @@
 mod exact;
 #[allow(dead_code, unused_imports, reason = "the standard lattices as they are; not all are needed here")]
 #[path = "../../../lattices/src/standard/mod.rs"]
-mod lattices;
+pub(crate) mod lattices;
 mod mechanics;
 #[path = "../../../models/src/standard/mod.rs"]
-mod models;
+pub(crate) mod models;
 #[path = "../../../local-updates/src/tests/systems.rs"]
 mod systems;
