@@ -2,7 +2,9 @@
 
 use crate::job::{CloseJob, Entry, Report, SeriesNote};
 use crate::{chain_text, program};
-use spinledger_ledger::{Constant, Draft, Input, Ledger, Piece as FilePiece, assemble, combine, content_of_block};
+use spinledger_ledger::{
+    Constant, Draft, Input, Ledger, Piece as FilePiece, assemble, combine, content_of_block, content_of_entry,
+};
 use spinledger_plan::sample::Piece;
 use spinledger_terms::{ContentHash, Key, Value};
 
@@ -81,7 +83,8 @@ fn content(pieces: &[Piece], ledger: &Ledger) -> Result<ContentHash, String> {
         } else {
             let rows = Some(piece.rows as usize);
             let block = ledger.read_block(&piece.key, "main", None, rows).map_err(|e| chain_text(&e))?;
-            parts.push(content_of_block(&block));
+            // As the entry of a block recorded at this length.
+            parts.push(content_of_entry([("main", content_of_block(&block))].into_iter()));
         }
     }
     Ok(combine("series", &parts))

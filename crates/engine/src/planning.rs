@@ -8,7 +8,7 @@ use spinledger_pipeline::{Expansion, FromStep, Step};
 use spinledger_plan::analysis::{self, InputRef};
 use spinledger_plan::dynamics::Dynamics;
 use spinledger_plan::sample::{Piece, Point, plan_point};
-use spinledger_terms::{ContentHash, Field, ItemKind, Key, Kind, Problem, Table, Value};
+use spinledger_terms::{ColumnSpec, ContentHash, Field, ItemKind, Key, Kind, Problem, Table, Value};
 use std::collections::BTreeMap;
 
 /// What a step has given.
@@ -188,10 +188,10 @@ fn field_unit(study: &Study, step: &Step, address: &[String]) -> Option<String> 
 
 /// The series of a point, where it is complete and closed.
 pub fn closed_series(study: &Study, step: &Step, point: &Point, index: &Index) -> Option<Series> {
-    let preimage = point.series_preimage(study.pipeline.units.temperature_unit());
+    let mut columns = point_columns(study, step, point);
+    let preimage = point.series_preimage(&columns);
     let line = index.get(&Key::of(&preimage))?;
     let note = SeriesNote::from_text(&line.note)?;
-    let mut columns = point_columns(study, step, point);
     columns.push(("sites".into(), String::new(), Value::Integer(note.sites as i64)));
     let pieces = point.pieces(index)?;
     Some(Series { key: line.key, content: line.content, point: point.clone(), pieces, note, columns })
@@ -299,7 +299,7 @@ fn series_input(study: &Study, role: &str, series: &Series) -> SeriesInput {
             energy_unit: units.energy_unit().to_owned(),
             temperature_unit: units.temperature_unit().to_owned(),
             every: dynamics.every,
-            from_start: dynamics.equilibrate == 0,
+            from_start: series.point.discard,
             starts: series.point.starts(),
             observed: series.note.observed.clone(),
         },
@@ -311,10 +311,14 @@ fn series_input(study: &Study, role: &str, series: &Series) -> SeriesInput {
 fn facts_value(series: &SeriesInput, with_columns: bool) -> Value {
     let facts = &series.facts;
     let number = |x: Option<f64>| x.map_or(Value::Null, Value::Number);
+    // Without the line of explanation, on which nothing depends.
+    let column =
+        |c: &ColumnSpec| Value::List(vec![Value::text(&c.name), Value::text(&c.unit), Value::Bool(c.invariant)]);
     let mut value = Value::map([
         ("every", Value::Integer(facts.every as i64)),
         ("from_start", Value::Bool(facts.from_start)),
-        ("note", SeriesNote { sites: facts.sites, observed: facts.observed.clone() }.to_value()),
+        ("observed", Value::List(facts.observed.iter().map(column).collect())),
+        ("sites", Value::Integer(facts.sites as i64)),
         ("starts", Value::List(facts.starts.iter().map(Value::text).collect())),
         ("thermal_energy", number(facts.thermal_energy)),
     ]);

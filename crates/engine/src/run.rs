@@ -363,7 +363,8 @@ impl Run<'_> {
         let mut items = Vec::new();
         let mut files = Vec::new();
         for (at, point) in points.iter().enumerate() {
-            let preimage = point.series_preimage(study.pipeline.units.temperature_unit());
+            let columns = point_columns(study, step, point);
+            let preimage = point.series_preimage(&columns);
             let key = Key::of(&preimage);
             let file = format!("{}/{}", step.name, series_file(&point.columns, &key));
             let known = self.index.get(&key).map(|line| line.content);
@@ -374,7 +375,7 @@ impl Run<'_> {
             }
             let Some(pieces) = point.pieces(&self.index) else { continue };
             self.results.make_room(&file)?;
-            let layout = Layout { path: self.results.path(&file), columns: point_columns(study, step, point) };
+            let layout = Layout { path: self.results.path(&file), columns };
             let parameters = Value::map([
                 ("columns", Value::Map(point.columns.iter().cloned().collect())),
                 ("measure", Value::Integer(point.measure as i64)),

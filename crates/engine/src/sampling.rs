@@ -256,7 +256,7 @@ impl Chains<'_> {
             return Ok(true);
         }
         self.last_look = Instant::now();
-        let updates = (self.swept - self.told) * self.updates_per_sweep();
+        let updates = (self.swept - self.told).saturating_mul(self.updates_per_sweep());
         self.told = self.swept;
         self.line.progress(updates);
         if self.last_touch.elapsed() > TOUCH_EVERY {
@@ -270,8 +270,12 @@ impl Chains<'_> {
         Ok(!self.line.stopping())
     }
 
+    fn updates_per_chain(&self) -> u64 {
+        (self.problem.graph.sites as u64).saturating_mul(self.point.dynamics.passes())
+    }
+
     fn updates_per_sweep(&self) -> u64 {
-        self.problem.graph.sites as u64 * u64::from(self.point.dynamics.lanes)
+        self.updates_per_chain().saturating_mul(u64::from(self.point.dynamics.lanes))
     }
 
     /// Measures and publishes all blocks that are due. Returns whether it came to the end, and the first row that is not on record.
@@ -326,7 +330,7 @@ impl Chains<'_> {
                 self.save()?;
             }
         }
-        let updates = (self.swept - self.told) * self.updates_per_sweep();
+        let updates = (self.swept - self.told).saturating_mul(self.updates_per_sweep());
         self.told = self.swept;
         self.line.progress(updates);
         Ok((true, self.point.measure))
@@ -393,7 +397,7 @@ impl Chains<'_> {
         let preimage = self.group.block_preimage(lane, block);
         // The time of a block is shared by the chains that were advanced together.
         let seconds = started.0.elapsed().as_secs_f64() / f64::from(dynamics.lanes);
-        let updates = (self.swept - started.2) * self.problem.graph.sites as u64;
+        let updates = (self.swept - started.2).saturating_mul(self.updates_per_chain());
         let parameters = Value::map([
             ("chains", self.group.value.clone()),
             ("temperature", Value::Number(dynamics.temperature)),

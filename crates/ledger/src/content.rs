@@ -72,7 +72,7 @@ pub fn combine(label: &str, parts: &[ContentHash]) -> ContentHash {
 }
 
 /// The content of an entry: its tables by name, in order.
-pub(crate) fn content_of_entry<'a>(tables: impl ExactSizeIterator<Item = (&'a str, ContentHash)>) -> ContentHash {
+pub fn content_of_entry<'a>(tables: impl ExactSizeIterator<Item = (&'a str, ContentHash)>) -> ContentHash {
     let mut hasher = blake3::Hasher::new_derive_key(ENTRY_CONTEXT);
     length(&mut hasher, tables.len());
     for (name, content) in tables {

@@ -44,7 +44,7 @@ mod verify;
 mod writes;
 
 pub use claim::{Claim, ClaimGuard};
-pub use content::{combine, content_of_block, content_of_table};
+pub use content::{combine, content_of_block, content_of_entry, content_of_table};
 pub use error::{LedgerError, WriteError};
 pub use index::{ChainPlace, Index, Line};
 pub use ledger::Ledger;

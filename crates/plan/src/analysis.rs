@@ -58,4 +58,14 @@ mod tests {
             + r#"","role":"of"}],"kind":"averages","parameters":{"x":1},"revision":1}"#;
         assert_eq!(of(1), expected);
     }
+
+    /// What keys of gathered tables are made of.
+    #[test]
+    fn value_stability_of_gathered_tables() {
+        let columns = Value::List(vec![Value::List(vec![Value::text("size"), Value::text(""), Value::Integer(4)])]);
+        let expected = r#"{"kind":"averages.gathered","parts":[{"columns":[["size","",4]],"content":""#.to_owned()
+            + &"07".repeat(32)
+            + r#""}],"revision":1}"#;
+        assert_eq!(gather_preimage("averages", 1, &[(columns, ContentHash([7; 32]))]), expected);
+    }
 }

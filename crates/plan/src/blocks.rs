@@ -18,6 +18,11 @@ pub fn block_rows(sites: u64, every: u64) -> u64 {
     power.clamp(FEWEST_ROWS, MOST_ROWS)
 }
 
+/// Most rows that a chain can have: blocks are numbered with 32 bits.
+pub fn most_rows(length: u64) -> u64 {
+    length.saturating_mul(1 << 32)
+}
+
 /// A block of a chain of `measure` rows: its number, its first row, how many rows it has.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Block {
@@ -29,7 +34,7 @@ pub struct Block {
     pub rows: u64,
 }
 
-/// The blocks of a chain of `measure` rows.
+/// The blocks of a chain of `measure` rows, at most [`most_rows`].
 pub fn blocks(measure: u64, length: u64) -> impl Iterator<Item = Block> {
     (0..measure.div_ceil(length.max(1))).map(move |number| {
         let first = number * length;

@@ -1,5 +1,6 @@
 //! What moves the spins: the part of a sample point that decides a chain's course, in the form that keys and streams are made of.
 
+use crate::blocks::block_rows;
 use serde::{Deserialize, Serialize};
 use spinledger_pipeline::Units;
 use spinledger_terms::{Identity, Item, ItemKind, Value, Vocabulary};
@@ -131,6 +132,7 @@ impl Dynamics {
     pub fn group_value(&self, start: &str, group: u32) -> Value {
         let update = self.update.iter().map(|(rule, times)| with_times(rule.key_value(), *times)).collect();
         Value::map([
+            ("block_rows", Value::Integer(self.block_rows() as i64)),
             ("energy_unit", Value::text(&self.energy_unit)),
             ("equilibrate", Value::Integer(self.equilibrate as i64)),
             ("every", Value::Integer(self.every as i64)),
@@ -147,6 +149,16 @@ impl Dynamics {
             ("start", Value::text(start)),
             ("update", Value::List(update)),
         ])
+    }
+
+    /// Rows of a block. Part of the key of a group, since the order of rows follows from it.
+    pub fn block_rows(&self) -> u64 {
+        block_rows(self.nominal_sites, self.every)
+    }
+
+    /// How many rules a sweep does, each counted as often as it is done.
+    pub fn passes(&self) -> u64 {
+        self.update.iter().fold(0, |sum, (_, times)| sum.saturating_add(*times))
     }
 
     /// All items that take part.
@@ -221,3 +233,6 @@ pub fn nominal_sites(parameters: &Value, item: &Item) -> u64 {
     }
     parameters.at(&traits.sites).and_then(count).unwrap_or(UNKNOWN)
 }
+
+#[cfg(test)]
+pub(crate) mod tests;

@@ -1,6 +1,6 @@
 //! Parcels of a `sample` step.
 
-use crate::blocks::{Block, block_rows, blocks};
+use crate::blocks::{Block, blocks};
 use crate::dynamics::Dynamics;
 use serde::{Deserialize, Serialize};
 use spinledger_ledger::Index;
@@ -73,6 +73,8 @@ pub struct Point {
     pub dynamics: Dynamics,
     /// Rows asked for of each chain.
     pub measure: u64,
+    /// Whether analyses choose what to leave out at the beginning (`equilibrate: auto`). It moves no spins.
+    pub discard: bool,
     /// Rows of a block.
     pub block_rows: u64,
     /// Its parcels, by start and number.
@@ -107,11 +109,13 @@ pub struct Ask {
     pub chains: u32,
     /// Start configurations.
     pub starts: Vec<String>,
+    /// Whether analyses choose what to leave out at the beginning.
+    pub discard: bool,
 }
 
 /// Plans a point against the index.
 pub fn plan_point(columns: Vec<(String, Value)>, dynamics: Dynamics, ask: &Ask, index: &Index) -> Point {
-    let rows = block_rows(dynamics.nominal_sites, dynamics.every);
+    let rows = dynamics.block_rows();
     let lanes = dynamics.lanes;
     let mut groups = Vec::new();
     for start in &ask.starts {
@@ -124,7 +128,7 @@ pub fn plan_point(columns: Vec<(String, Value)>, dynamics: Dynamics, ask: &Ask, 
             groups.push(Group { key, value, stream, start: start.clone(), number, asked, covered });
         }
     }
-    Point { columns, dynamics, measure: ask.measure, block_rows: rows, groups }
+    Point { columns, dynamics, measure: ask.measure, discard: ask.discard, block_rows: rows, groups }
 }
 
 /// Rows on record of each lane, from the first on without gaps.
@@ -191,9 +195,12 @@ impl Point {
         Some(pieces)
     }
 
-    /// Preimage of the key of the point's series: the chains, their length, and the constant columns that stand in its file.
-    pub fn series_preimage(&self, temperature_unit: &str) -> String {
-        let columns = self.columns.iter().map(|(name, value)| Value::List(vec![Value::text(name), value.clone()]));
+    /// Preimage of the key of the point's series: the chains, their length, and the constant columns that stand in its file, each with
+    /// its unit.
+    pub fn series_preimage(&self, columns: &[(String, String, Value)]) -> String {
+        let columns = columns
+            .iter()
+            .map(|(name, unit, value)| Value::List(vec![Value::text(name), Value::text(unit), value.clone()]));
         let groups = self.groups.iter().map(|group| {
             Value::map([("asked", Value::Integer(group.asked.into())), ("key", Value::text(group.key.to_string()))])
         });
@@ -203,22 +210,24 @@ impl Point {
             ("kind", Value::text("series")),
             ("measure", Value::Integer(self.measure as i64)),
             ("revision", Value::Integer(SERIES_REVISION)),
-            ("temperature", Value::Number(self.dynamics.temperature)),
-            ("temperature_unit", Value::text(temperature_unit)),
         ])
         .canonical()
     }
 
     /// Attempted spin updates that are still to be done, by the nominal number of sites.
     pub fn updates_due(&self) -> f64 {
-        let per_row = self.dynamics.nominal_sites as f64 * self.dynamics.every as f64;
-        let warm = self.dynamics.nominal_sites as f64 * (self.dynamics.equilibrate + self.dynamics.settle) as f64;
+        let d = &self.dynamics;
+        let per_sweep = d.nominal_sites as f64 * d.passes() as f64 * f64::from(d.lanes);
+        let warm = d.equilibrate as f64 + d.settle as f64;
         let of_group = |group: &Group| {
             let have = group.covered.iter().copied().min().unwrap_or(0);
             let rows = self.measure.saturating_sub(have) as f64;
             let warm = if have == 0 { warm } else { 0.0 };
-            if rows > 0.0 { f64::from(self.dynamics.lanes) * (rows * per_row + warm) } else { 0.0 }
+            if rows > 0.0 { per_sweep * (rows * d.every as f64 + warm) } else { 0.0 }
         };
         self.groups.iter().map(of_group).sum()
     }
 }
+
+#[cfg(test)]
+mod tests;

@@ -67,7 +67,8 @@ pub fn ask(body: &Value) -> Ask {
         Some(one) => vec![one.to_owned()],
         None => vec!["random".to_owned()],
     };
-    Ask { measure: count("measure") as u64, chains: u32::try_from(count("chains")).unwrap_or(1), starts }
+    let discard = body.get("equilibrate").and_then(Value::as_i64).is_none();
+    Ask { measure: count("measure") as u64, chains: u32::try_from(count("chains")).unwrap_or(1), starts, discard }
 }
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
