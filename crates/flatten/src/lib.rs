@@ -44,5 +44,5 @@ pub use energy::EnergyData;
 pub use graph::GraphData;
 pub use lattice::LatticeParts;
 pub use model::ModelParts;
-pub use total::{Spins, scale, total};
+pub use total::{Shown, Spins, Terms, scale, total};
 pub use unsound::{Result, Unsound};

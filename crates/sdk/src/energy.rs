@@ -1,6 +1,7 @@
 //! The Hamiltonian as the host flattens it.
 
-use crate::{Graph, Result, View};
+use crate::{Error, Graph, Result, View};
+use spinledger_flatten::{Spins, Terms};
 
 /// A table over k sites.
 #[derive(Clone, Copy, Debug)]
@@ -153,4 +154,72 @@ pub struct Problem<'a> {
     pub graph: Graph<'a>,
     /// The Hamiltonian.
     pub energy: Energy<'a>,
+}
+
+impl<'a> Problem<'a> {
+    /// Total energy of a configuration by definition: pairs, site energies and many-body terms, or couplings, anisotropies and fields, each by an
+    /// ordered sum, then what the callbacks of a custom model add. Cost: one pass over bonds, sites and many-body terms.
+    ///
+    /// # Errors
+    /// Where the configuration is of another kind or number of sites, or the callbacks fail.
+    ///
+    /// # Panics
+    /// Where the configuration holds a state that does not exist.
+    pub fn total(&self, view: &View<'_>) -> Result<f64> {
+        self.check(view)?;
+        let terms = self.terms();
+        let mut total = match view {
+            // Told apart once and not at every site.
+            View::Bytes { data, stride: 1, .. } => terms.total(&Spins::States(data)),
+            _ => terms.total(view),
+        };
+        if let Some(custom) = &self.energy.custom {
+            total += custom.total(view)?;
+        }
+        Ok(total)
+    }
+
+    /// Refuses a configuration of another kind or number of sites than the model's and the lattice's.
+    ///
+    /// # Errors
+    /// Then.
+    pub fn check(&self, view: &View<'_>) -> Result<()> {
+        let (states, components) = (self.energy.states, self.energy.components);
+        let fits = match view {
+            View::Bytes { .. } => states > 0,
+            View::Bits { .. } => states == 2,
+            View::Vectors { components: shown, .. } => components > 0 && *shown == components,
+        };
+        if !fits {
+            return Err(Error::new("the configuration does not hold the model's kind of spin"));
+        }
+        if view.sites() != self.graph.total {
+            let (shown, total) = (view.sites(), self.graph.total);
+            return Err(Error::new(format!("the configuration has {shown} sites, and the lattice {total}")));
+        }
+        Ok(())
+    }
+
+    /// All terms but the callbacks.
+    fn terms(&self) -> Terms<'_> {
+        let (graph, energy) = (&self.graph, &self.energy);
+        Terms {
+            sites: graph.sites,
+            states: energy.states,
+            components: energy.components,
+            bonds: graph.bonds,
+            bond_tables: energy.bond_tables,
+            bond_strengths: energy.bond_strengths,
+            pair_tables: energy.pair_tables,
+            couplings: energy.couplings,
+            site_class: energy.site_class,
+            site_tables: energy.site_tables,
+            site_strengths: energy.site_strengths,
+            anisotropies: energy.anisotropies,
+            fields: energy.fields,
+            factor_tables: energy.factor_tables.iter().map(|table| (table.order, table.energies)).collect(),
+            factors: energy.factors,
+            factor_sites: energy.factor_sites,
+        }
+    }
 }

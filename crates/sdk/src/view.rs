@@ -130,6 +130,18 @@ impl<'a> View<'a> {
     }
 }
 
+impl spinledger_flatten::Shown for View<'_> {
+    #[inline]
+    fn state(&self, site: usize) -> usize {
+        usize::from(View::state(self, site))
+    }
+
+    #[inline]
+    fn component(&self, site: usize, component: usize, _components: usize) -> f64 {
+        View::component(self, site, component)
+    }
+}
+
 /// A configuration to be written: free and pinned sites, one after the other.
 #[derive(Debug)]
 pub enum Spins<'a> {

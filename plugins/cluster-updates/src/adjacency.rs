@@ -70,25 +70,7 @@ impl<'a> Adjacency<'a> {
     }
 
     fn sort_out_ties(&mut self) {
-        // Looked up only, never walked: its order cannot show.
-        let mut known = HashMap::new();
-        for entry in 0..self.neighbours.len() {
-            let tie = self.tie_of(entry);
-            let next = known.len() as u16;
-            let number = *known.entry((tie.table, tie.strength.to_bits())).or_insert(next);
-            if number == next && known.len() > self.ties.len() {
-                if self.ties.len() == MOST_TIES {
-                    self.ties.clear();
-                    self.tie = Vec::new();
-                    return;
-                }
-                self.ties.push(tie);
-            }
-            self.tie.push(number);
-        }
-        if self.ties.len() <= 1 {
-            self.tie = Vec::new();
-        }
+        (self.ties, self.tie) = kinds(self.neighbours.len(), |entry| self.tie_of(entry));
     }
 
     /// Whether every bond has its own threshold computed when it is looked at.
@@ -100,4 +82,28 @@ impl<'a> Adjacency<'a> {
     pub(crate) fn tie_of(&self, entry: usize) -> Tie {
         Tie { table: self.tables[entry], strength: self.strengths.get(entry).copied().unwrap_or(1.0) }
     }
+}
+
+/// Sorts bonds into kinds: the kinds, and the kind of each. There are no kinds where they would be too many, and no kind is told of each where
+/// there is only one.
+pub(crate) fn kinds(count: usize, tie_of: impl Fn(usize) -> Tie) -> (Vec<Tie>, Vec<u16>) {
+    // Looked up only, never walked: its order cannot show.
+    let mut known = HashMap::new();
+    let (mut ties, mut kind) = (Vec::new(), Vec::with_capacity(count));
+    for entry in 0..count {
+        let tie = tie_of(entry);
+        let next = ties.len();
+        let number = *known.entry((tie.table, tie.strength.to_bits())).or_insert(next as u16);
+        if usize::from(number) == next {
+            if next == MOST_TIES {
+                return (Vec::new(), Vec::new());
+            }
+            ties.push(tie);
+        }
+        kind.push(number);
+    }
+    if ties.len() <= 1 {
+        kind = Vec::new();
+    }
+    (ties, kind)
 }

@@ -2,13 +2,12 @@
 
 use crate::adjacency::Adjacency;
 use crate::bonds::{self, Line, Rows};
+use crate::configuration::Configuration;
 use crate::even::Even;
 use crate::symmetry::Symmetry;
 use spinledger_numerics::random::{Halves, below_u32};
-use spinledger_numerics::sum::sum_by;
 use spinledger_sdk::{
-    Error, Host, Parameter, Params, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View,
-    kinds,
+    Error, Parameter, Params, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance, UpdateSpec, View, kinds,
 };
 
 /// Half words below it leave the next cluster as it is: one in 16. See `README.md`, "Why some clusters rest".
@@ -46,25 +45,19 @@ impl Update for Wolff {
 /// A chain under single-cluster updates.
 pub(crate) struct Chain<'a> {
     clusters: usize,
-    inverse_temperature: f64,
-    host: Host<'a>,
-    problem: Problem<'a>,
+    base: Configuration<'a>,
     adjacency: Adjacency<'a>,
     /// The same once more, where it is simple.
     even: Option<Even>,
-    symmetry: Symmetry,
     /// Rows of each involution, or one set that is rewritten for each exchange.
     rows: Vec<Rows>,
     /// For exchanges, see [`Rows::exchange`].
     costs: Vec<(Line, Line)>,
-    /// States, pinned sites after free ones.
-    states: Vec<u8>,
-    /// The same while a cluster grows: the state before the flip, plus q if the site waits in the queue, plus 2 q if it was worked off.
+    /// The states while a cluster grows: the state before the flip, plus q if the site waits in the queue, plus 2 q if it was worked off.
     marks: Vec<u16>,
     /// Sites of the cluster in the order in which they were added. One longer than there are sites, since the place behind the last one is
     /// written to before it is known whether a site is added.
     queue: Vec<u32>,
-    words: Halves,
     energy: f64,
 }
 
@@ -72,51 +65,38 @@ impl<'a> Chain<'a> {
     /// Gets ready, with all spins in state 0 until a configuration is imported.
     ///
     /// # Errors
-    /// Where spins are vectors, energies other than pairs are there, no symmetry is given or the tables contradict it, or several chains
-    /// are asked for.
+    /// See [`Configuration::new`].
     fn new(clusters: usize, prepare: Prepare<'a>) -> Result<Self> {
-        let problem = prepare.problem;
-        let energy = &problem.energy;
-        if energy.states == 0 || energy.custom.is_some() || !energy.factors.is_empty() {
-            return Err(Error::new("this rule serves discrete spins with pair energies only"));
-        }
-        let [key] = &prepare.lane_keys[..] else { return Err(Error::new("this rule advances one chain at a time")) };
-        let symmetry = Symmetry::of(energy)?;
-        let adjacency = Adjacency::new(&problem);
-        let beta = prepare.inverse_temperature;
-        let costs = bonds::exchange_costs(&symmetry, &adjacency.ties, energy.pair_tables, beta);
-        let rows = match &symmetry {
+        let base = Configuration::new(prepare)?;
+        let (energy, beta) = (&base.problem.energy, base.inverse_temperature);
+        let adjacency = Adjacency::new(&base.problem);
+        let costs = bonds::exchange_costs(&base.symmetry, &adjacency.ties, energy.pair_tables, beta);
+        let rows = match &base.symmetry {
             Symmetry::Involutions(maps) => {
                 maps.iter().map(|map| Rows::of_involution(map, &adjacency.ties, energy.pair_tables, beta)).collect()
             }
             Symmetry::Exchanges(q) => vec![Rows::of_exchanges(*q, adjacency.ties.len())],
         };
-        let mut states = vec![0; problem.graph.sites];
-        states.extend_from_slice(energy.pinned_states);
         let mut chain = Chain {
             clusters,
-            inverse_temperature: beta,
-            host: prepare.host,
             even: Even::new(&adjacency),
             adjacency,
-            symmetry,
             rows,
             costs,
-            marks: vec![0; states.len()],
-            queue: vec![0; states.len() + 1],
-            states,
-            words: Halves::from_key(key),
+            marks: vec![0; base.states.len()],
+            queue: vec![0; base.states.len() + 1],
             energy: 0.0,
-            problem,
+            base,
         };
-        chain.begin();
+        chain.begin()?;
         Ok(chain)
     }
 
     /// Marks and energy from the states.
-    fn begin(&mut self) {
-        self.marks.iter_mut().zip(&self.states).for_each(|(mark, state)| *mark = u16::from(*state));
-        self.energy = total(&self.problem, &self.states);
+    fn begin(&mut self) -> Result<()> {
+        self.marks.iter_mut().zip(&self.base.states).for_each(|(mark, state)| *mark = u16::from(*state));
+        self.energy = self.base.energy()?;
+        Ok(())
     }
 
     /// For tests: a fault of two percent in the probability of every bond.
@@ -142,17 +122,17 @@ impl<'a> Chain<'a> {
 
     /// Grows a cluster and flips it, unless it rests or touches a pinned site.
     fn cluster(&mut self) {
-        let sites = self.problem.graph.sites as u32;
-        let words = &mut self.words;
+        let sites = self.base.problem.graph.sites as u32;
+        let words = &mut self.base.words;
         if words.next() < REST {
             return;
         }
         let seed = below_u32(sites, || words.next());
-        let operation = match &self.symmetry {
+        let operation = match &self.base.symmetry {
             Symmetry::Involutions(maps) if maps.len() > 1 => below_u32(maps.len() as u32, || words.next()) as usize,
             Symmetry::Involutions(_) => 0,
             Symmetry::Exchanges(q) => {
-                let own = self.states[seed as usize];
+                let own = self.base.states[seed as usize];
                 let choice = if *q > 2 { below_u32(*q as u32 - 1, || words.next()) as u8 } else { 0 };
                 self.rows[0].exchange(own, choice + u8::from(choice >= own), &self.costs);
                 0
@@ -169,7 +149,7 @@ impl<'a> Chain<'a> {
         };
         let map = &self.rows[operation].map;
         for site in &self.queue[..size] {
-            let (state, mark) = (&mut self.states[*site as usize], &mut self.marks[*site as usize]);
+            let (state, mark) = (&mut self.base.states[*site as usize], &mut self.marks[*site as usize]);
             if !frozen {
                 *state = map[*state as usize];
             }
@@ -193,8 +173,8 @@ impl<'a> Chain<'a> {
         let Some(even) = self.even.as_ref() else { return self.grow_any(seed, operation) };
         let rows = &self.rows[operation];
         let steps = even.steps.as_chunks::<DEGREE>().0;
-        let (sites, q) = (self.problem.graph.sites, self.problem.energy.states as u16);
-        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.words);
+        let (sites, q) = (self.base.problem.graph.sites, self.base.problem.energy.states as u16);
+        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.base.words);
         let (mut head, mut tail, mut change) = (0, 1, 0.0);
         queue[0] = seed;
         marks[seed as usize] += q;
@@ -231,8 +211,8 @@ impl<'a> Chain<'a> {
     #[inline(always)]
     fn grow(&mut self, seed: u32, operation: usize, kind: Bonds) -> (usize, f64, bool) {
         let rows = &self.rows[operation];
-        let (sites, q) = (self.problem.graph.sites as u32, self.problem.energy.states as u16);
-        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.words);
+        let (sites, q) = (self.base.problem.graph.sites as u32, self.base.problem.energy.states as u16);
+        let (marks, queue, words) = (&mut self.marks[..], &mut self.queue[..], &mut self.base.words);
         let (mut head, mut tail, mut change) = (0, 1, 0.0);
         queue[0] = seed;
         marks[seed as usize] += q;
@@ -262,7 +242,7 @@ impl<'a> Chain<'a> {
                         }
                         Bonds::Varied => {
                             let tie = self.adjacency.tie_of(entry + place);
-                            varied(self.inverse_temperature, &self.problem, tie, &rows.map, state, mark)
+                            varied(self.base.inverse_temperature, &self.base.problem, tie, &rows.map, state, mark)
                         }
                     };
                     // The sign of the difference: added, 1, or not, 0, without a branch that would be mispredicted.
@@ -311,52 +291,21 @@ fn varied(
     }
 }
 
-/// Total energy of a configuration: bonds and sites, by ordered sums.
-fn total(problem: &Problem<'_>, states: &[u8]) -> f64 {
-    let (graph, energy) = (&problem.graph, &problem.energy);
-    let q = energy.states;
-    let mut total = 0.0;
-    if !energy.pair_tables.is_empty() {
-        total += sum_by(graph.bonds.len(), |number| {
-            let bond = graph.bonds[number];
-            let pair = states[bond.i as usize] as usize * q + states[bond.j as usize] as usize;
-            let strength = energy.bond_strengths.get(number).copied().unwrap_or(1.0);
-            strength * energy.pair_tables[energy.bond_tables[number] as usize * q * q + pair]
-        });
-    }
-    if !energy.site_tables.is_empty() {
-        total += sum_by(graph.sites, |site| {
-            let strength = energy.site_strengths.get(site).copied().unwrap_or(1.0);
-            strength * energy.site_tables[energy.site_class[site] as usize * q + states[site] as usize]
-        });
-    }
-    total
-}
-
 impl UpdateInstance for Chain<'_> {
-    fn import(&mut self, lane: usize, view: &View<'_>) -> Result<()> {
-        let (graph, states) = (&self.problem.graph, self.problem.energy.states);
-        if lane != 0 || view.sites() != graph.total || matches!(view, View::Vectors { .. }) {
-            return Err(Error::new(format!("one configuration of {} discrete spins is needed", graph.total)));
-        }
-        if let Some(site) = (0..graph.sites).find(|s| view.state(*s) as usize >= states) {
-            return Err(Error::new(format!("site {site} is in state {}; there are {states}", view.state(site))));
-        }
-        // Pinned sites keep the states that the Hamiltonian gives them.
-        (0..graph.sites).for_each(|site| self.states[site] = view.state(site));
-        self.begin();
-        Ok(())
+    fn import(&mut self, _lane: usize, view: &View<'_>) -> Result<()> {
+        self.base.import(view)?;
+        self.begin()
     }
 
     fn export(&self, _lane: usize, spins: &mut Spins<'_>) {
         if let Spins::States(out) = spins {
-            out.copy_from_slice(&self.states);
+            out.copy_from_slice(&self.base.states);
         }
     }
 
     fn sweep(&mut self, count: u64) -> Result<()> {
         for _ in 0..count {
-            if self.host.cancelled() {
+            if self.base.host.cancelled() {
                 return Err(Error::cancelled());
             }
             for _ in 0..self.clusters {
@@ -367,42 +316,23 @@ impl UpdateInstance for Chain<'_> {
     }
 
     fn view(&mut self, _lane: usize) -> View<'_> {
-        View::bytes(&self.states)
+        View::bytes(&self.base.states)
     }
 
     fn tallies(&self, _lane: usize) -> Tallies {
-        let values = self.problem.energy.values;
-        let mut counts = vec![0_u64; values.len()];
-        if !values.is_empty() {
-            self.states[..self.problem.graph.sites].iter().for_each(|s| counts[*s as usize] += 1);
-        }
-        // Counted when asked for: exact for the usual values, and without a history.
-        let sum = counts.iter().zip(values).map(|(count, value)| *count as f64 * value).sum();
-        Tallies {
-            energy: Some(self.energy),
-            magnetisation: (!values.is_empty()).then_some([sum, 0.0, 0.0]),
-            acceptance: None,
-        }
+        Tallies { energy: Some(self.energy), magnetisation: self.base.magnetisation(), acceptance: None }
     }
 
     fn save(&self, out: &mut Vec<u8>) {
-        out.extend_from_slice(&self.states);
+        self.base.save(out);
         out.extend_from_slice(&self.energy.to_bits().to_le_bytes());
-        self.words.save(out);
     }
 
     fn restore(&mut self, bytes: &[u8]) -> Result<()> {
-        let wrong = || Error::new("the saved state is of another lattice or model");
-        let (states, rest) = bytes.split_at_checked(self.states.len()).ok_or_else(wrong)?;
-        let (energy, words) = rest.split_first_chunk::<8>().ok_or_else(wrong)?;
-        if states.iter().any(|s| *s as usize >= self.problem.energy.states) {
-            return Err(wrong());
-        }
-        self.words =
-            Halves::restore(words).map_err(|error| Error::new(format!("the saved random numbers: {error}")))?;
-        self.states.copy_from_slice(states);
-        self.begin();
-        self.energy = f64::from_bits(u64::from_le_bytes(*energy));
+        let rest = self.base.restore(bytes)?;
+        let energy = rest.try_into().map_err(|_| Error::new("the saved state is not one of this rule"))?;
+        self.begin()?;
+        self.energy = f64::from_bits(u64::from_le_bytes(energy));
         Ok(())
     }
 }

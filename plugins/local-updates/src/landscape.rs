@@ -1,6 +1,5 @@
 //! The energy as a function of the state of one site, all others held.
 
-use spinledger_numerics::sum::sum_by;
 use spinledger_sdk::{Error, FactorTable, Problem, Result, View};
 use std::borrow::Cow;
 
@@ -204,38 +203,12 @@ impl<'a> Landscape<'a> {
         bound
     }
 
-    /// Total energy of a configuration: bonds, sites and factors by ordered sums, then what custom callbacks add.
+    /// Total energy of a configuration.
     ///
     /// # Errors
     /// What the callbacks say.
     pub(crate) fn total(&self, states: States<'_>) -> Result<f64> {
-        let (graph, energy) = (&self.problem.graph, &self.problem.energy);
-        let q = energy.states;
-        let mut total = 0.0;
-        if !energy.pair_tables.is_empty() {
-            total += sum_by(graph.bonds.len(), |number| {
-                let bond = graph.bonds[number];
-                let (a, b) = (states.at(bond.i as usize) as usize, states.at(bond.j as usize) as usize);
-                let strength = energy.bond_strengths.get(number).copied().unwrap_or(1.0);
-                strength * self.table(energy.bond_tables[number])[a * q + b]
-            });
-        }
-        if !energy.site_tables.is_empty() {
-            total += sum_by(graph.sites, |site| {
-                let strength = energy.site_strengths.get(site).copied().unwrap_or(1.0);
-                strength * energy.site_tables[energy.site_class[site] as usize * q + states.at(site) as usize]
-            });
-        }
-        total += sum_by(energy.factors.len(), |number| {
-            let factor = energy.factors[number];
-            let table = energy.factor_tables[factor.table as usize];
-            let sites = &energy.factor_sites[factor.first as usize..][..table.order];
-            table.energies[sites.iter().fold(0, |index, site| index * q + states.at(*site as usize) as usize)]
-        });
-        if let Some(custom) = &energy.custom {
-            total += custom.total(&states.view())?;
-        }
-        Ok(total)
+        self.problem.total(&states.view())
     }
 }
 

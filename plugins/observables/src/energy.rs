@@ -1,6 +1,5 @@
 //! Energy per site.
 
-use crate::total::total;
 use spinledger_sdk::{
     Column, ColumnInfo, Host, Observable, ObservableInstance, ObservableSpec, Params, Problem, Result, Tallies, View,
 };
@@ -41,7 +40,7 @@ impl ObservableInstance for Instance<'_> {
     fn measure(&mut self, views: &[View<'_>], tallies: &[Tallies], values: &mut [f64]) -> Result<()> {
         let energy = match tallies[0].energy {
             Some(energy) => energy,
-            None => total(&self.0, &views[0])?,
+            None => self.0.total(&views[0])?,
         };
         values[0] = energy / self.0.graph.sites as f64;
         Ok(())

@@ -9,7 +9,6 @@ mod magnetisation;
 mod order_parameter;
 #[cfg(test)]
 mod tests;
-mod total;
 
 use energy::EnergyPerSite;
 use magnetisation::Magnetisation;

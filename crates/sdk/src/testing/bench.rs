@@ -130,7 +130,7 @@ impl Bench {
     /// # Panics
     /// Where it does not fit, or the model's callback fails.
     pub fn total(&self, states: &[u8]) -> f64 {
-        total(&self.graph, &self.energy, Spins::States(states)) + self.custom(&View::bytes(states))
+        self.by_definition(Spins::States(states), &View::bytes(states))
     }
 
     /// The same for vector spins.
@@ -138,12 +138,13 @@ impl Bench {
     /// # Panics
     /// As above.
     pub fn total_vectors(&self, vectors: &[f64]) -> f64 {
-        let view = View::vectors(vectors, self.energy.components);
-        total(&self.graph, &self.energy, Spins::Vectors(vectors)) + self.custom(&view)
+        self.by_definition(Spins::Vectors(vectors), &View::vectors(vectors, self.energy.components))
     }
 
-    fn custom(&self, view: &View<'_>) -> f64 {
-        self.energy().custom.map_or(0.0, |custom| custom.total(view).unwrap_or_else(|error| panic!("{error}")))
+    fn by_definition(&self, spins: Spins<'_>, view: &View<'_>) -> f64 {
+        let custom = self.energy().custom;
+        let added = custom.map_or(0.0, |custom| custom.total(view).unwrap_or_else(|error| panic!("{error}")));
+        total(&self.graph, &self.energy, spins) + added
     }
 }
 

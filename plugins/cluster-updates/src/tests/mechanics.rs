@@ -44,7 +44,7 @@ impl Model for Glass {
 }
 
 /// Spin one with a zero state that the inversion leaves as it is, and a site energy that it leaves unchanged.
-struct SpinOne;
+pub(super) struct SpinOne;
 
 impl Model for SpinOne {
     const SPEC: ModelSpec = ModelSpec { name: "spin-one", states: 3, ..ModelSpec::EMPTY };
@@ -64,12 +64,12 @@ impl Model for SpinOne {
     }
 }
 
-fn glass(size: &str) -> System {
+pub(super) fn glass(size: &str) -> System {
     let bench = Bench::new::<Square, Glass>(&params(size), &params("{}"));
     System { name: "glass", bench, inverse_temperature: 0.4 }
 }
 
-fn all() -> Vec<System> {
+pub(super) fn all() -> Vec<System> {
     symmetric().into_iter().chain([glass(r#"{"size": 3}"#)]).collect()
 }
 
