@@ -25,7 +25,7 @@ pub struct Parameter {
     pub name: &'static str,
     /// What it may be: a JSON text, see [`kinds`].
     pub kind: &'static str,
-    /// `energy`, `temperature` ...; empty for pure numbers.
+    /// `energy`; `field`, which plugins get as an energy and people may give in tesla; `temperature`; empty for pure numbers.
     pub unit: &'static str,
     /// The default as JSON text; empty: none.
     pub default: &'static str,
