@@ -138,7 +138,12 @@ impl Drawing {
         let _ = write!(out, " width=\"{w}\" height=\"{h}\" viewBox=\"0 0 {w} {h}\" role=\"img\"");
         match reader {
             Reader::File => {
-                let _ = write!(out, ">\n<title>{}</title>\n<desc>{}</desc>\n", escape(&self.title), escape(&self.description));
+                let _ = write!(
+                    out,
+                    ">\n<title>{}</title>\n<desc>{}</desc>\n",
+                    escape(&self.title),
+                    escape(&self.description)
+                );
             }
             Reader::Page => {
                 let _ = write!(out, " aria-label=\"{}. {}\">", escape(&self.title), escape(&self.description));
@@ -192,8 +197,7 @@ impl Drawing {
         if !(width >= 1.0 && height >= 1.0 && width * height <= 1e8) {
             return Err(DrawError::Size { width, height });
         }
-        let mut pixels =
-            skia::Pixmap::new(width as u32, height as u32).ok_or(DrawError::Size { width, height })?;
+        let mut pixels = skia::Pixmap::new(width as u32, height as u32).ok_or(DrawError::Size { width, height })?;
         let transform = skia::Transform::from_scale(scale as f32, scale as f32);
         for shape in &self.shapes {
             let Some(path) = painted(&shape.path) else { continue };

@@ -37,12 +37,13 @@ fn relative(letter: char) -> char {
 
 /// Whether a letter takes part in drawing at all: controls and direction marks do not.
 fn shows(letter: char) -> bool {
-    !(letter.is_control() || matches!(letter, '\u{200b}'..='\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}' | '\u{feff}'))
+    !(letter.is_control()
+        || matches!(letter, '\u{200b}'..='\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}' | '\u{feff}'))
         || matches!(letter, '\t' | '\n' | '\r')
 }
 
 fn glyph(face: &Face<'_>, letter: char) -> ttf_parser::GlyphId {
-    face.glyph_index(relative(letter)).or_else(|| face.glyph_index('\u{fffd}')).unwrap_or_default()
+    face.glyph_index(relative(letter)).or_else(|| face.glyph_index('□')).unwrap_or_default()
 }
 
 /// Width of a text at a size.
@@ -81,6 +82,29 @@ pub(crate) fn fitted(text: &str, size: f64, weight: Weight, most: f64) -> String
         }
     }
     String::new()
+}
+
+/// The text in lines no wider than `most`, broken at spaces; what does not fit into `lines` lines ends in an ellipsis. No lines for
+/// an empty text.
+pub(crate) fn wrapped(text: &str, size: f64, weight: Weight, most: f64, lines: usize) -> Vec<String> {
+    let mut out: Vec<String> = Vec::new();
+    for word in text.split_whitespace() {
+        if let Some(last) = out.last_mut() {
+            let longer = format!("{last} {word}");
+            if width(&longer, size, weight) > most {
+                out.push(word.to_owned());
+            } else {
+                *last = longer;
+            }
+        } else {
+            out.push(word.to_owned());
+        }
+    }
+    if out.len() > lines {
+        let rest = out.split_off(lines.max(1) - 1).join(" ");
+        out.push(rest);
+    }
+    out.iter().map(|line| fitted(line, size, weight, most)).collect()
 }
 
 struct Writer {
@@ -131,7 +155,7 @@ mod tests {
     fn the_font_has_the_letters_of_the_trade() {
         for weight in [Weight::Regular, Weight::Heavy] {
             let missing = with_face(weight, "no face".to_owned(), |face| {
-                "Az09⁰⁻⁹₀₄αβχξτ−×±∞√ÅħµKJ…–’".chars().filter(|&c| face.glyph_index(c).is_none()).collect()
+                "Az09⁰⁻⁹₀₄□αβχξτ−×±∞√ÅħµKJ…–’".chars().filter(|&c| face.glyph_index(c).is_none()).collect()
             });
             assert_eq!(missing, "");
         }

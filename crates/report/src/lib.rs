@@ -1,13 +1,22 @@
 //! Charts, pictures of configurations and the report page.
 #![forbid(unsafe_code)]
 
+mod chart;
 mod drawing;
 mod font;
 mod ink;
+mod number;
+mod page;
 mod path;
+mod picture;
 mod text;
+mod ticks;
 
+pub use chart::{Axis, Chart, Frame, Line, Mark, MarkAxis, Point, Scale, Style};
 pub use drawing::Drawing;
+pub use number::{Shown, shown};
+pub use page::{Again, Answer, Content, Figure, Page, Reference, TableView, Verdict, flag_words};
+pub use picture::{Picture, Shades, Sites, Walls};
 
 /// A drawing could not be painted.
 #[derive(Debug, thiserror::Error)]

@@ -89,7 +89,11 @@ impl Path {
     /// Adds a closed polygon.
     pub(crate) fn polygon(&mut self, corners: &[(f64, f64)]) {
         for (i, &(x, y)) in corners.iter().enumerate() {
-            if i == 0 { self.to(x, y) } else { self.line(x, y) };
+            if i == 0 {
+                self.to(x, y)
+            } else {
+                self.line(x, y)
+            };
         }
         self.close();
     }

@@ -48,7 +48,10 @@ mod tests {
 
     #[test]
     fn nothing_gets_out_of_text() {
-        assert_eq!(escape("</style><script a='1' b=\"2\">&\u{1}"), "&lt;/style&gt;&lt;script a=&#39;1&#39; b=&quot;2&quot;&gt;&amp;\u{fffd}");
+        assert_eq!(
+            escape("</style><script a='1' b=\"2\">&\u{1}"),
+            "&lt;/style&gt;&lt;script a=&#39;1&#39; b=&quot;2&quot;&gt;&amp;\u{fffd}"
+        );
         assert_eq!(json_text("</script>\"\\\n"), "\"\\u003c/script\\u003e\\\"\\\\\\u000a\"");
     }
 }

@@ -61,8 +61,8 @@ fn decade_label(n: i32) -> String {
     }
 }
 
-/// Ticks on a logarithmic axis between two positive numbers: decades with 2 to 9 between them; on less than two decades 1, 2, 5;
-/// on less than half a decade like a linear axis.
+/// Ticks on a logarithmic axis between two positive numbers: 1, 2, 5 of each decade where there is room, otherwise decades with 2 to 9
+/// between them; on less than half a decade like a linear axis.
 pub(crate) fn logarithmic(lo: f64, hi: f64, most: usize) -> Ticks {
     let decades = libm::log10(hi) - libm::log10(lo);
     if decades < 0.5 {
@@ -71,7 +71,7 @@ pub(crate) fn logarithmic(lo: f64, hi: f64, most: usize) -> Ticks {
     let (first, last) = (exponent(lo), exponent(hi) + 1);
     let inside = |x: f64| x >= lo * (1.0 - 1e-9) && x <= hi * (1.0 + 1e-9);
     let mut ticks = Ticks::default();
-    if decades < 2.0 {
+    if decades < 1.0 || decades * 3.0 <= most as f64 + 1.0 {
         for e in first..=last {
             for m in 1..10 {
                 let value = decimal(m, e);
@@ -114,7 +114,10 @@ mod tests {
 
     #[test]
     fn linear_ticks_have_digits_enough() {
-        assert_eq!(labels(&linear(2.2, 2.36, 8)), ["2.20", "2.22", "2.24", "2.26", "2.28", "2.30", "2.32", "2.34", "2.36"]);
+        assert_eq!(
+            labels(&linear(2.2, 2.36, 8)),
+            ["2.20", "2.22", "2.24", "2.26", "2.28", "2.30", "2.32", "2.34", "2.36"]
+        );
         assert_eq!(labels(&linear(0.0, 1.0, 10)).len(), 11);
         assert_eq!(labels(&linear(-3.1, 3.1, 4)), ["\u{2212}2", "0", "2"]);
         let large = linear(1_200_000.0, 1_230_000.0, 4);
