@@ -200,6 +200,9 @@ typedef struct SlHost {
   double (*cos)(double x);
   // x^y.
   double (*pow)(double x, double y);
+  // The key of a numbered stream under a key: for tiles that draw for themselves, or for streams of several purposes. Other numbers and
+  // other keys give streams that have nothing to do with each other.
+  void (*derive_key)(void *context, const struct SlKey *key, uint32_t number, struct SlKey *derived);
 } SlHost;
 
 // A bond.
@@ -280,7 +283,9 @@ typedef struct SlFactor {
   uint32_t first;
 } SlFactor;
 
-// A configuration of one chain, where its owner keeps it.
+// A configuration of one chain, where its owner keeps it. Everything that the numbers reach lies within `length`; a reader that does not
+// trust the owner needs to look no further. A state is below the model's number of states unless the rule has a fault: who indexes memory by
+// one checks it.
 typedef struct SlView {
   // Size of this struct in bytes.
   size_t size;
@@ -297,10 +302,12 @@ typedef struct SlView {
   size_t component_stride;
   // See `stride`.
   size_t offset;
-  // Bits: where not null, site s is bit `offset + positions[s]`.
+  // Bits: where not null, site s is bit `offset + positions[s]`. They do not change while the instance lives.
   const uint32_t *positions;
-  // Bytes, 64-bit words or doubles.
+  // Bytes, 64-bit words or doubles, aligned as such.
   const void *data;
+  // How many of them.
+  size_t length;
 } SlView;
 
 // The energy that a custom model adds, of a whole configuration.
@@ -440,6 +447,8 @@ typedef struct SlTallies {
   uint64_t proposed;
   // Of these, accepted.
   uint64_t accepted;
+  // Zero: room for totals to come, since tallies stand in arrays and do not grow. Flags in `valid` will tell of them.
+  double spare[8];
 } SlTallies;
 
 // What an update rule is prepared with.

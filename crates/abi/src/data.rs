@@ -113,6 +113,10 @@ pub struct SlHost {
     pub cos: Option<unsafe extern "C" fn(x: f64) -> f64>,
     /// x^y.
     pub pow: Option<unsafe extern "C" fn(x: f64, y: f64) -> f64>,
+    /// The key of a numbered stream under a key: for tiles that draw for themselves, or for streams of several purposes. Other numbers and
+    /// other keys give streams that have nothing to do with each other.
+    pub derive_key:
+        Option<unsafe extern "C" fn(context: *mut c_void, key: *const SlKey, number: u32, derived: *mut SlKey)>,
 }
 
 /// A bond.
@@ -303,7 +307,9 @@ pub const SL_VIEW_BITS: u32 = 2;
 /// One vector of doubles a site.
 pub const SL_VIEW_VECTORS: u32 = 4;
 
-/// A configuration of one chain, where its owner keeps it.
+/// A configuration of one chain, where its owner keeps it. Everything that the numbers reach lies within `length`; a reader that does not
+/// trust the owner needs to look no further. A state is below the model's number of states unless the rule has a fault: who indexes memory by
+/// one checks it.
 #[repr(C)]
 #[derive(Clone, Copy, Debug)]
 pub struct SlView {
@@ -322,10 +328,12 @@ pub struct SlView {
     pub component_stride: usize,
     /// See `stride`.
     pub offset: usize,
-    /// Bits: where not null, site s is bit `offset + positions[s]`.
+    /// Bits: where not null, site s is bit `offset + positions[s]`. They do not change while the instance lives.
     pub positions: *const u32,
-    /// Bytes, 64-bit words or doubles.
+    /// Bytes, 64-bit words or doubles, aligned as such.
     pub data: *const c_void,
+    /// How many of them.
+    pub length: usize,
 }
 
 /// A configuration to write: `states` for discrete spins (one byte a site), `vectors` for vector spins (components innermost); `sites` of them.
@@ -367,6 +375,8 @@ pub struct SlTallies {
     pub proposed: u64,
     /// Of these, accepted.
     pub accepted: u64,
+    /// Zero: room for totals to come, since tallies stand in arrays and do not grow. Flags in `valid` will tell of them.
+    pub spare: [f64; 8],
 }
 
 /// What an update rule is prepared with.

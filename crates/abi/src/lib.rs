@@ -14,11 +14,13 @@
 //!   Hamiltonian that it described. What `create` and `prepare` return is not null, and is freed exactly once, by `destroy` and `release`.
 //! - **Threads.** What `create` returns is shared between threads and immutable; an instance (`prepare`) is used by one
 //!   thread at a time. Parallel loops go through [`SlHost::parallel_for`], over tiles whose number does not depend on threads.
+//! - **Stopping.** A rule that stops because [`SlHost::cancelled`] says so, or fails, leaves its chains where nobody knows: the host makes no
+//!   call on the instance but `release`. The same holds after a panic, and for observables.
 //! - **Randomness.** Only from the streams that an instance is given. The same keys must give the same bits.
 //! - **Growth.** Every struct but the smallest begins with its size in bytes, as its writer knows it. New fields are added
 //!   at the end only; a reader uses a field only if the size covers it. Structs that stand in arrays ([`SlText`], [`SlValue`], [`SlKey`],
 //!   [`SlBond`], [`SlFactor`], [`SlFactorTable`], [`SlView`], [`SlTallies`], [`SlItem`]) never grow within a version: the distance between two
-//!   of them must be the same on both sides. Of what the host hands out singly ([`SlGraph`], [`SlEnergy`], [`SlPrepare`]) the host's may be larger
+//!   of them must be the same on both sides. Of what the host hands out singly ([`SlHost`], [`SlGraph`], [`SlEnergy`], [`SlPrepare`]) the host's may be larger
 //!   than the library's, never smaller: [`SlLibrary::layout`] is compared when a library is loaded. Tables of functions are read as
 //!   far as the library has them. A change of meaning makes a new interface version.
 //!   Until each kind and each form of energy serves a real plugin in Rust and in C, version 1 is provisional.

@@ -146,7 +146,7 @@ fn c_and_cpp_compilers_take_it_without_a_word() {
 /// What the C compiler lays out is what Rust lays out: sizes of every struct that `SlLibrary::layout` names, and some offsets.
 #[test]
 fn the_c_layout_is_the_rust_layout() {
-    use spinledger_abi::{LAYOUT, SlEnergy, SlGraph, SlHost, SlLibrary, SlPrepare, SlUpdate, SlView};
+    use spinledger_abi::{LAYOUT, SlEnergy, SlGraph, SlHost, SlLibrary, SlPrepare, SlTallies, SlUpdate, SlView};
     use std::mem::offset_of;
     let names = ["SlValue", "SlGraph", "SlEnergy", "SlView", "SlTallies", "SlPrepare", "SlBond", "SlItem"];
     let mut source = String::from("#include \"spinledger.h\"\n#include <stddef.h>\n");
@@ -157,11 +157,12 @@ fn the_c_layout_is_the_rust_layout() {
     let offsets = [
         ("SlGraph", "face_sites", offset_of!(SlGraph, face_sites)),
         ("SlEnergy", "colour_sites", offset_of!(SlEnergy, colour_sites)),
-        ("SlHost", "pow", offset_of!(SlHost, pow)),
+        ("SlHost", "derive_key", offset_of!(SlHost, derive_key)),
         ("SlLibrary", "items", offset_of!(SlLibrary, items)),
         ("SlPrepare", "group_key", offset_of!(SlPrepare, group_key)),
         ("SlUpdate", "adapt", offset_of!(SlUpdate, adapt)),
-        ("SlView", "data", offset_of!(SlView, data)),
+        ("SlTallies", "spare", offset_of!(SlTallies, spare)),
+        ("SlView", "length", offset_of!(SlView, length)),
     ];
     for (k, (name, field, offset)) in offsets.into_iter().enumerate() {
         claim(names.len() + k, format!("offsetof({name}, {field}) == {offset}"));

@@ -39,6 +39,7 @@ impl Configuration {
             offset: 0,
             positions: std::ptr::null(),
             data,
+            length,
         }
     }
 

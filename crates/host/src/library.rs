@@ -119,8 +119,9 @@ fn open(path: &Path, file: &LibraryFile) -> Result<Library, LoadError> {
     // SAFETY: the symbol is the agreed one; that it has the agreed type is the library's word.
     let raw = unsafe { entry() };
     let here = || path.to_owned();
-    // SAFETY: a pointer from the entry function leads at least to the first word, which is read before anything is relied on.
-    if raw.is_null() || unsafe { (&raw const (*raw).magic).read_unaligned() } != MAGIC {
+    // SAFETY: neither null nor misaligned; a pointer from the entry function leads at least to the first word, which is read before anything
+    // is relied on.
+    if raw.is_null() || !raw.is_aligned() || unsafe { (&raw const (*raw).magic).read() } != MAGIC {
         return Err(LoadError::NotALibrary { file: here() });
     }
     // SAFETY: the first word says that a library begins here; up to `size` its layout is fixed for all versions.
@@ -228,7 +229,9 @@ unsafe fn table<T>(source: *const c_void) -> T {
     let mut out = std::mem::MaybeUninit::<T>::zeroed();
     // SAFETY: at most as many bytes as both sides have.
     unsafe {
-        let size = source.cast::<usize>().read_unaligned().min(size_of::<T>());
+        // Whole words: half a pointer to a function would be one to nowhere.
+        let size =
+            source.cast::<usize>().read_unaligned().min(size_of::<T>()) / size_of::<usize>() * size_of::<usize>();
         std::ptr::copy_nonoverlapping(source.cast::<u8>(), out.as_mut_ptr().cast::<u8>(), size);
         out.assume_init()
     }

@@ -181,7 +181,7 @@ impl Observer {
             Some(measure) => unsafe { measure(instance, views.as_ptr(), tallies.as_ptr(), out.as_mut_ptr(), message) },
             None => SL_FAILED,
         });
-        self.broken = matches!(answer, Err(HostError::Panicked { .. }));
+        self.broken = matches!(answer, Err(HostError::Panicked { .. } | HostError::Cancelled { .. }));
         answer
     }
 }

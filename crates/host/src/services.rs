@@ -82,6 +82,7 @@ impl HostTable {
             sin: Some(sin),
             cos: Some(cos),
             pow: Some(pow),
+            derive_key: Some(derive_key),
         };
         let table = Box::leak(Box::new(HostTable { raw, pool, log, cancelled: AtomicBool::new(false) }));
         table.raw.context = (&raw mut *table).cast();
@@ -131,6 +132,15 @@ unsafe extern "C" fn open_stream(_context: *mut c_void, key: *const SlKey, strea
     // SAFETY: null or as the interface describes them.
     if let (Some(key), Some(stream)) = unsafe { (key.as_ref(), stream.as_mut()) } {
         stream.state = Xoshiro::from_key(&StreamKey(key.bytes)).state();
+    }
+}
+
+unsafe extern "C" fn derive_key(_context: *mut c_void, key: *const SlKey, number: u32, derived: *mut SlKey) {
+    // SAFETY: null or as the interface describes them. Read before it is written: they may be one and the same.
+    let key = unsafe { key.as_ref() }.map(|key| StreamKey(key.bytes));
+    // SAFETY: as above.
+    if let (Some(key), Some(derived)) = (key, unsafe { derived.as_mut() }) {
+        derived.bytes = key.lane(number).0;
     }
 }
 
@@ -238,6 +248,11 @@ mod tests {
         }
         let mut generator = Xoshiro::from_key(&key);
         assert_eq!(words, std::array::from_fn(|_| generator.next()));
+        let mut raw = SlKey { bytes: key.0 };
+        let place = &raw mut raw;
+        // SAFETY: as above; a key may be replaced by one that is derived from it.
+        unsafe { host.raw.derive_key.unwrap()(host.raw.context, place, 7, place) };
+        assert_eq!(raw.bytes, key.lane(7).0);
     }
 
     #[test]

@@ -4,7 +4,7 @@ use crate::answer::ask;
 use crate::error::{HostError, Result};
 use crate::item::Handle;
 use crate::services::HostTable;
-use crate::shown::Shown;
+use crate::shown::{Placed, Shown};
 use crate::{Configuration, Energy, Graph, Label, saved};
 use spinledger_abi::{
     SL_FAILED, SL_OK, SL_TALLY_ACCEPTANCE, SL_TALLY_ENERGY, SL_TALLY_MAGNETISATION, SL_VIEW_BYTES, SlByteSink, SlKey,
@@ -76,6 +76,7 @@ impl UpdateItem {
             instance,
             lanes: keys.len(),
             broken: false,
+            placed: None,
             fingerprint: *hasher.finalize().as_bytes(),
             identity: self.identity.clone(),
             rule: self.handle.clone(),
@@ -95,12 +96,16 @@ impl std::fmt::Debug for UpdateItem {
     }
 }
 
-/// A group of chains under a rule. After a panic of the rule every call fails.
+/// What a rule is doing when it sweeps, in messages.
+const SWEEP: &str = "sweep";
+
+/// A group of chains under a rule. After a panic, or a sweep that did not come to its end, every call fails.
 pub struct Sampler {
     table: &'static SlUpdate,
     instance: *mut c_void,
     lanes: usize,
     broken: bool,
+    placed: Option<Placed>,
     fingerprint: [u8; 32],
     identity: String,
     // Dropped after the instance is released (`Drop` runs first): it refers to them.
@@ -193,7 +198,7 @@ impl Sampler {
     /// The rule fails, panics or is stopped.
     pub fn sweep(&mut self, count: u64) -> Result<()> {
         let (sweep, instance) = (self.table.sweep, self.instance);
-        self.ask("sweep", |message| match sweep {
+        self.ask(SWEEP, |message| match sweep {
             // SAFETY: as in `import`.
             Some(sweep) => unsafe { sweep(instance, count, message) },
             None => SL_FAILED,
@@ -224,6 +229,7 @@ impl Sampler {
             magnetisation: [0.0; 3],
             proposed: 0,
             accepted: 0,
+            spare: [0.0; 8],
         };
         let (function, instance) = (self.table.tallies, self.instance);
         self.ask("tell its totals", |_| match function {
@@ -247,6 +253,7 @@ impl Sampler {
             offset: 0,
             positions: null(),
             data: null(),
+            length: 0,
         };
         let (function, instance) = (self.table.view, self.instance);
         self.ask("show a chain", |message| match function {
@@ -254,7 +261,7 @@ impl Sampler {
             Some(function) => unsafe { function(instance, lane, &mut view, message) },
             None => SL_FAILED,
         })?;
-        Shown::new(view, &self.energy, &self.rule)
+        Shown::new(view, &self.energy, &self.rule, &mut self.placed)
     }
 
     /// Everything that the future of the chains depends on, in a wrapping that names what it belongs to.
@@ -318,7 +325,9 @@ impl Sampler {
             return Err(HostError::Broken { label: self.rule.label.clone() });
         }
         let answer = ask(&self.rule.label, doing, call);
-        self.broken = matches!(answer, Err(HostError::Panicked { .. }));
+        // A sweep that ended early leaves the chains where nobody knows: to save or measure them would look like a result.
+        let unknown = doing == SWEEP && answer.is_err();
+        self.broken = unknown || matches!(answer, Err(HostError::Panicked { .. } | HostError::Cancelled { .. }));
         answer
     }
 }

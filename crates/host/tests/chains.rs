@@ -295,6 +295,10 @@ fn a_rule_that_asks_whether_it_should_stop_is_stopped() {
         let error = sweeping.join().unwrap();
         assert!(matches!(error, HostError::Cancelled { .. }), "{error}");
     });
+    // Nobody knows how far it came: it must not be saved as if it had come to the end.
+    bench.loader.set_cancelled(false);
+    assert!(matches!(chain.save(), Err(HostError::Broken { .. })));
+    assert!(matches!(chain.sweep(1), Err(HostError::Broken { .. })));
 }
 
 /// Bits of a measurement that runs in a parallel loop, and the line that the observable logs.

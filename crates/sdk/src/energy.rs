@@ -102,6 +102,8 @@ impl<'a> Energy<'a> {
 pub struct Custom<'a> {
     pub(crate) raw: &'a spinledger_abi::SlCustom,
     pub(crate) graph: &'a spinledger_abi::SlGraph,
+    pub(crate) states: usize,
+    pub(crate) components: usize,
 }
 
 // SAFETY: what the pointers lead to is immutable: the graph is the host's, and a model is, by the rules of the interface, shared
@@ -128,7 +130,11 @@ impl Custom<'_> {
     /// Where the lengths differ.
     pub fn delta(&self, view: &View<'_>, sites: &[u32], proposals: &[u8], changes: &mut [f64]) -> Result<()> {
         assert!(sites.len() == proposals.len() && sites.len() == changes.len(), "three slices of one length");
-        crate::view::custom_delta(self, view, sites, proposals.as_ptr().cast(), changes)
+        if let Some(state) = proposals.iter().find(|state| usize::from(**state) >= self.states) {
+            return Err(Error::new(format!("state {state} is proposed; there are {}", self.states)));
+        }
+        // SAFETY: one proposal a site; of vector spins, every state was just refused.
+        unsafe { crate::view::custom_delta(self, view, sites, proposals.as_ptr().cast(), changes) }
     }
 
     /// The same for proposed vectors, components innermost.
@@ -140,10 +146,17 @@ impl Custom<'_> {
     /// Where the lengths do not fit.
     pub fn delta_vectors(&self, view: &View<'_>, sites: &[u32], vectors: &[f64], changes: &mut [f64]) -> Result<()> {
         assert!(
-            !sites.is_empty() && vectors.len().is_multiple_of(sites.len()) && sites.len() == changes.len(),
-            "lengths fit"
+            self.components > 0 && vectors.len() == sites.len() * self.components && sites.len() == changes.len(),
+            "a vector of the model's components and a change for each site"
         );
-        crate::view::custom_delta(self, view, sites, vectors.as_ptr().cast(), changes)
+        // SAFETY: one vector of the model's components a site.
+        unsafe { crate::view::custom_delta(self, view, sites, vectors.as_ptr().cast(), changes) }
+    }
+
+    /// The interface's form of a configuration, if it is one of this model on this lattice.
+    pub(crate) fn shown(&self, view: &View<'_>) -> Result<spinledger_abi::SlView> {
+        check(self.states, self.components, self.graph.total as usize, view)?;
+        view.raw()
     }
 }
 
@@ -184,20 +197,7 @@ impl<'a> Problem<'a> {
     /// # Errors
     /// Then.
     pub fn check(&self, view: &View<'_>) -> Result<()> {
-        let (states, components) = (self.energy.states, self.energy.components);
-        let fits = match view {
-            View::Bytes { .. } => states > 0,
-            View::Bits { .. } => states == 2,
-            View::Vectors { components: shown, .. } => components > 0 && *shown == components,
-        };
-        if !fits {
-            return Err(Error::new("the configuration does not hold the model's kind of spin"));
-        }
-        if view.sites() != self.graph.total {
-            let (shown, total) = (view.sites(), self.graph.total);
-            return Err(Error::new(format!("the configuration has {shown} sites, and the lattice {total}")));
-        }
-        Ok(())
+        check(self.energy.states, self.energy.components, self.graph.total, view)
     }
 
     /// All terms but the callbacks.
@@ -222,4 +222,20 @@ impl<'a> Problem<'a> {
             factor_sites: energy.factor_sites,
         }
     }
+}
+
+/// Refuses a configuration of another kind or number of sites.
+fn check(states: usize, components: usize, total: usize, view: &View<'_>) -> Result<()> {
+    let fits = match view {
+        View::Bytes { .. } => states > 0,
+        View::Bits { .. } => states == 2,
+        View::Vectors { components: shown, .. } => components > 0 && *shown == components,
+    };
+    if !fits {
+        return Err(Error::new("the configuration does not hold the model's kind of spin"));
+    }
+    if view.sites() != total {
+        return Err(Error::new(format!("the configuration has {} sites, and the lattice {total}", view.sites())));
+    }
+    Ok(())
 }

@@ -88,10 +88,18 @@ unsafe extern "C" fn run<F: Fn(usize) + Sync>(argument: *mut c_void, tile: usize
     // A panic must not run into the host's threads. Whoever sees what the body left behind sees the panic too.
     if let Err(payload) = catch_unwind(AssertUnwindSafe(|| (loop_.body)(tile))) {
         let mut panic = loop_.panic.lock().unwrap_or_else(PoisonError::into_inner);
-        match &*panic {
-            Some((earlier, _)) if *earlier < tile => std::mem::forget(payload),
-            _ => *panic = Some((tile, payload)),
-        }
+        let later = match panic.take() {
+            Some((earlier, kept)) if earlier < tile => {
+                *panic = Some((earlier, kept));
+                Some(payload)
+            }
+            other => {
+                *panic = Some((tile, payload));
+                other.map(|(_, payload)| payload)
+            }
+        };
+        // Dropping a payload could panic again, here where nothing would catch it.
+        std::mem::forget(later);
     }
 }
 

@@ -37,4 +37,4 @@ pub use spinledger_numerics as numerics;
 pub use traits::{
     ColumnInfo, Lattice, Model, Observable, ObservableInstance, Prepare, Problem, Update, UpdateInstance,
 };
-pub use view::{Spins, Tallies, View};
+pub use view::{PositionList, Positions, Spins, Tallies, View};

@@ -28,7 +28,7 @@ pub enum View<'a> {
         /// Distance between sites.
         stride: usize,
         /// Where the sites are, if not evenly spaced.
-        positions: Option<&'a [u32]>,
+        positions: Option<Positions<'a>>,
     },
     /// One vector a site: component c of site s is `data[s * stride + c * component_stride]`.
     Vectors {
@@ -43,6 +43,45 @@ pub enum View<'a> {
         /// Distance between components.
         component_stride: usize,
     },
+}
+
+/// Where bits are that are not evenly spaced. How far they reach is found once, so that showing them costs nothing.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Positions<'a> {
+    places: &'a [u32],
+    reach: u32,
+}
+
+impl<'a> Positions<'a> {
+    /// From the position of each site. Cost: one pass; for a chain that is shown often keep a [`PositionList`].
+    pub fn new(places: &'a [u32]) -> Self {
+        Positions { places, reach: places.iter().copied().max().unwrap_or(0) }
+    }
+
+    /// The position of each site.
+    pub fn places(&self) -> &'a [u32] {
+        self.places
+    }
+}
+
+/// Positions for good.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct PositionList {
+    places: Vec<u32>,
+    reach: u32,
+}
+
+impl PositionList {
+    /// From the position of each site. Cost: one pass.
+    pub fn new(places: Vec<u32>) -> Self {
+        let reach = Positions::new(&places).reach;
+        PositionList { places, reach }
+    }
+
+    /// To be shown.
+    pub fn positions(&self) -> Positions<'_> {
+        Positions { places: &self.places, reach: self.reach }
+    }
 }
 
 impl<'a> View<'a> {
@@ -77,7 +116,7 @@ impl<'a> View<'a> {
         match self {
             View::Bytes { data, stride, .. } => data[site * stride],
             View::Bits { words, offset, stride, positions, .. } => {
-                let bit = offset + positions.map_or(site * stride, |p| p[site] as usize);
+                let bit = offset + positions.map_or(site * stride, |p| p.places[site] as usize);
                 (words[bit / 64] >> (bit % 64) & 1) as u8
             }
             View::Vectors { .. } => panic!("a vector has no state"),
@@ -95,38 +134,63 @@ impl<'a> View<'a> {
         }
     }
 
-    /// The view in the interface's form.
-    pub(crate) fn raw(&self) -> abi::SlView {
-        let empty = abi::SlView {
+    /// Elements of the data that the numbers reach; None where that is more than can be.
+    fn reach(&self) -> Option<usize> {
+        let Some(last) = self.sites().checked_sub(1) else { return Some(0) };
+        match *self {
+            View::Bytes { stride, .. } => last.checked_mul(stride)?.checked_add(1),
+            View::Bits { offset, stride, positions: None, .. } => {
+                Some(last.checked_mul(stride)?.checked_add(offset)? / 64 + 1)
+            }
+            View::Bits { offset, positions: Some(positions), .. } if positions.places.len() > last => {
+                Some(offset.checked_add(positions.reach as usize)? / 64 + 1)
+            }
+            View::Bits { .. } => None,
+            View::Vectors { components, stride, component_stride, .. } => {
+                let across = components.saturating_sub(1).checked_mul(component_stride)?;
+                last.checked_mul(stride)?.checked_add(across)?.checked_add(1)
+            }
+        }
+    }
+
+    /// The view in the interface's form, whose readers cannot see where the data end.
+    ///
+    /// # Errors
+    /// Where the numbers reach beyond the data.
+    pub(crate) fn raw(&self) -> Result<abi::SlView> {
+        let (kind, data, length): (_, *const c_void, _) = match *self {
+            View::Bytes { data, .. } => (abi::SL_VIEW_BYTES, data.as_ptr().cast(), data.len()),
+            View::Bits { words, .. } => (abi::SL_VIEW_BITS, words.as_ptr().cast(), words.len()),
+            View::Vectors { data, .. } => (abi::SL_VIEW_VECTORS, data.as_ptr().cast(), data.len()),
+        };
+        if self.reach().is_none_or(|reach| reach > length) {
+            let sites = self.sites();
+            return Err(Error::new(format!("a view of {sites} sites reaches beyond its data of {length} elements")));
+        }
+        let plain = abi::SlView {
             size: size_of::<abi::SlView>(),
-            kind: abi::SL_VIEW_BYTES,
+            kind,
             components: 0,
             sites: self.sites(),
             stride: 1,
             component_stride: 0,
             offset: 0,
             positions: std::ptr::null(),
-            data: std::ptr::null(),
+            data,
+            length,
         };
-        match *self {
-            View::Bytes { data, stride, .. } => abi::SlView { stride, data: data.as_ptr().cast(), ..empty },
-            View::Bits { words, offset, stride, positions, .. } => abi::SlView {
-                kind: abi::SL_VIEW_BITS,
+        Ok(match *self {
+            View::Bytes { stride, .. } => abi::SlView { stride, ..plain },
+            View::Bits { offset, stride, positions, .. } => abi::SlView {
                 stride,
                 offset,
-                positions: positions.map_or(std::ptr::null(), <[u32]>::as_ptr),
-                data: words.as_ptr().cast(),
-                ..empty
+                positions: positions.map_or(std::ptr::null(), |p| p.places.as_ptr()),
+                ..plain
             },
-            View::Vectors { components, data, stride, component_stride, .. } => abi::SlView {
-                kind: abi::SL_VIEW_VECTORS,
-                components: components as u32,
-                stride,
-                component_stride,
-                data: data.as_ptr().cast(),
-                ..empty
-            },
-        }
+            View::Vectors { components, stride, component_stride, .. } => {
+                abi::SlView { components: components as u32, stride, component_stride, ..plain }
+            }
+        })
     }
 }
 
@@ -176,6 +240,7 @@ impl Tallies {
             magnetisation: self.magnetisation.unwrap_or([0.0; 3]),
             proposed,
             accepted,
+            spare: [0.0; 8],
         }
     }
 
@@ -192,18 +257,21 @@ impl Tallies {
 /// Calls a custom model's `total`.
 pub(crate) fn custom_total(custom: &Custom<'_>, view: &View<'_>) -> Result<f64> {
     let Some(total) = custom.raw.total else { return Err(Error::new("the model has no total energy")) };
+    let raw = custom.shown(view)?;
     let mut energy = 0.0;
     with_message(|message| {
-        let raw = view.raw();
-        // SAFETY: the host checked the table and keeps model and graph alive while the instance lives; `raw` borrows `view`
-        // for the call only.
+        // SAFETY: the host checked the table and keeps model and graph alive while the instance lives, for which `custom` is borrowed; the
+        // view has the lattice's sites and the model's kind of spin, does not reach beyond its data, and borrows them for the call.
         unsafe { total(custom.raw.model, custom.graph, &raw, &mut energy, message) }
     })?;
     Ok(energy)
 }
 
-/// Calls a custom model's `delta`; lengths were checked by the caller.
-pub(crate) fn custom_delta(
+/// Calls a custom model's `delta`.
+///
+/// # Safety
+/// `proposals` leads to as many states, or vectors of the model's components, as there are sites.
+pub(crate) unsafe fn custom_delta(
     custom: &Custom<'_>,
     view: &View<'_>,
     sites: &[u32],
@@ -211,9 +279,14 @@ pub(crate) fn custom_delta(
     changes: &mut [f64],
 ) -> Result<()> {
     let Some(delta) = custom.raw.delta else { return Err(Error::new("the model has no change of energy")) };
+    assert_eq!(sites.len(), changes.len(), "one change a site");
+    let free = custom.graph.sites;
+    if let Some(site) = sites.iter().find(|site| **site >= free) {
+        return Err(Error::new(format!("a change of energy at site {site} is asked for; {free} sites are free")));
+    }
+    let raw = custom.shown(view)?;
     with_message(|message| {
-        let raw = view.raw();
-        // SAFETY: as in `custom_total`; the three arrays hold `sites.len()` elements each.
+        // SAFETY: as in `custom_total`; sites exist, there is a change for each, and the caller promises the proposals.
         unsafe {
             delta(
                 custom.raw.model,
@@ -238,4 +311,41 @@ fn with_message(call: impl FnOnce(*mut abi::SlMessage) -> i32) -> Result<()> {
     }
     buffer.truncate(message.length.min(1024));
     Err(Error(String::from_utf8_lossy(&buffer).into_owned()))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn said(view: View<'_>) -> String {
+        view.raw().expect_err("a refusal").0
+    }
+
+    /// Safe code can write any numbers into a view; none of them may leave the library.
+    #[test]
+    fn views_do_not_reach_beyond_their_data() {
+        let (bytes, words, doubles) = ([0; 6], [0; 2], [0.0; 6]);
+        let of_bytes = |sites, stride| View::Bytes { sites, data: &bytes, stride };
+        assert!(of_bytes(3, 2).raw().is_ok() && of_bytes(2, 5).raw().is_ok() && of_bytes(0, 9).raw().is_ok());
+        assert!(said(of_bytes(4, 2)).contains("4 sites reaches beyond its data of 6"));
+        said(of_bytes(3, usize::MAX));
+        let of_bits = |sites, offset, stride, positions| View::Bits { sites, words: &words, offset, stride, positions };
+        assert!(of_bits(128, 0, 1, None).raw().is_ok() && of_bits(2, 64, 63, None).raw().is_ok());
+        said(of_bits(128, 1, 1, None));
+        let list = PositionList::new(vec![127, 3]);
+        assert!(of_bits(2, 0, 0, Some(list.positions())).raw().is_ok());
+        said(of_bits(3, 0, 0, Some(list.positions())));
+        said(of_bits(2, 1, 0, Some(list.positions())));
+        said(of_bits(2, usize::MAX, 0, Some(Positions::new(&[1, 2]))));
+        let of_vectors = |sites, components, stride, component_stride| View::Vectors {
+            sites,
+            components,
+            data: &doubles,
+            stride,
+            component_stride,
+        };
+        assert!(of_vectors(2, 3, 3, 1).raw().is_ok() && of_vectors(2, 3, 1, 2).raw().is_ok());
+        said(of_vectors(3, 3, 1, 2));
+        said(of_vectors(2, usize::MAX, 1, 2));
+    }
 }

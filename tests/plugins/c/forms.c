@@ -216,7 +216,8 @@ static int32_t rule_view(void *instance, size_t lane, SlView *view, SlMessage *m
     Chain *chain = instance;
     (void)lane;
     (void)message;
-    SlView shown = { sizeof shown, SL_VIEW_BYTES, 0, chain->graph->total, 1, 0, 0, NULL, chain->states };
+    size_t total = chain->graph->total;
+    SlView shown = { sizeof shown, SL_VIEW_BYTES, 0, total, 1, 0, 0, NULL, chain->states, total };
     *view = shown;
     return SL_OK;
 }

@@ -1,10 +1,22 @@
 //! Tables of update rules and observables.
+//!
+//! # What the host keeps to
+//! Every function here is reached through a table only, by a host that keeps to the rules of `spinledger_abi`: items and instances are those
+//! that `create` and `prepare` of the same table handed out and that were not freed, an instance is used by one call at a time, and structs,
+//! slices and messages are valid for the call. That is the reason behind each block that says so. What a plugin's own safe code says (lanes,
+//! views, columns) is checked or asked for once, and never believed as a length.
+//!
+//! # Why `'static` instances are sound
+//! An item's `prepare` is written for every lifetime, so that an author can keep nothing of lattice and Hamiltonian but in the instance, whose
+//! type has the lifetime in it. The border picks `'static` for it, since no shorter one can be written down in a table, and the host keeps rule,
+//! lattice, Hamiltonian and services until it has released the instance. An instance is nowhere handed to the author's code as `'static`: the
+//! traits' functions are written for every lifetime too.
 
 use super::items::{borrow, create, destroy, hand_out};
-use super::raw::{energy, graph, sized, slice, view};
+use super::raw::{energy, graph, host, sized, slice, view};
 use super::status::{guard, heed};
 use crate::{
-    Error, Host, Observable, ObservableInstance, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance,
+    ColumnInfo, Error, Observable, ObservableInstance, Prepare, Problem, Result, Spins, Tallies, Update, UpdateInstance,
 };
 use spinledger_abi as abi;
 use spinledger_numerics::random::StreamKey;
@@ -19,10 +31,17 @@ struct Chains<I> {
     components: usize,
 }
 
-/// An instance of an observable with the count of numbers that it writes.
+/// An instance of an observable with its columns, asked for once: room for numbers is made by what the host was told.
 struct Measured<I> {
     instance: I,
-    width: usize,
+    columns: Vec<ColumnInfo>,
+}
+
+impl<I> Measured<I> {
+    /// Numbers that it writes.
+    fn width(&self) -> usize {
+        self.columns.iter().map(|column| column.width).sum()
+    }
 }
 
 /// An instance that the host hands back.
@@ -97,8 +116,7 @@ impl<U: Update> Updates<U> {
         instance: *mut *mut c_void,
         message: *mut abi::SlMessage,
     ) -> i32 {
-        // SAFETY: the host keeps to the interface; rule, graph, energy and host outlive the instance, so that they may be
-        // borrowed for as long as it lives, which the compiler can only be told as `'static`.
+        // SAFETY: the host keeps to the interface; rule, graph, energy and services outlive the instance (see the head of this file).
         unsafe {
             guard(message, || {
                 let raw: &'static abi::SlPrepare = sized(prepare, "preparation")?;
@@ -106,7 +124,7 @@ impl<U: Update> Updates<U> {
                 let problem = Problem { graph: graph(raw.graph)?, energy: energy(raw.graph, raw.energy)? };
                 let (sites, components) = (problem.graph.total, problem.energy.components);
                 let prepare = Prepare {
-                    host: Host { raw: raw.host.as_ref() },
+                    host: host(raw.host)?,
                     problem,
                     inverse_temperature: raw.inverse_temperature,
                     lane_keys: slice(raw.lane_keys, raw.lanes).iter().map(key).collect(),
@@ -174,7 +192,7 @@ impl<U: Update> Updates<U> {
         // SAFETY: the host keeps to the interface: it uses the view until its next call only, so the instance is not changed meanwhile.
         unsafe {
             guard(message, || {
-                let view = Self::chains_mut(instance, lane)?.instance.view(lane).raw();
+                let view = Self::chains_mut(instance, lane)?.instance.view(lane).raw()?;
                 match shown.as_mut() {
                     Some(place) => *place = view,
                     None => return Err(Error::new("the host gave no place for a view").into()),
@@ -267,7 +285,7 @@ impl<O: Observable> Observables<O> {
 
     unsafe extern "C" fn prepare(
         observable: *const c_void,
-        host: *const abi::SlHost,
+        services: *const abi::SlHost,
         raw: *const abi::SlGraph,
         hamiltonian: *const abi::SlEnergy,
         instance: *mut *mut c_void,
@@ -277,9 +295,9 @@ impl<O: Observable> Observables<O> {
         unsafe {
             guard(message, || {
                 let problem = Problem { graph: graph(raw)?, energy: energy(raw, hamiltonian)? };
-                let made = borrow::<'static, O>(observable)?.prepare(Host { raw: host.as_ref() }, problem)?;
-                let width = made.columns().iter().map(|column| column.width).sum();
-                hand_out(Box::new(Measured { instance: made, width }), instance)
+                let made = borrow::<'static, O>(observable)?.prepare(host(services)?, problem)?;
+                let columns = made.columns();
+                hand_out(Box::new(Measured { instance: made, columns }), instance)
             })
         }
     }
@@ -295,7 +313,7 @@ impl<O: Observable> Observables<O> {
                 let sink = sized(sink, "sink for columns")?;
                 let Some(take) = sink.column else { return Err(Error::new("the host takes no columns").into()) };
                 let text = |text: &str| abi::SlText { data: text.as_ptr(), length: text.len() };
-                for column in borrow::<Measured<O::Instance<'static>>>(instance)?.instance.columns() {
+                for column in &borrow::<Measured<O::Instance<'static>>>(instance)?.columns {
                     let flags = if column.invariant { abi::SL_COLUMN_INVARIANT } else { 0 };
                     heed(take(sink.context, text(&column.name), text(&column.unit), flags, column.width as u32))?;
                 }
@@ -321,7 +339,7 @@ impl<O: Observable> Observables<O> {
                 }
                 let shown = (0..chains).map(|c| view(views.add(c))).collect::<Result<Vec<_>>>()?;
                 let tallies: Vec<Tallies> = slice(tallies, chains).iter().map(Tallies::from_raw).collect();
-                let values = std::slice::from_raw_parts_mut(values, measured.width);
+                let values = std::slice::from_raw_parts_mut(values, measured.width());
                 Ok(measured.instance.measure(&shown, &tallies, values)?)
             })
         }

@@ -1,4 +1,4 @@
-//! Tables of lattices and models.
+//! Tables of lattices and models. What the host keeps to is at the head of `instances.rs`.
 
 use super::raw::{graph, params, sized, slice, view};
 use super::replay::{send_lattice, send_model};

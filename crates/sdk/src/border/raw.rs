@@ -1,6 +1,7 @@
 //! Slices, parameter trees and views from what the host points at.
 
 use crate::energy::{Custom, Energy, FactorTable};
+use crate::view::Positions;
 use crate::{Error, Graph, Params, Result, View};
 use spinledger_abi as abi;
 
@@ -156,7 +157,7 @@ pub(crate) unsafe fn energy<'a>(graph: *const abi::SlGraph, raw: *const abi::SlE
         let custom = if raw.custom.is_null() {
             None
         } else {
-            Some(Custom { raw: sized(raw.custom, "table of callbacks")?, graph })
+            Some(Custom { raw: sized(raw.custom, "table of callbacks")?, graph, states: q, components: n })
         };
         Ok(Energy {
             states: q,
@@ -193,46 +194,44 @@ pub(crate) unsafe fn energy<'a>(graph: *const abi::SlGraph, raw: *const abi::SlE
     }
 }
 
-/// A configuration as its owner shows it.
+/// The host's services; none where it offers none.
 ///
 /// # Safety
-/// `raw` is null or a view as the interface describes it, alive and unchanged for `'a`.
+/// `raw` is null or a table as the interface describes it, alive for `'a`.
+pub(super) unsafe fn host<'a>(raw: *const abi::SlHost) -> Result<crate::Host<'a>> {
+    if raw.is_null() {
+        return Ok(crate::Host::NONE);
+    }
+    // SAFETY: passed on.
+    Ok(crate::Host { raw: Some(unsafe { sized(raw, "table of services") }?) })
+}
+
+/// A configuration as its owner shows it. Reads beyond its data panic, whatever its numbers are.
+///
+/// # Safety
+/// `raw` is null, or a view whose data and positions live and do not change for `'a`.
 pub(crate) unsafe fn view<'a>(raw: *const abi::SlView) -> Result<View<'a>> {
-    // SAFETY: in this whole function: lengths end with the last element that the view's own numbers reach.
-    unsafe {
-        let raw: &abi::SlView = sized(raw, "view")?;
-        let sites = raw.sites;
-        let last = sites.saturating_sub(1) * raw.stride;
-        match raw.kind {
-            abi::SL_VIEW_BYTES => Ok(View::Bytes {
-                sites,
-                data: slice(raw.data.cast(), if sites == 0 { 0 } else { last + 1 }),
-                stride: raw.stride,
-            }),
-            abi::SL_VIEW_BITS => {
-                let positions = (!raw.positions.is_null()).then(|| slice(raw.positions, sites));
-                let bit = positions.map_or(last, |p| p.iter().max().map_or(0, |&p| p as usize));
-                let words = if sites == 0 { 0 } else { (raw.offset + bit) / 64 + 1 };
-                Ok(View::Bits {
-                    sites,
-                    words: slice(raw.data.cast(), words),
-                    offset: raw.offset,
-                    stride: raw.stride,
-                    positions,
-                })
-            }
-            abi::SL_VIEW_VECTORS => {
-                let components = raw.components as usize;
-                let count = if sites == 0 { 0 } else { last + components.saturating_sub(1) * raw.component_stride + 1 };
-                Ok(View::Vectors {
-                    sites,
-                    components,
-                    data: slice(raw.data.cast(), count),
-                    stride: raw.stride,
-                    component_stride: raw.component_stride,
-                })
-            }
-            other => Err(Error::new(format!("a view of unknown kind {other}"))),
+    // SAFETY: passed on.
+    let raw: &abi::SlView = unsafe { sized(raw, "view") }?;
+    let (sites, stride) = (raw.sites, raw.stride);
+    match raw.kind {
+        // SAFETY: data are as many elements as the view says; so below, and as many positions as sites.
+        abi::SL_VIEW_BYTES => Ok(View::Bytes { sites, data: unsafe { slice(raw.data.cast(), raw.length) }, stride }),
+        abi::SL_VIEW_BITS => {
+            // SAFETY: as above.
+            let words = unsafe { slice(raw.data.cast(), raw.length) };
+            // SAFETY: as above.
+            let positions = (!raw.positions.is_null()).then(|| Positions::new(unsafe { slice(raw.positions, sites) }));
+            Ok(View::Bits { sites, words, offset: raw.offset, stride, positions })
         }
+        abi::SL_VIEW_VECTORS => Ok(View::Vectors {
+            sites,
+            components: raw.components as usize,
+            // SAFETY: as above.
+            data: unsafe { slice(raw.data.cast(), raw.length) },
+            stride,
+            component_stride: raw.component_stride,
+        }),
+        other => Err(Error::new(format!("a view of unknown kind {other}"))),
     }
 }
