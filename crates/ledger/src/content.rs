@@ -71,11 +71,17 @@ pub fn combine(label: &str, parts: &[ContentHash]) -> ContentHash {
     ContentHash(hasher.finalize().into())
 }
 
-/// The content of an entry: its tables by name, in order.
-pub fn content_of_entry<'a>(tables: impl ExactSizeIterator<Item = (&'a str, ContentHash)>) -> ContentHash {
+/// The content of a file that is no table: a hash of its bytes.
+pub(crate) fn content_of_file(bytes: &[u8]) -> ContentHash {
+    ContentHash(blake3::hash(bytes).into())
+}
+
+/// The content of an entry: its tables and then its other files by name, in order.
+pub fn content_of_entry<'a>(parts: impl Iterator<Item = (&'a str, ContentHash)>) -> ContentHash {
+    let parts: Vec<_> = parts.collect();
     let mut hasher = blake3::Hasher::new_derive_key(ENTRY_CONTEXT);
-    length(&mut hasher, tables.len());
-    for (name, content) in tables {
+    length(&mut hasher, parts.len());
+    for (name, content) in parts {
         text(&mut hasher, name);
         hasher.update(&content.0);
     }

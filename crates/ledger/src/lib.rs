@@ -49,7 +49,7 @@ pub use error::{LedgerError, WriteError};
 pub use index::{ChainPlace, Index, Line};
 pub use ledger::Ledger;
 pub use publish::{Draft, Payload, Published};
-pub use record::{Input, Processor, Program, Provenance, Record, Streams, TableRecord, now};
+pub use record::{Input, OtherFile, Processor, Program, Provenance, Record, Streams, TableRecord, now};
 pub use state::SavedState;
 pub use tables::assemble::{Assembled, Constant, Piece, assemble};
 pub use tables::block::{BLOCK_ROWS, BlockData, ColumnData, block_columns, read_block, write_block};

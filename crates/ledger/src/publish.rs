@@ -1,10 +1,10 @@
 //! Publishing: an entry appears complete, once, and is never changed.
 
-use crate::content::{content_of_block, content_of_entry, content_of_table};
+use crate::content::{content_of_block, content_of_entry, content_of_file, content_of_table};
 use crate::error::LedgerError;
 use crate::index::ChainPlace;
 use crate::ledger::Ledger;
-use crate::record::{Provenance, RECORD_FORMAT, Record, TableRecord};
+use crate::record::{OtherFile, Provenance, RECORD_FORMAT, Record, TableRecord};
 use crate::tables::block::{BlockData, write_block};
 use crate::tables::table::write_table;
 use spinledger_terms::{ContentHash, Key, Table};
@@ -19,8 +19,10 @@ pub struct Draft {
     pub preimage: String,
     /// What it is: `block`, `series`, `averages` ...
     pub kind: String,
-    /// Tables by name, in order; none makes a virtual entry.
+    /// Tables by name, in order; no tables and no files make a virtual entry.
     pub tables: Vec<(String, Payload)>,
+    /// Other files, figures and pages, by name with extension, in order.
+    pub files: Vec<(String, Vec<u8>)>,
     /// The content of an entry without tables; of others it is computed, and this is not looked at.
     pub content: Option<ContentHash>,
     /// Its place in a chain, for blocks.
@@ -57,6 +59,7 @@ impl Draft {
             preimage: preimage.to_owned(),
             kind: kind.to_owned(),
             tables: Vec::new(),
+            files: Vec::new(),
             content: None,
             chain: None,
             provenance,
@@ -67,6 +70,13 @@ impl Draft {
     #[must_use]
     pub fn table(mut self, name: &str, payload: Payload) -> Self {
         self.tables.push((name.to_owned(), payload));
+        self
+    }
+
+    /// Adds a file; its name is a table's name, a dot and an extension.
+    #[must_use]
+    pub fn file(mut self, name: &str, bytes: Vec<u8>) -> Self {
+        self.files.push((name.to_owned(), bytes));
         self
     }
 
@@ -129,9 +139,20 @@ impl Ledger {
             }
             contents.push(payload.content());
         }
+        for (place, (name, _)) in draft.files.iter().enumerate() {
+            let parts = name.split_once('.').filter(|(_, extension)| *extension != "parquet" && *extension != "json");
+            let sound = parts.is_some_and(|(stem, extension)| is_table_name(stem) && is_table_name(extension));
+            if !sound || draft.files[..place].iter().any(|(other, _)| other == name) {
+                return Err(LedgerError::Name(name.clone()));
+            }
+        }
         let content = match draft.content {
-            Some(content) if draft.tables.is_empty() => content,
-            _ => content_of_entry(draft.tables.iter().map(|(name, _)| name.as_str()).zip(contents.iter().copied())),
+            Some(content) if draft.tables.is_empty() && draft.files.is_empty() => content,
+            _ => {
+                let tables = draft.tables.iter().map(|(name, _)| name.as_str()).zip(contents.iter().copied());
+                let files = draft.files.iter().map(|(name, bytes)| (name.as_str(), content_of_file(bytes)));
+                content_of_entry(tables.chain(files))
+            }
         };
         let mut published = Published { fresh: false, content, set_aside: None };
         if self.compare(&draft.key, &mut published)? {
@@ -197,8 +218,14 @@ impl Ledger {
             });
             files.push((format!("{name}.parquet"), bytes));
         }
+        let mut others = Vec::with_capacity(draft.files.len());
+        for (name, bytes) in draft.files {
+            others.push(OtherFile { content: content_of_file(&bytes), size: bytes.len() as u64, name: name.clone() });
+            files.push((name, bytes));
+        }
         let Draft { key, preimage, kind, chain, provenance, .. } = draft;
-        let record = Record { format: RECORD_FORMAT, key, kind, content, tables, chain, provenance, preimage };
+        let record =
+            Record { format: RECORD_FORMAT, key, kind, content, tables, files: others, chain, provenance, preimage };
         files.push(("record.json".to_owned(), record.text().into_bytes()));
         Ok((record, files))
     }

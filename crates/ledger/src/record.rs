@@ -20,6 +20,9 @@ pub struct Record {
     pub content: ContentHash,
     /// The tables, in order; none in a virtual entry.
     pub tables: Vec<TableRecord>,
+    /// Other files, figures and pages, in order.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub files: Vec<OtherFile>,
     /// Its place in a chain, for blocks.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub chain: Option<ChainPlace>,
@@ -41,6 +44,17 @@ pub struct TableRecord {
     /// BLAKE3 of the file.
     pub bytes: ContentHash,
     /// Length of the file in bytes.
+    pub size: u64,
+}
+
+/// A file of an entry that is no table.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct OtherFile {
+    /// Its name, with extension.
+    pub name: String,
+    /// BLAKE3 of its bytes: of such a file content and bytes are one.
+    pub content: ContentHash,
+    /// Its length in bytes.
     pub size: u64,
 }
 
@@ -167,7 +181,7 @@ impl Record {
             updates: self.provenance.updates,
             // Other entries' facts are read with their records: lines are kept short, since there is one for every block.
             note: match &self.provenance.facts {
-                facts if self.tables.is_empty() && *facts != Value::Null => facts.canonical(),
+                facts if self.tables.is_empty() && self.files.is_empty() && *facts != Value::Null => facts.canonical(),
                 _ => String::new(),
             },
         }
@@ -205,6 +219,7 @@ mod tests {
             kind: "block".into(),
             content: ContentHash([2; 32]),
             tables: vec![],
+            files: vec![],
             chain: Some(ChainPlace { chain: Key([3; 32]), number: 1, block: 2, rows: 3 }),
             provenance: Provenance {
                 parameters: Value::map([("temperature", Value::Number(2.269185314213022))]),

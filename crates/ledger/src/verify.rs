@@ -1,6 +1,6 @@
 //! Whether an entry still is what its record says.
 
-use crate::content::{content_of_entry, content_of_table};
+use crate::content::{content_of_entry, content_of_file, content_of_table};
 use crate::error::LedgerError;
 use crate::ledger::Ledger;
 use crate::record::Record;
@@ -43,8 +43,21 @@ impl Ledger {
                 return Err(LedgerError::damaged(&path, "its values are not those that were recorded"));
             }
         }
-        let whole = content_of_entry(record.tables.iter().map(|t| (t.name.as_str(), t.content)));
-        if !record.tables.is_empty() && whole != record.content {
+        for file in &record.files {
+            let path = self.entry(key).join(&file.name);
+            let bytes = match fs::read(&path) {
+                Ok(bytes) => bytes,
+                Err(error) if error.kind() == ErrorKind::NotFound => return Err(LedgerError::Absent { path }),
+                Err(error) => return Err(LedgerError::read("read", &path)(error)),
+            };
+            if bytes.len() as u64 != file.size || content_of_file(&bytes) != file.content {
+                return Err(LedgerError::damaged(&path, "its bytes are not those that were recorded"));
+            }
+        }
+        let tables = record.tables.iter().map(|t| (t.name.as_str(), t.content));
+        let whole = content_of_entry(tables.chain(record.files.iter().map(|f| (f.name.as_str(), f.content))));
+        let parts = record.tables.len() + record.files.len();
+        if parts > 0 && whole != record.content {
             return Err(LedgerError::damaged(&path, "its content is not that of its tables"));
         }
         Ok(record)

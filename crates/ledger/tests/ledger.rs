@@ -250,3 +250,27 @@ fn texts_and_names() {
         assert_eq!(ledger.find(prefix).unwrap(), []);
     }
 }
+
+/// Figures and pages are parts of an entry like tables: hashed, published once, damage noticed; names that could be mistaken are refused.
+#[test]
+fn entries_hold_other_files() {
+    let folder = tempfile::tempdir().unwrap();
+    let ledger = Ledger::open(folder.path()).unwrap();
+    let draft =
+        |bytes: &str| Draft::new("{\"figure\":1}", "chart", Provenance::default()).file("main.svg", bytes.into());
+    let first = ledger.publish(draft("<svg/>")).unwrap();
+    assert!(first.fresh && !ledger.publish(draft("<svg/>")).unwrap().fresh);
+    assert!(matches!(ledger.publish(draft("<svg></svg>")), Err(LedgerError::Differs { .. })));
+    let key = Key::of("{\"figure\":1}");
+    let record = ledger.verify(&key).unwrap();
+    assert_eq!(
+        (record.files[0].name.as_str(), record.files[0].size, record.line().note),
+        ("main.svg", 6, String::new())
+    );
+    std::fs::write(ledger.entry(&key).join("main.svg"), "<svg?>").unwrap();
+    assert!(matches!(ledger.verify(&key), Err(LedgerError::Damaged { .. })));
+    for name in ["main", "main.parquet", "record.json", "../x.svg", "a.b.svg", ".svg"] {
+        let draft = Draft::new("{\"figure\":2}", "chart", Provenance::default()).file(name, vec![1]);
+        assert!(matches!(ledger.publish(draft), Err(LedgerError::Name(_))), "{name}");
+    }
+}
