@@ -5,7 +5,9 @@
 //! - *Drift* (after Geweke 1992, in Bayesian Statistics 4): the mean of the first fifth of each chain is compared with
 //!   that of its last half, and the same for the average of all chains, which sees a common drift too small for any one
 //!   of them. Errors include the autocorrelation time, which is taken from the last halves only, each about its own
-//!   mean: a drift would otherwise lengthen the time and excuse itself.
+//!   mean: a drift would otherwise lengthen the time and excuse itself. Values are replaced by normal scores of their ranks first, as in
+//!   R-hat: the mean of a short piece of a skewed series (rare excursions at low temperature) is far from normal, and failed ten times more
+//!   often than promised. The limit is Student's for as many degrees of freedom as the error was estimated from.
 //! - *Spread*: rank-normalised split R-hat at most 1.05. Vehtari et al. 2021 recommend 1.01 for chains that are to be
 //!   run until it is met. Here the lengths are given, halves with only 20 independent measurements have 1.02
 //!   to 1.04 though nothing is wrong, and their large error is already in the error bar: 1.01 would flag short sound
@@ -18,7 +20,7 @@ use spinledger_numerics::special::normal_quantile;
 use spinledger_numerics::sum::{mean, sum_by};
 
 use crate::autocorrelation::{AutocorrelationParams, autocorrelation};
-use crate::rhat::rhat;
+use crate::rhat::{MOST_VALUES, rhat};
 
 /// Thresholds of [`equilibration`].
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -94,9 +96,11 @@ impl EquilibrationInfo {
 pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> EquilibrationInfo {
     let spread = rhat(chains);
     let short = |effective: f64| EquilibrationInfo { verdict: Verdict::TooShort { effective }, spread, deviation: 0.0 };
-    if chains.is_empty() || chains.iter().any(|chain| chain.len() < 20) {
+    if chains.is_empty() || chains.iter().any(|chain| chain.len() < 20 || !chain.iter().all(|v| v.is_finite())) {
         return short(0.0);
     }
+    let scored = scores(chains);
+    let chains: Vec<&[f64]> = scored.iter().map(Vec::as_slice).collect();
     let early: Vec<&[f64]> = chains.iter().map(|chain| &chain[..chain.len() / 5]).collect();
     let late: Vec<&[f64]> = chains.iter().map(|chain| &chain[chain.len() - chain.len() / 2..]).collect();
     // Each last half about its own mean.
@@ -125,11 +129,12 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
         .map(|(early, late)| variance * (1.0 / early.len() as f64 + 1.0 / late.len() as f64))
         .collect();
     let comparisons = if chains.len() > 1 { chains.len() + 1 } else { 1 };
-    let limit = -normal_quantile(0.5 * params.false_alarm / comparisons as f64);
-    let scale = late.iter().flat_map(|part| part.iter()).fold(0.0f64, |most, value| most.max(value.abs()));
+    // The relative variance of the error squared is 2 (2 W + 1)/N (Wolff 2004 eq. 42), that of chi^2 over its degrees 2/degrees.
+    let degrees = found.count as f64 / (2 * found.window + 1) as f64;
+    let limit = student(-normal_quantile(0.5 * params.false_alarm / comparisons as f64), degrees);
     let in_errors = |difference: f64, variance: f64| {
-        // Differences of rounding size are none, in particular when nothing fluctuates.
-        if difference.abs() <= 1e-13 * scale { 0.0 } else { difference / variance.sqrt() }
+        // Scores are of order 1; differences of rounding size are none, in particular when nothing fluctuates.
+        if difference.abs() <= 1e-12 { 0.0 } else { difference / variance.sqrt() }
     };
     let count = chains.len();
     let pooled = in_errors(
@@ -152,4 +157,60 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
         }
     };
     EquilibrationInfo { verdict, spread, deviation: worst.1 }
+}
+
+/// The values as normal scores of their ranks among all of them; equal values have equal scores. Zeros where nothing but rounding differs.
+///
+/// Ranks are taken in at most 2^17 values, every k-th of each chain, which moves a score by far less than its spread.
+fn scores(chains: &[&[f64]]) -> Vec<Vec<f64>> {
+    let every = chains.iter().map(|chain| chain.len()).sum::<usize>().div_ceil(MOST_VALUES).max(1);
+    let mut sorted: Vec<f64> = chains.iter().flat_map(|chain| chain.iter().step_by(every).copied()).collect();
+    sorted.sort_unstable_by(f64::total_cmp);
+    let all = || chains.iter().flat_map(|chain| chain.iter().copied());
+    let (least, most) = (all().fold(f64::INFINITY, f64::min), all().fold(f64::NEG_INFINITY, f64::max));
+    if most - least <= 1e-13 * least.abs().max(most.abs()) {
+        return chains.iter().map(|chain| vec![0.0; chain.len()]).collect();
+    }
+    let count = sorted.len();
+    let table: Vec<f64> =
+        (0..=2 * count).map(|place| normal_quantile((place + 1) as f64 / (2 * (count + 1)) as f64)).collect();
+    let score = |value: &f64| {
+        let below = sorted.partition_point(|other| other < value);
+        let upto = below + sorted[below..].partition_point(|other| other <= value);
+        table[below + upto]
+    };
+    chains.iter().map(|chain| chain.iter().map(score).collect()).collect()
+}
+
+/// Student's quantile where the normal one is z (Cornish-Fisher expansion: Abramowitz & Stegun 26.7.5), for 5 degrees and more.
+fn student(z: f64, degrees: f64) -> f64 {
+    let degrees = degrees.max(5.0);
+    let (square, cube) = (z * z, z * z * z);
+    let first = 0.25 * (cube + z);
+    let second = (5.0 * cube * square + 16.0 * cube + 3.0 * z) / 96.0;
+    let third = (3.0 * cube * square * square + 19.0 * cube * square + 17.0 * cube - 15.0 * z) / 384.0;
+    z + (first + (second + third / degrees) / degrees) / degrees
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn students_quantiles_are_those_of_tables() {
+        // Two-sided 1e-3: z = 3.2905; t(10) = 4.5869, t(30) = 3.6460, t(120) = 3.3735 (any table of Student's distribution).
+        let z = -normal_quantile(5e-4);
+        for (degrees, expected, within) in [(10.0, 4.5869, 0.02), (30.0, 3.6460, 0.001), (120.0, 3.3735, 1e-4)] {
+            assert!((student(z, degrees) - expected).abs() < within, "{degrees} {}", student(z, degrees));
+        }
+    }
+
+    #[test]
+    fn scores_keep_order_and_ties_and_ignore_rounding() {
+        let scored = scores(&[&[3.0, 1.0, 2.0], &[2.0, 5.0]]);
+        assert!(scored[0][1] < scored[0][2] && scored[0][2] < scored[0][0] && scored[0][0] < scored[1][1]);
+        assert_eq!(scored[0][2], scored[1][0]);
+        assert!((scored[0][1] + scored[1][1]).abs() < 1e-12);
+        assert_eq!(scores(&[&[0.1 + 0.2, 0.3]]), [[0.0, 0.0]]);
+    }
 }

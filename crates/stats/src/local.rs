@@ -3,15 +3,25 @@
 //! No single polynomial is right for a curve, and which window and degree are chosen by eye changes the answer. All
 //! windows around the place of interest and all degrees up to the highest are fitted and averaged with weights
 //! exp(-(chi^2 + 2 parameters + 2 points left out)/2) (Jay & Neil 2021 Phys. Rev. D 103 114502; Neil & Sitison 2022),
-//! which prefers few parameters and many points as long as chi^2 allows them. The average is linear in the
-//! data at given weights, so that replicates are fitted by one product, and the disagreement between the models is
+//! which prefers few parameters and many points as long as chi^2 allows them. The disagreement between the models is
 //! reported as an error of its own.
+//!
+//! Replicates of the data are close to the data, so that their polynomial follows to first order, with one product. That
+//! includes how the weights answer to the data: dw/dy = -w (dchi^2/dy - mean of it)/2, and dchi^2/dy_j = 2 r_j/sigma_j^2 for
+//! residuals r at the minimum. With weights held fixed errors come out too small by up to a third where several models compete.
+//!
+//! Where no polynomial fits (few points, far apart and very precise) those through the nearest 3, 4 ... points, which pass any
+//! test, join the average: what they disagree about is then the error.
 
 use spinledger_numerics::elementary::exp;
+use spinledger_numerics::special::chi_squared_p;
 use thiserror::Error;
 
 use crate::fit::{Errors, FitError, linear_map};
 use crate::matrix::{Matrix, dot};
+
+/// No polynomial fits where all have less probability than this.
+const LEAST_P: f64 = 0.01;
 
 /// How [`local`] works.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -39,7 +49,9 @@ pub struct Local {
     pub centre: f64,
     /// Length that makes u of order 1 over the points used.
     pub scale: f64,
-    /// Row k takes the data to the coefficient of u^k.
+    /// Coefficient of each power of u for the data it was made from.
+    pub base: Vec<f64>,
+    /// Row k takes a change of the data to the change of the coefficient of u^k, to first order.
     pub map: Matrix,
     /// Standard deviation of the value at the centre between the models that were averaged, beyond what the errors of
     /// the data explain.
@@ -69,10 +81,15 @@ pub enum LocalError {
 }
 
 impl Local {
-    /// The coefficients for these data.
+    /// The coefficients for data that differ from those it was made from by this much.
+    ///
+    /// # Panics
+    /// If there is not one change for each datum.
     #[must_use]
-    pub fn coefficients(&self, y: &[f64]) -> Vec<f64> {
-        self.map.times(y)
+    pub fn coefficients(&self, change: &[f64]) -> Vec<f64> {
+        let mut coefficients = self.map.times(change);
+        coefficients.iter_mut().zip(&self.base).for_each(|(value, base)| *value += base);
+        coefficients
     }
 
     /// u of a place.
@@ -117,55 +134,61 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
     // The interval that holds the centre, or the end nearest to it, belongs to every window.
     let right = x[first..last].iter().position(|place| *place >= centre).map_or(last - 1, |index| first + index);
     let right = right.clamp(first + 1, last - 1);
-    let degrees = if params.smooth { last - first - 1..=last - first - 1 } else { 1..=params.most_degree.max(1) };
-    // A polynomial through as many points as it has coefficients fits whatever it is: a straight line through two
-    // points would weigh as much as a cubic through four. Only allowed where there is nothing better.
-    let interpolate = params.smooth || last - first < 4;
-    let mut models: Vec<Model> = Vec::new();
-    let mut failure = FitError::TooFew { data: points, parameters: 2 };
-    for degree in degrees {
-        for start in first..right {
-            for end in right + 1..=last {
-                let untested = end - start == degree + 1;
-                if end - start < degree + 1
-                    || (untested && !interpolate)
-                    || (params.smooth && end - start < last - first)
-                {
-                    continue;
-                }
-                let design =
-                    Matrix::from_fn(end - start, degree + 1, |row, k| power((x[start + row] - centre) / scale, k));
-                match Model::fit(&design, &y[start..end], &errors[start..end], start, last - first) {
-                    Ok(model) => models.push(model),
-                    Err(error) => failure = error,
-                }
+    let mut models =
+        Models { x, y, errors: &errors, centre, scale, range: (first, last), found: Vec::new(), failure: None };
+    if params.smooth || last - first < 4 {
+        // Nothing can be tested, or nothing needs to be.
+        let least = if params.smooth { last - first - 1 } else { 1 };
+        for degree in least..=(last - first - 1).min(params.most_degree.max(1)) {
+            models.windows(right, |points| points >= degree + 1 && (!params.smooth || points == last - first), degree);
+        }
+    } else {
+        // A polynomial through as many points as it has coefficients fits whatever it is: a straight line through two
+        // points would weigh as much as a cubic through four.
+        for degree in 1..=params.most_degree.max(1) {
+            models.windows(right, |points| points > degree + 1, degree);
+        }
+        let fits = |model: &Model| chi_squared_p(model.chi_squared, model.degrees) >= LEAST_P;
+        if !models.found.iter().any(fits) {
+            for degree in 2..=params.most_degree.min(last - first - 1) {
+                let (start, end) = window_around(x, centre, degree + 1);
+                models.add(start, end, degree);
             }
         }
     }
+    let Models { found: models, failure, .. } = models;
     let Some(best) = models.iter().min_by(|a, b| a.criterion.total_cmp(&b.criterion)) else {
-        return Err(failure.into());
+        return Err(failure.unwrap_or(FitError::TooFew { data: points, parameters: 2 }).into());
     };
     let weights: Vec<f64> = models.iter().map(|model| exp(-0.5 * (model.criterion - best.criterion))).collect();
     let total = spinledger_numerics::sum::sum(&weights);
     let most = models.iter().map(|model| model.map.rows()).max().unwrap_or(0);
-    let mut map = Matrix::zeros(most, points);
+    let mut base = vec![0.0; most];
+    for (model, weight) in models.iter().zip(&weights) {
+        base.iter_mut().zip(&model.coefficients).for_each(|(sum, own)| *sum += weight / total * own);
+    }
+    // `average` at fixed weights, `map` with what the weights do.
+    let (mut average, mut map) = (vec![0.0; points], Matrix::zeros(most, points));
     for (model, weight) in models.iter().zip(&weights) {
         let weight = weight / total;
-        for k in 0..model.map.rows() {
-            for datum in 0..model.map.columns() {
-                map[(k, model.start + datum)] += weight * model.map[(k, datum)];
+        for datum in 0..model.map.columns() {
+            let at = model.start + datum;
+            average[at] += weight * model.map[(0, datum)];
+            for k in 0..most {
+                let own = model.coefficients.get(k).copied().unwrap_or(0.0);
+                let direct = if k < model.map.rows() { model.map[(k, datum)] } else { 0.0 };
+                map[(k, at)] += weight * (direct - (own - base[k]) * model.pulls[datum] / errors[at]);
             }
         }
     }
     // Models differ because the data fluctuate, too. That part is in the errors of the data already and is taken off.
-    let average = dot(map.row(0), y);
     let mut square = 0.0;
     for (model, weight) in models.iter().zip(&weights) {
-        let difference = model.value - average;
+        let difference = model.coefficients[0] - base[0];
         let mut expected = 0.0;
         for datum in 0..points {
             let used = datum.checked_sub(model.start).filter(|index| *index < model.map.columns());
-            let pull = (used.map_or(0.0, |index| model.map[(0, index)]) - map[(0, datum)]) * errors[datum];
+            let pull = (used.map_or(0.0, |index| model.map[(0, index)]) - average[datum]) * errors[datum];
             expected += pull * pull;
         }
         square += weight / total * (difference * difference - expected);
@@ -173,6 +196,7 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
     Ok(Local {
         centre,
         scale,
+        base,
         map,
         model_error: square.max(0.0).sqrt(),
         chi_squared: if params.smooth { 0.0 } else { best.chi_squared },
@@ -183,24 +207,59 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
 struct Model {
     start: usize,
     map: Matrix,
-    value: f64,
+    coefficients: Vec<f64>,
+    /// Residuals over errors.
+    pulls: Vec<f64>,
     chi_squared: f64,
     degrees: usize,
     criterion: f64,
 }
 
-impl Model {
-    fn fit(design: &Matrix, y: &[f64], errors: &[f64], start: usize, points: usize) -> Result<Self, FitError> {
-        let map = linear_map(design, Errors::Independent(errors))?;
-        let coefficients = map.times(y);
-        let mut chi_squared = 0.0;
-        for (row, (y, error)) in y.iter().zip(errors).enumerate() {
-            let left = (y - dot(design.row(row), &coefficients)) / error;
-            chi_squared += left * left;
+/// Models in the making.
+struct Models<'a> {
+    x: &'a [f64],
+    y: &'a [f64],
+    errors: &'a [f64],
+    centre: f64,
+    scale: f64,
+    /// Points that may be used.
+    range: (usize, usize),
+    found: Vec<Model>,
+    failure: Option<FitError>,
+}
+
+impl Models<'_> {
+    /// Fits all windows of allowed lengths that hold the points before and at `right`.
+    fn windows(&mut self, right: usize, allowed: impl Fn(usize) -> bool, degree: usize) {
+        let (first, last) = self.range;
+        for start in first..right {
+            for end in right + 1..=last {
+                if allowed(end - start) {
+                    self.add(start, end, degree);
+                }
+            }
         }
-        let (used, parameters) = (design.rows(), design.columns());
+    }
+
+    fn add(&mut self, start: usize, end: usize, degree: usize) {
+        let u = |row: usize| (self.x[start + row] - self.centre) / self.scale;
+        let design = Matrix::from_fn(end - start, degree + 1, |row, k| power(u(row), k));
+        let (y, errors) = (&self.y[start..end], &self.errors[start..end]);
+        let map = match linear_map(&design, Errors::Independent(errors)) {
+            Ok(map) => map,
+            Err(error) => {
+                self.failure = Some(error);
+                return;
+            }
+        };
+        let coefficients = map.times(y);
+        let pull = |row: usize| (y[row] - dot(design.row(row), &coefficients)) / errors[row];
+        let pulls: Vec<f64> = (0..y.len()).map(pull).collect();
+        let chi_squared = dot(&pulls, &pulls);
+        let (used, parameters, points) = (design.rows(), design.columns(), self.range.1 - self.range.0);
         let criterion = chi_squared + 2.0 * (parameters + points - used) as f64;
-        Ok(Self { start, map, value: coefficients[0], chi_squared, degrees: used - parameters, criterion })
+        let degrees = used - parameters;
+        self.found.push(Model { start, map, coefficients, pulls, chi_squared, degrees, criterion });
     }
 }
 

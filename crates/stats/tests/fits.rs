@@ -145,7 +145,7 @@ fn local_polynomial_of_a_polynomial() {
     let x: Vec<f64> = (0..12).map(|k| 0.1 * f64::from(k)).collect();
     let y: Vec<f64> = x.iter().map(|x| 1.0 - 2.0 * x + 0.5 * x * x).collect();
     let fit = local(&x, &y, &[1e-3; 12], 0.43, &LocalParams::default()).expect("a fit");
-    let (value, slope) = value_and_slope(&fit.coefficients(&y), fit.reduced(0.47));
+    let (value, slope) = value_and_slope(&fit.base, fit.reduced(0.47));
     assert!((value - (1.0 - 0.94 + 0.5 * 0.47 * 0.47)).abs() < 1e-9, "{value}");
     assert!((slope / fit.scale - (-2.0 + 0.47)).abs() < 1e-7, "{slope}");
     assert!(fit.chi_squared < 1e-9 && fit.model_error < 1e-9);
@@ -154,7 +154,7 @@ fn local_polynomial_of_a_polynomial() {
     let params = LocalParams { smooth: true, ..LocalParams::default() };
     for centre in [-0.5, 0.0, 0.43, 1.1, 2.0] {
         let fit = local(&x, &cubic, &[1.0; 12], centre, &params).expect("a fit");
-        let value = fit.coefficients(&cubic)[0];
+        let value = fit.base[0];
         assert!((value - centre * centre * centre).abs() < 1e-10, "{centre} {value}");
         assert_eq!(fit.model_error, 0.0);
     }
@@ -166,7 +166,52 @@ fn local_polynomial_takes_fewer_points_when_the_curve_demands() {
     let x: Vec<f64> = (0..20).map(|k| 0.05 * f64::from(k)).collect();
     let y: Vec<f64> = x.iter().map(|x| if *x > 0.7 { 10.0 * (x - 0.7) + 0.7 } else { *x }).collect();
     let fit = local(&x, &y, &[1e-3; 20], 0.3, &LocalParams::default()).expect("a fit");
-    assert!((fit.coefficients(&y)[0] - 0.3).abs() < 1e-4, "{:?}", fit.coefficients(&y));
+    assert!((fit.base[0] - 0.3).abs() < 1e-4, "{:?}", fit.base);
+}
+
+/// Points of a bent curve with noise, so that several polynomials compete.
+fn bent() -> (Vec<f64>, Vec<f64>, Vec<f64>) {
+    let mut normal = common::Normal::new("bent", 1);
+    let x: Vec<f64> = (0..11).map(|k| 0.1 * f64::from(k)).collect();
+    let y = x.iter().map(|x| x / (1.0 + x * x) + 0.02 * normal.next()).collect();
+    (x, y, vec![0.02; 11])
+}
+
+#[test]
+fn map_of_a_local_polynomial_is_its_derivative() {
+    let (x, y, errors) = bent();
+    let params = LocalParams::default();
+    let fit = local(&x, &y, &errors, 0.52, &params).expect("a fit");
+    for datum in 0..x.len() {
+        let shifted = |step: f64| {
+            let mut y = y.clone();
+            y[datum] += step;
+            local(&x, &y, &errors, 0.52, &params).expect("a fit").base
+        };
+        let step = 1e-6;
+        let (high, low) = (shifted(step), shifted(-step));
+        for k in 0..2 {
+            let slope = (high[k] - low[k]) / (2.0 * step);
+            assert!((slope - fit.map[(k, datum)]).abs() < 1e-6, "{datum} {k}: {slope} {}", fit.map[(k, datum)]);
+        }
+    }
+    let change: Vec<f64> = (0..x.len()).map(|datum| if datum == 5 { 0.25 } else { 0.0 }).collect();
+    assert_eq!(fit.coefficients(&change)[0], fit.base[0] + 0.25 * fit.map[(0, 5)]);
+}
+
+#[test]
+fn where_no_polynomial_fits_the_error_covers_what_is_unknown() {
+    // Seven points of a peak that no polynomial of degree five follows to 1e-6.
+    let x: Vec<f64> = (0..7).map(|k| f64::from(k) - 3.0).collect();
+    let peak = |x: f64| 1.0 / (1.0 + 0.4 * (x - 0.2) * (x - 0.2));
+    let y: Vec<f64> = x.iter().map(|x| peak(*x)).collect();
+    for centre in [-0.5, 0.3, 0.5, 0.8, 1.4] {
+        let fit = local(&x, &y, &[1e-6; 7], centre, &LocalParams::default()).expect("a fit");
+        let off = (fit.base[0] - peak(centre)).abs();
+        assert!(off > 1e-5, "interpolation this good would make the test empty: {off}");
+        assert!(off < 3.0 * fit.model_error && fit.model_error < 0.2, "{centre}: off {off}, error {}", fit.model_error);
+        assert_eq!(fit.degrees, 0);
+    }
 }
 
 #[test]
@@ -177,9 +222,9 @@ fn local_refuses_and_survives() {
     assert_eq!(local(&[1.0, 2.0], &[1.0; 3], &[1.0; 2], 1.0, &params), Err(LocalError::Points));
     assert_eq!(local(&[1.0, 2.0], &[1.0, f64::NAN], &[1.0; 2], 1.0, &params), Err(LocalError::Points));
     let two = local(&[1.0, 2.0], &[3.0, 5.0], &[0.0, 0.0], 1.5, &params).expect("a line");
-    assert!((two.coefficients(&[3.0, 5.0])[0] - 4.0).abs() < 1e-12);
+    assert!((two.base[0] - 4.0).abs() < 1e-12);
     let three = local(&[1.0, 2.0, 3.0], &[1.0, 4.0, 9.0], &[1e-3; 3], 2.0, &params).expect("a parabola");
-    assert!((three.coefficients(&[1.0, 4.0, 9.0])[0] - 4.0).abs() < 1e-3);
+    assert!((three.base[0] - 4.0).abs() < 1e-3);
 }
 
 proptest! {

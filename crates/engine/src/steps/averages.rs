@@ -14,7 +14,7 @@ use table::Row;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "averages", revision: 1, split: Split::Points, spec, check, complete: as_is, analyse };
+    StepKind { does: "averages", revision: 2, split: Split::Points, spec, check, complete: as_is, analyse };
 
 /// Fewer independent measurements than this are flagged: an error estimated from 50 is itself uncertain by a tenth (common practice).
 const FEW: f64 = 50.0;
@@ -51,13 +51,15 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         let mut members: Vec<(&Member, Quantity)> = Vec::new();
         let signed: Vec<&Member> = family.members.iter().filter(|m| m.signed).collect();
         let unsigned: Vec<&Member> = family.members.iter().filter(|m| !m.signed).collect();
+        // The symmetry makes the mean of the magnetisation zero. Chains that never turn over may agree on another by chance.
+        let stuck = family.signed_by_symmetry && chains.reversals() < FEW as usize;
         for member in signed {
             members.push((member, family::estimate(&chains, member, &facts)));
         }
         let mut verdict: Option<EquilibrationInfo> = None;
         if let Some(invariant) = family.invariant {
             chains.apply(invariant);
-            let info = settled::test(&chains);
+            let info = settled::test(&chains, 1);
             if family.decides {
                 unsettled |= info.equilibrated() == Some(false);
             }
@@ -73,6 +75,9 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         }
         for (member, quantity) in members {
             let mut flags = Vec::new();
+            if member.signed && stuck {
+                flags.push("few-samples");
+            }
             if !member.signed && matches!(verdict.map(|v| v.verdict), Some(Verdict::TooShort { .. })) {
                 flags.push("few-samples");
             }

@@ -13,7 +13,7 @@ use std::collections::BTreeMap;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "crossing", revision: 1, split: Split::Whole, spec, check, complete: as_is, analyse };
+    StepKind { does: "crossing", revision: 2, split: Split::Whole, spec, check, complete: as_is, analyse };
 
 fn spec() -> StepSpec {
     StepSpec {
@@ -58,19 +58,25 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
     let mut out = Tables::default();
     for (rest, series) in sets.into_values() {
         let mut flags = Vec::new();
+        let points = series.len();
         let mut curves: BTreeMap<u64, Vec<(f64, Vec<f64>, f64)>> = BTreeMap::new();
         for input in series {
             let (size, temperature) = place(input)?;
             let reader = task.read(input);
             let discarded = settled::discarded(&reader)?;
-            flags.extend(settled::flags(&reader, discarded)?);
+            flags.extend(settled::flags(&reader, discarded, points)?);
             let (value, replicates) = cumulant(&reader, discarded.rows)?;
             curves.entry(size).or_default().push((temperature, replicates, value));
             (task.progress)();
         }
         let curves: Vec<Curve> = curves.into_iter().map(|(size, points)| curve(size, points)).collect();
         let number = |name: &str| task.parameters.get(name).and_then(Value::as_f64);
-        let mut params = CrossingParams { inverse_nu: number("one_over_nu"), ..CrossingParams::default() };
+        let mut params = CrossingParams {
+            inverse_nu: number("one_over_nu"),
+            // <m^4> is never less than <m^2>^2.
+            ceiling: Some(2.0 / 3.0),
+            ..CrossingParams::default()
+        };
         if let Some(exponent) = number("correction") {
             params.corrections = vec![exponent];
         }

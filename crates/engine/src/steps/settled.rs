@@ -24,6 +24,19 @@ impl Chains {
         Ok(Chains { values })
     }
 
+    /// How often the sign changes within chains.
+    pub(crate) fn reversals(&self) -> usize {
+        let mut reversals = 0;
+        for chain in &self.values {
+            let mut positive = None;
+            for value in chain.iter().filter(|value| **value != 0.0) {
+                reversals += usize::from(positive.is_some_and(|before| before != (*value > 0.0)));
+                positive = Some(*value > 0.0);
+            }
+        }
+        reversals
+    }
+
     pub(crate) fn slices(&self) -> Vec<&[f64]> {
         self.values.iter().map(Vec::as_slice).collect()
     }
@@ -61,24 +74,31 @@ pub(crate) fn discarded(reader: &SeriesReader<'_>) -> Result<Discarded, StepErro
     Ok(found)
 }
 
-/// Tests the invariant series of a family.
-pub(crate) fn test(invariant: &Chains) -> EquilibrationInfo {
-    equilibration(&invariant.slices(), &EquilibrationParams::default())
+/// Tests the invariant series of a family, one of `among` that are tested for one conclusion: the chance of a false alarm is for all of them.
+pub(crate) fn test(invariant: &Chains, among: usize) -> EquilibrationInfo {
+    let default = EquilibrationParams::default();
+    let params = EquilibrationParams { false_alarm: default.false_alarm / among.max(1) as f64, ..default };
+    equilibration(&invariant.slices(), &params)
 }
 
-/// Flags of a point for an analysis that uses its series as a whole: `not-equilibrated`, `few-samples`.
-pub(crate) fn flags(reader: &SeriesReader<'_>, discarded: Discarded) -> Result<Vec<&'static str>, StepError> {
+/// Flags of a point for an analysis that uses `points` series as a whole: `not-equilibrated`, `few-samples`.
+pub(crate) fn flags(
+    reader: &SeriesReader<'_>,
+    discarded: Discarded,
+    points: usize,
+) -> Result<Vec<&'static str>, StepError> {
     let mut flags = Vec::new();
     if discarded.at_limit {
         flags.push("not-equilibrated");
     }
     let families = families(&reader.facts().observed);
     let deciding: Vec<&Family> = families.iter().filter(|family| family.decides).collect();
+    let among = points * deciding.len();
     for family in deciding {
         let Some(invariant) = family.invariant else { continue };
         let mut chains = Chains::read(reader, &family.column, discarded.rows)?;
         chains.apply(invariant);
-        match test(&chains).verdict {
+        match test(&chains, among).verdict {
             Verdict::Drift { .. } | Verdict::Spread { .. } => flags.push("not-equilibrated"),
             Verdict::TooShort { .. } => flags.push("few-samples"),
             _ => {}

@@ -5,6 +5,7 @@
 
 mod extrapolate;
 mod pair;
+mod straighten;
 
 pub use extrapolate::{Constant, Extrapolated, Member};
 pub use pair::PairCrossing;
@@ -47,6 +48,9 @@ pub struct CrossingParams {
     pub inverse_nu: Option<f64>,
     /// A fit with less probability than this is flagged: 0.01.
     pub least_p: f64,
+    /// A bound c that no value exceeds, 2/3 for the cumulant: curves are then interpolated as -ln(c - y), which is nearly
+    /// straight where y bends towards its bound, and has errors that hardly depend on y. Crossings are at the same places. None by default.
+    pub ceiling: Option<f64>,
     /// Degrees and points of the local polynomials.
     pub local: LocalParams,
 }
@@ -57,6 +61,7 @@ impl Default for CrossingParams {
             corrections: (2..=10).map(|quarter| 0.25 * f64::from(quarter)).collect(),
             inverse_nu: None,
             least_p: 0.01,
+            ceiling: None,
             local: LocalParams::default(),
         }
     }
@@ -147,6 +152,19 @@ pub fn crossing(curves: &[Curve], params: &CrossingParams) -> Result<CrossingInf
             return Err(CrossingError::Order { before: two[0].size, size: two[1].size });
         }
     }
+    match params.ceiling {
+        None => Ok(find(curves, params)),
+        Some(ceiling) => {
+            let straightened: Vec<Curve> = curves.iter().map(|curve| straighten::curve(curve, ceiling)).collect();
+            let mut found = find(&straightened, params);
+            straighten::undo(&mut found, ceiling);
+            Ok(found)
+        }
+    }
+}
+
+/// [`crossing`] of curves that have been checked.
+fn find(curves: &[Curve], params: &CrossingParams) -> CrossingInfo {
     let mut flags = Vec::new();
     let mut found = Vec::new();
     for two in curves.windows(2) {
@@ -187,7 +205,7 @@ pub fn crossing(curves: &[Curve], params: &CrossingParams) -> Result<CrossingInf
     flags.sort_unstable();
     flags.dedup();
     let pairs = found.iter().map(|pair| pair.report()).collect();
-    Ok(CrossingInfo { pairs, covariance: places, place, value, inverse_nu, flags })
+    CrossingInfo { pairs, covariance: places, place, value, inverse_nu, flags }
 }
 
 /// Covariance that two pairs have through one size.

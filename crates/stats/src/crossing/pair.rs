@@ -88,11 +88,11 @@ pub(super) fn find(small: &Curve, large: &Curve, params: &LocalParams) -> Option
     };
     let mut fits = [fit(0, centre)?, fit(1, centre)?];
     for _ in 0..3 {
-        let coefficients = [fits[0].coefficients(&small.y), fits[1].coefficients(&large.y)];
+        let coefficients = [fits[0].base.clone(), fits[1].base.clone()];
         centre = root(&fits, &coefficients, centre).filter(|place| (low..=high).contains(place))?;
         fits = [fit(0, centre)?, fit(1, centre)?];
     }
-    let coefficients = [fits[0].coefficients(&small.y), fits[1].coefficients(&large.y)];
+    let coefficients = [fits[0].base.clone(), fits[1].base.clone()];
     let place = root(&fits, &coefficients, centre).filter(|place| (low..=high).contains(place))?;
     let results = |coefficients: &[Vec<f64>; 2], place: f64| {
         let (value, slope) = value_and_slope(&coefficients[0], fits[0].reduced(place));
@@ -105,7 +105,8 @@ pub(super) fn find(small: &Curve, large: &Curve, params: &LocalParams) -> Option
         curves[curve].for_each_group(|group| {
             let each = |values: &Vec<f64>| {
                 let mut varied = coefficients.clone();
-                varied[curve] = fits[curve].coefficients(values);
+                let change: Vec<f64> = values.iter().zip(&curves[curve].y).map(|(new, old)| new - old).collect();
+                varied[curve] = fits[curve].coefficients(&change);
                 let place = root(&fits, &varied, place).unwrap_or_else(|| step(&fits, &varied, place));
                 results(&varied, place)
             };

@@ -25,6 +25,8 @@ pub(crate) struct Family {
     pub(crate) correlation: String,
     /// Whether it decides if the point has equilibrated: e and |m| do.
     pub(crate) decides: bool,
+    /// Whether the symmetry reverses its sign.
+    pub(crate) signed_by_symmetry: bool,
     /// Its quantities.
     pub(crate) members: Vec<Member>,
 }
@@ -116,6 +118,7 @@ pub(crate) fn families(observed: &[ColumnSpec]) -> Vec<Family> {
             invariant: if column.invariant { Some(|x| x) } else { None },
             correlation: column.name.clone(),
             decides: false,
+            signed_by_symmetry: false,
             members: Vec::new(),
         };
         match column.name.as_str() {
@@ -129,6 +132,7 @@ pub(crate) fn families(observed: &[ColumnSpec]) -> Vec<Family> {
                 family.invariant = Some(f64::abs);
                 family.correlation = "magnetisation_abs".into();
                 if !column.invariant {
+                    family.signed_by_symmetry = true;
                     let connected = member("susceptibility_connected", 6, "1/energy", &[1, 2], susceptibility);
                     family.members.push(Member { rank: 2, ..own });
                     family.members.push(Member { signed: true, ..connected });
