@@ -68,10 +68,10 @@ const STATES_LIGHT: [[u8; 3]; STATES] = [
 const STATES_DARK: [[u8; 3]; STATES] = [
     [0x2a, 0x34, 0x3e],
     [0xcf, 0xc6, 0xb4],
-    [0x76, 0x8a, 0x8f],
+    [0x8d, 0xa0, 0xa5],
     [0xb8, 0x7e, 0x42],
-    [0x82, 0x4e, 0x3c],
-    [0x2f, 0x86, 0x90],
+    [0x8a, 0x50, 0x3c],
+    [0x1f, 0x68, 0x74],
 ];
 
 impl Ink {
@@ -161,5 +161,131 @@ pub(crate) fn places(lines: usize) -> &'static [u8] {
         6 => &[0, 1, 2, 5, 6, 7],
         7 => &[0, 1, 2, 3, 4, 5, 7],
         _ => &[0, 1, 2, 3, 4, 5, 6, 7],
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// sRGB to linear light (IEC 61966-2-1).
+    fn linear(rgb: [u8; 3]) -> [f64; 3] {
+        rgb.map(|c| {
+            let c = f64::from(c) / 255.0;
+            if c <= 0.040_45 { c / 12.92 } else { ((c + 0.055) / 1.055).powf(2.4) }
+        })
+    }
+
+    fn luminance([r, g, b]: [f64; 3]) -> f64 {
+        0.2126 * r + 0.7152 * g + 0.0722 * b
+    }
+
+    /// CIE 1976 L*a*b* with white D65.
+    fn lab([r, g, b]: [f64; 3]) -> [f64; 3] {
+        let x = (0.4124 * r + 0.3576 * g + 0.1805 * b) / 0.9505;
+        let y = luminance([r, g, b]);
+        let z = (0.0193 * r + 0.1192 * g + 0.9505 * b) / 1.0888;
+        let f = |t: f64| if t > 0.008_856 { t.cbrt() } else { 7.787 * t + 16.0 / 116.0 };
+        [116.0 * f(y) - 16.0, 500.0 * (f(x) - f(y)), 200.0 * (f(y) - f(z))]
+    }
+
+    /// What is seen without one kind of cone: Machado, Oliveira & Fernandes 2009, severity 1, on linear light.
+    const VIEWS: [(&str, [[f64; 3]; 3]); 4] = [
+        ("all cones", [[1.0, 0.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]]),
+        (
+            "protanopia",
+            [
+                [0.152_286, 1.052_583, -0.204_868],
+                [0.114_503, 0.786_281, 0.099_216],
+                [-0.003_882, -0.048_116, 1.051_998],
+            ],
+        ),
+        (
+            "deuteranopia",
+            [[0.367_322, 0.860_646, -0.227_968], [0.280_085, 0.672_501, 0.047_413], [-0.011_820, 0.042_940, 0.968_881]],
+        ),
+        (
+            "tritanopia",
+            [
+                [1.255_528, -0.076_749, -0.178_779],
+                [-0.078_411, 0.930_809, 0.147_602],
+                [0.004_733, 0.691_367, 0.303_900],
+            ],
+        ),
+    ];
+
+    fn seen(rgb: [u8; 3], view: &[[f64; 3]; 3]) -> [f64; 3] {
+        let c = linear(rgb);
+        lab(view.map(|row| (0..3).map(|i| row[i] * c[i]).sum::<f64>().clamp(0.0, 1.0)))
+    }
+
+    fn distance(a: [f64; 3], b: [f64; 3]) -> f64 {
+        (0..3).map(|i| (a[i] - b[i]).powi(2)).sum::<f64>().sqrt()
+    }
+
+    /// Two lines of one chart can be told apart with any two kinds of cones, on paper and on a dark screen. A distance of 2.3 in
+    /// L*a*b* is just noticeable side by side; thin lines need several times that.
+    #[test]
+    fn lines_can_be_told_apart_by_all() {
+        for (ground, colours) in [("light", LINES_LIGHT), ("dark", LINES_DARK)] {
+            for count in 2..=LINES {
+                let least = if count <= 4 { 20.0 } else { 10.0 };
+                for (name, view) in &VIEWS {
+                    for (i, &a) in places(count).iter().enumerate() {
+                        for &b in &places(count)[..i] {
+                            let d = distance(seen(colours[usize::from(a)], view), seen(colours[usize::from(b)], view));
+                            assert!(d >= least, "{ground}, {count} lines, {name}: {a} and {b} are {d:.1} apart");
+                        }
+                    }
+                }
+            }
+        }
+    }
+
+    /// Up to four lines differ in print without colour, too.
+    #[test]
+    fn few_lines_differ_in_grey() {
+        for (ground, colours) in [("light", LINES_LIGHT), ("dark", LINES_DARK)] {
+            for count in 2..=4 {
+                let greys: Vec<f64> = places(count).iter().map(|&i| lab(linear(colours[usize::from(i)]))[0]).collect();
+                for (i, a) in greys.iter().enumerate() {
+                    for b in &greys[..i] {
+                        assert!((a - b).abs() >= 8.0, "{ground}, {count} lines: lightness {greys:.1?}");
+                    }
+                }
+            }
+        }
+    }
+
+    /// Contrast as WCAG 2 counts it: 4.5 for text, 3 for what is drawn.
+    #[test]
+    fn everything_stands_out_from_the_ground() {
+        for dark in [false, true] {
+            let colour = |ink: Ink| if dark { ink.dark() } else { ink.light() };
+            let ground = luminance(linear(colour(Ink::Paper)));
+            let drawn = [Ink::Text, Ink::Soft, Ink::Mark, Ink::Wall].into_iter().chain((0..LINES as u8).map(Ink::Line));
+            for ink in drawn {
+                let one = luminance(linear(colour(ink)));
+                let contrast = (one.max(ground) + 0.05) / (one.min(ground) + 0.05);
+                let least = if matches!(ink, Ink::Text | Ink::Soft | Ink::Mark) { 4.5 } else { 3.0 };
+                assert!(contrast >= least, "{ink:?}, dark {dark}: {contrast:.2}");
+            }
+        }
+    }
+
+    /// Shades of states: two states far apart, six told apart by all.
+    #[test]
+    fn states_can_be_told_apart() {
+        for colours in [STATES_LIGHT, STATES_DARK] {
+            for (name, view) in &VIEWS {
+                for i in 0..STATES {
+                    for j in 0..i {
+                        let d = distance(seen(colours[i], view), seen(colours[j], view));
+                        let least = if i == 1 { 45.0 } else { 12.0 };
+                        assert!(d >= least, "{name}: states {i} and {j} are {d:.1} apart");
+                    }
+                }
+            }
+        }
     }
 }

@@ -349,3 +349,56 @@ pub(crate) fn page() -> Page {
         made: "Made by spinledger 0.1.0, commit 0000000 (invented).".to_owned(),
     }
 }
+
+/// What nobody should be able to smuggle into a page.
+pub(crate) const NASTY: &str = "</style></script><script>alert('1')</script><img src=x onerror=alert(2)> & \"quotes\" \u{202e}אבג שלום <!-- ]]> \u{0}";
+
+/// A page in which every word is nasty and long.
+pub(crate) fn nasty() -> Page {
+    let text = || format!("{NASTY}{}", "long".repeat(200));
+    let record =
+        Value::map([(text(), Value::List(vec![Value::text(text()), Value::map([(text(), Value::text(text()))])]))]);
+    let mut chart = crossing(&[12, 16], 3, Style::Points);
+    chart.title = text();
+    chart.x.label = text();
+    chart.y.unit = text();
+    chart.lines[0].label = text();
+    chart.marks[0].label = text();
+    let mut picture = pictures().swap_remove(0).1;
+    picture.title = text();
+    picture.names[0] = text();
+    let mut column = Column::texts(&text(), vec![Some(text())]);
+    column.unit = text();
+    Page {
+        name: text(),
+        question: text(),
+        answers: vec![Answer {
+            name: text(),
+            value: None,
+            error: None,
+            unit: text(),
+            reference: Reference::Value { value: 1.0, error: 0.1 },
+            source: text(),
+            deviation: None,
+            within: f64::NAN,
+            verdict: Verdict::Undecided,
+            flags: vec![text()],
+            record: record.clone(),
+        }],
+        notes: vec![text()],
+        figures: [Content::Chart(chart), Content::Picture(picture)]
+            .map(|content| Figure { caption: text(), content, record: record.clone() })
+            .to_vec(),
+        tables: vec![TableView {
+            caption: text(),
+            table: Table { columns: vec![column, Column::texts("flags", vec![Some(text())])] },
+            file: text(),
+            key: text(),
+            most_rows: 10,
+            record: record.clone(),
+        }],
+        again: vec![Again { words: text(), command: text() }],
+        record,
+        made: text(),
+    }
+}

@@ -30,5 +30,6 @@ fn main() -> Result<(), Box<dyn Error>> {
         save(name, &picture.draw(520.0))?;
     }
     std::fs::write(folder.join("page.html"), invented::page().html())?;
+    std::fs::write(folder.join("page-awkward.html"), invented::nasty().html())?;
     Ok(())
 }

@@ -88,7 +88,7 @@ impl Chart {
             let count = line.points.len();
             words += &format!(" {name}: {count} {}", if count == 1 { "point" } else { "points" });
             let finite = || line.points.iter().filter(|p| p.x.is_finite() && p.y.is_finite());
-            if let (Some(first), Some(last)) = (finite().next(), finite().last()) {
+            if let (Some(first), Some(last)) = (finite().next(), finite().next_back()) {
                 let n = |v| shown(v, None, 5).text();
                 words += &format!(", from {} at {} to {} at {}", n(first.y), n(first.x), n(last.y), n(last.x));
             }
@@ -157,8 +157,16 @@ fn words(drawing: &mut Drawing, layout: &Layout, width: f64, height: f64) {
     }
 }
 
-/// Places of the points that can be drawn, with their errors as lengths up and down.
-fn places_of(line: &Line, layout: &Layout) -> Vec<(f64, f64, Option<(f64, f64)>)> {
+/// A point on the paper.
+struct Spot {
+    x: f64,
+    y: f64,
+    /// Upper and lower end of its error bar.
+    ends: Option<(f64, f64)>,
+}
+
+/// Places of the points that can be drawn.
+fn places_of(line: &Line, layout: &Layout) -> Vec<Spot> {
     let area = &layout.area;
     line.points
         .iter()
@@ -170,7 +178,7 @@ fn places_of(line: &Line, layout: &Layout) -> Vec<(f64, f64, Option<(f64, f64)>)
                 let place = |y: f64| if layout.y.usable(y) { layout.place_y(y) } else { area.bottom + 1.0 };
                 (place(p.y + e), place(p.y - e))
             });
-            (layout.place_x(p.x), layout.place_y(p.y), ends)
+            Spot { x: layout.place_x(p.x), y: layout.place_y(p.y), ends }
         })
         .collect()
 }
@@ -178,10 +186,10 @@ fn places_of(line: &Line, layout: &Layout) -> Vec<(f64, f64, Option<(f64, f64)>)
 fn draw_line(drawing: &mut Drawing, line: &Line, look: &Look, layout: &Layout) {
     let area = &layout.area;
     let points = places_of(line, layout);
-    let spots: Vec<(f64, f64)> = points.iter().map(|p| (p.0, p.1)).collect();
+    let spots: Vec<(f64, f64)> = points.iter().map(|p| (p.x, p.y)).collect();
     if line.style == Style::Band {
-        let top = points.iter().map(|p| (p.0, p.2.map_or(p.1, |e| e.0)));
-        let bottom = points.iter().rev().map(|p| (p.0, p.2.map_or(p.1, |e| e.1)));
+        let top = points.iter().map(|p| (p.x, p.ends.map_or(p.y, |e| e.0)));
+        let bottom = points.iter().rev().map(|p| (p.x, p.ends.map_or(p.y, |e| e.1)));
         drawing.fill(polygon(area, top.chain(bottom).collect()), look.ink, BAND);
     }
     if matches!(line.style, Style::Curve | Style::Band) {
@@ -201,10 +209,10 @@ fn draw_line(drawing: &mut Drawing, line: &Line, look: &Look, layout: &Layout) {
     draw_markers(drawing, &points, look, area);
 }
 
-fn bars(area: &Area, points: &[(f64, f64, Option<(f64, f64)>)]) -> Path {
+fn bars(area: &Area, points: &[Spot]) -> Path {
     let cap = if points.len() > 60 { 0.0 } else { 2.6 };
     let mut path = Path::new();
-    for &(x, _, ends) in points {
+    for &Spot { x, ends, .. } in points {
         let Some((up, down)) = ends else { continue };
         if x < area.left - 0.01 || x > area.right + 0.01 || down < area.top || up > area.bottom {
             continue;
@@ -221,7 +229,7 @@ fn bars(area: &Area, points: &[(f64, f64, Option<(f64, f64)>)]) -> Path {
     path
 }
 
-fn draw_markers(drawing: &mut Drawing, points: &[(f64, f64, Option<(f64, f64)>)], look: &Look, area: &Area) {
+fn draw_markers(drawing: &mut Drawing, points: &[Spot], look: &Look, area: &Area) {
     let r = match points.len() {
         0..=60 => 3.4,
         61..=200 => 2.4,
@@ -232,7 +240,7 @@ fn draw_markers(drawing: &mut Drawing, points: &[(f64, f64, Option<(f64, f64)>)]
     let inside = |x: f64, y: f64| {
         x >= area.left - 0.01 && x <= area.right + 0.01 && y >= area.top - 0.01 && y <= area.bottom + 0.01
     };
-    for &(x, y, _) in points.iter().filter(|p| inside(p.0, p.1)) {
+    for &Spot { x, y, .. } in points.iter().filter(|p| inside(p.x, p.y)) {
         filled = marker(&mut path, look.place, x, y, r);
     }
     look.markers(drawing, path, filled);

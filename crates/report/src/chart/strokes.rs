@@ -58,7 +58,7 @@ pub(crate) fn marker(path: &mut Path, place: usize, x: f64, y: f64, r: f64) -> b
         }
     }
     // Circle filled, square open, triangle filled, diamond open; then the other way round.
-    (place % 2 == 0) == (place % 8 < 4)
+    place.is_multiple_of(2) == (place % 8 < 4)
 }
 
 /// The part of a segment inside an area (Liang and Barsky 1984).
@@ -109,10 +109,9 @@ pub(crate) fn polyline(area: &Area, points: &[(f64, f64)]) -> Path {
 
 /// A polygon, cut off at the rim of an area (Sutherland and Hodgman 1974).
 pub(crate) fn polygon(area: &Area, corners: Vec<(f64, f64)>) -> Path {
-    type Side<'a> = (&'a dyn Fn((f64, f64)) -> f64,);
-    let sides: [Side<'_>; 4] =
-        [(&|p| p.0 - area.left,), (&|p| area.right - p.0,), (&|p| p.1 - area.top,), (&|p| area.bottom - p.1,)];
-    let kept = sides.iter().fold(corners, |corners, (inside,)| {
+    let sides: [&dyn Fn((f64, f64)) -> f64; 4] =
+        [&|p| p.0 - area.left, &|p| area.right - p.0, &|p| p.1 - area.top, &|p| area.bottom - p.1];
+    let kept = sides.iter().fold(corners, |corners, inside| {
         let mut kept = Vec::with_capacity(corners.len() + 2);
         for (i, &b) in corners.iter().enumerate() {
             let a = corners[(i + corners.len() - 1) % corners.len()];

@@ -17,13 +17,13 @@ pub(super) fn write(out: &mut String, number: usize, figure: &Figure) {
             let (wide, narrow) = (chart.draw(Frame::WIDE), chart.draw(Frame::NARROW));
             let _ = write!(
                 out,
-                "<div class=\"stage\" data-figure=\"{number}\">\n<div class=\"wide\">{}</div>\n<div class=\"narrow\">{}</div>\n<span class=\"spot\" hidden></span>\n</div>\n",
+                "<div class=\"stage\" data-figure=\"{number}\">\n<div class=\"wide\">{}</div>\n<div class=\"narrow\">{}</div>\n<span class=\"spot\" hidden=\"\"></span>\n</div>\n",
                 wide.inline_svg(),
                 narrow.inline_svg()
             );
             let _ = write!(
                 out,
-                "<p class=\"readout\" aria-live=\"polite\" hidden></p>\n<script type=\"application/json\" id=\"values-{number}\">"
+                "<p class=\"readout\" aria-live=\"polite\" hidden=\"\"></p>\n<script type=\"application/json\" id=\"values-{number}\">"
             );
             values(out, chart, (wide.height(), narrow.height()));
             out.push_str("</script>\n");

@@ -59,5 +59,5 @@ fn plain(value: &Value) -> String {
 
 /// A name that may break after underscores and dots.
 pub(super) fn breakable(name: &str) -> String {
-    escape(name).replace('_', "_<wbr>").replace('.', ".<wbr>")
+    escape(name).replace('_', "_<wbr/>").replace('.', ".<wbr/>")
 }

@@ -2,7 +2,7 @@
 
 use super::TableView;
 use super::record::{breakable, fold};
-use super::words::{counted, flag_text};
+use super::words::{counted, flag_name};
 use crate::number::{fixed, shown};
 use crate::text::escape;
 use spinledger_terms::{Cells, Column, Table};
@@ -113,8 +113,7 @@ impl<'a> Look<'a> {
 
     fn class(&self) -> &'static str {
         match self {
-            Look::Words => "",
-            Look::Flags => " class=\"flags\"",
+            Look::Words | Look::Flags => "",
             _ => " class=\"n\"",
         }
     }
@@ -129,7 +128,7 @@ impl<'a> Look<'a> {
             },
             Look::Flags => column.cells.text(row).map(|t| {
                 let words: Vec<String> =
-                    t.split(';').filter(|f| !f.is_empty()).map(|f| escape(&flag_text(f))).collect();
+                    t.split(';').filter(|f| !f.is_empty()).map(|f| escape(&flag_name(f))).collect();
                 words.join("; ")
             }),
             Look::Counts => column.cells.value(row).as_i64().map(|i| i.to_string().replace('-', "\u{2212}")),
@@ -173,7 +172,7 @@ mod tests {
         assert_eq!(cells(&table, "error"), ["0.0012", unknown, "0"]);
         assert_eq!(cells(&table, "tau"), ["1.2346", "123.46", "0.5"]);
         assert_eq!(cells(&table, "size"), ["8", "\u{2212}3", unknown]);
-        assert_eq!(cells(&table, "flags")[0], format!("{}; new thing", flag_text("bad-fit")));
+        assert_eq!(cells(&table, "flags")[0], "bad fit; new thing");
         assert_eq!(flags(&table), [("bad-fit".to_owned(), 1), ("new-thing".to_owned(), 1)]);
     }
 }

@@ -2,7 +2,7 @@
 
 use super::Verdict;
 
-/// A flag in words, to be read after "because": None for a flag that has none here.
+/// A flag in words, to be read after "because" or a colon; None for a flag that has none here.
 pub fn flag_words(flag: &str) -> Option<&'static str> {
     Some(match flag {
         "not-equilibrated" => "the chains have not forgotten where they began",
@@ -17,9 +17,17 @@ pub fn flag_words(flag: &str) -> Option<&'static str> {
     })
 }
 
-/// A flag as people read it: its words, or itself with spaces.
+/// A flag as people read it, in short: itself with spaces.
+pub(super) fn flag_name(flag: &str) -> String {
+    flag.replace('-', " ")
+}
+
+/// A flag at length: its words where it has some, and its name.
 pub(super) fn flag_text(flag: &str) -> String {
-    flag_words(flag).map_or_else(|| flag.replace('-', " "), str::to_owned)
+    match flag_words(flag) {
+        Some(words) => format!("{words} ({})", flag_name(flag)),
+        None => flag_name(flag),
+    }
 }
 
 impl Verdict {

@@ -37,10 +37,10 @@ impl Page {
         let mut out = String::with_capacity(1 << 18);
         let _ = write!(
             out,
-            "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n\
-             <meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src '{}'; script-src '{}'; img-src data:; base-uri 'none'; form-action 'none'\">\n\
-             <meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n\
-             <meta name=\"referrer\" content=\"no-referrer\">\n<link rel=\"icon\" href=\"data:,\">\n\
+            "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\"/>\n\
+             <meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src '{}'; script-src '{}'; img-src data:; base-uri 'none'; form-action 'none'\"/>\n\
+             <meta name=\"viewport\" content=\"width=device-width, initial-scale=1\"/>\n\
+             <meta name=\"referrer\" content=\"no-referrer\"/>\n<link rel=\"icon\" href=\"data:,\"/>\n\
              <title>{title}</title>\n<style>{style}</style>\n</head>\n<body>\n",
             digest::source(&style),
             digest::source(SCRIPT)
@@ -75,7 +75,7 @@ impl Page {
     fn head(&self, out: &mut String) {
         out.push_str("<header>\n<div class=\"top\">");
         let _ = write!(out, "<p class=\"name\" dir=\"auto\">{}</p>", escape(&self.name));
-        out.push_str("<button type=\"button\" id=\"shade\" hidden>dark</button></div>\n");
+        out.push_str("<button type=\"button\" id=\"shade\" hidden=\"\">dark</button></div>\n");
         let _ = write!(
             out,
             "<h1 dir=\"auto\">{}</h1>\n<p class=\"lead\">The numbers on this page are research estimates. They are not certified material data.</p>\n<nav aria-label=\"On this page\"><ul>",
@@ -124,10 +124,9 @@ impl Page {
         for (i, view) in self.tables.iter().enumerate() {
             let n = i + 1;
             for (flag, count) in table::flags(&view.table) {
-                let rows = counted(count, "row", "rows");
                 items.push(format!(
-                    "<a href=\"#table-{n}\">Table {n}</a>, {rows} of {}: {}",
-                    view.table.rows(),
+                    "<a href=\"#table-{n}\">Table {n}</a>, {count} of {}: {}",
+                    counted(view.table.rows(), "row", "rows"),
                     escape(&flag_text(&flag))
                 ));
             }
