@@ -80,8 +80,9 @@ pub(crate) unsafe fn slice<'a, T>(data: *const T, count: usize, what: &str) -> R
     if !data.is_aligned() {
         return Err(Unsound::new(format!("it gives a misaligned pointer for {what}")).into());
     }
-    // A slice of more bytes cannot be; so many sites or bonds cannot be numbered either.
-    if count > u32::MAX as usize {
+    // So many sites or bonds cannot be numbered, and so many bytes cannot be.
+    let bytes = count.checked_mul(size_of::<T>()).filter(|bytes| *bytes <= isize::MAX as usize);
+    if count > u32::MAX as usize || bytes.is_none() {
         return Err(Unsound::new(format!("it gives {count} {what}, which is too many")).into());
     }
     // SAFETY: neither null nor misaligned nor too long; the rest is the plugin's word.

@@ -17,14 +17,15 @@ pub struct Energy {
     data: EnergyData,
     raw: SlEnergy,
     _tables: Vec<SlFactorTable>,
-    custom: Box<SlCustom>,
+    /// One. Not a box: one that moves is taken to be the only way to what it holds, and `raw` points there too.
+    custom: Vec<SlCustom>,
     model: Arc<Handle>,
     graph: Arc<Graph>,
     hash: OnceLock<[u8; 32]>,
 }
 
-// SAFETY: the pointers lead into `data`, `_tables` and `custom`, which are never changed, and to the model, which is immutable and shared
-// by the rules of the interface.
+// SAFETY: the pointers lead into `data`, `_tables` and `custom`, which are never changed and freed with `self` only, and to the model, which
+// `model` keeps alive and which is immutable and shared between threads by the rules of the interface.
 unsafe impl Send for Energy {}
 // SAFETY: as above.
 unsafe impl Sync for Energy {}
@@ -36,14 +37,14 @@ impl Energy {
         graph: Arc<Graph>,
         callbacks: (SlTotal, SlDelta),
     ) -> Arc<Self> {
-        let custom = Box::new(SlCustom {
+        let custom = vec![SlCustom {
             size: size_of::<SlCustom>(),
             model: model.pointer(),
             total: callbacks.0,
             delta: callbacks.1,
-        });
+        }];
         let tables = data.factor_table_list();
-        let raw = data.raw(&tables, &raw const *custom);
+        let raw = data.raw(&tables, custom.as_ptr());
         Arc::new(Energy { data, raw, _tables: tables, custom, model, graph, hash: OnceLock::new() })
     }
 
@@ -118,7 +119,7 @@ impl Energy {
             }
             _ => return Err(misfit("there is not one proposal a site")),
         };
-        let Some(delta) = self.custom.delta.filter(|_| self.data.custom) else {
+        let Some(delta) = self.custom[0].delta.filter(|_| self.data.custom) else {
             return Err(self.model.unsuited("it has no callbacks"));
         };
         let (view, mut changes) = (from.view(self), vec![0.0; sites.len()]);
@@ -126,7 +127,7 @@ impl Energy {
             // SAFETY: model and graph are alive; lengths were checked; all slices live for the call.
             unsafe {
                 let (sites, count) = (sites.as_ptr(), sites.len());
-                delta(self.custom.model, self.graph.raw(), &view, count, sites, data, changes.as_mut_ptr(), message)
+                delta(self.custom[0].model, self.graph.raw(), &view, count, sites, data, changes.as_mut_ptr(), message)
             }
         })?;
         Ok(changes)
@@ -155,11 +156,11 @@ impl std::fmt::Debug for Energy {
 pub fn energy_total(graph: &Graph, energy: &Energy, configuration: &Configuration) -> Result<f64> {
     configuration.check(graph, energy)?;
     let told = total(graph, energy, configuration.spins());
-    let Some(callback) = energy.custom.total.filter(|_| energy.data.custom) else { return Ok(told) };
+    let Some(callback) = energy.custom[0].total.filter(|_| energy.data.custom) else { return Ok(told) };
     let (view, mut added) = (configuration.view(energy), 0.0);
     ask(&energy.model.label, "say its energy", |message| {
         // SAFETY: model and graph are alive; the view shows a configuration that was checked, for the call.
-        unsafe { callback(energy.custom.model, energy.graph.raw(), &view, &mut added, message) }
+        unsafe { callback(energy.custom[0].model, energy.graph.raw(), &view, &mut added, message) }
     })?;
     if !added.is_finite() {
         return Err(energy.model.wrong(format_args!("its callback gives an energy of {added}")));

@@ -14,7 +14,7 @@ pub struct Graph {
     hash: OnceLock<[u8; 32]>,
 }
 
-// SAFETY: the pointers lead into `data` and `_texts`, which are never changed.
+// SAFETY: the pointers lead into vectors of `data` and `_texts`, which are never changed and freed with `self` only.
 unsafe impl Send for Graph {}
 // SAFETY: as above.
 unsafe impl Sync for Graph {}

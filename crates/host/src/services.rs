@@ -98,6 +98,9 @@ impl HostTable {
     }
 }
 
+/// Bytes of a line that are taken: longer ones are cut.
+const LONGEST_LINE: usize = 1 << 16;
+
 /// The table behind a context that a plugin hands back.
 ///
 /// # Safety
@@ -113,9 +116,9 @@ unsafe extern "C" fn log_line(context: *mut c_void, level: u32, text: SlText) {
     if text.data.is_null() && text.length > 0 {
         return;
     }
-    let bytes = match text.length {
+    let bytes = match text.length.min(LONGEST_LINE) {
         0 => &[],
-        // SAFETY: not null, and the plugin says that it is so long.
+        // SAFETY: not null, not longer than can be, and the plugin says that it is so long.
         length => unsafe { std::slice::from_raw_parts(text.data, length) },
     };
     let level = if level == 0 { Level::Note } else { Level::Warning };

@@ -11,8 +11,8 @@ use std::ptr::null;
 /// A tree of `SlValue`, which borrows its texts from the value that it was made from.
 pub(crate) struct Tree<'a> {
     root: SlValue,
-    /// Children of all nodes; the boxes' memory stays where it is.
-    _nodes: Vec<Box<[SlValue]>>,
+    /// Children of all nodes; the vectors' memory stays where it is. Not boxes: one that moves is taken to be the only way to what it holds.
+    _nodes: Vec<Vec<SlValue>>,
     _texts: PhantomData<&'a Value>,
 }
 
@@ -31,7 +31,7 @@ fn text(text: &str) -> SlText {
     SlText { data: text.as_ptr(), length: text.len() }
 }
 
-fn node(key: &str, value: &Value, nodes: &mut Vec<Box<[SlValue]>>) -> SlValue {
+fn node(key: &str, value: &Value, nodes: &mut Vec<Vec<SlValue>>) -> SlValue {
     let (kind, integer, number) = match value {
         Value::Null => (SL_VALUE_NULL, 0, 0.0),
         Value::Bool(b) => (SL_VALUE_BOOLEAN, i64::from(*b), 0.0),
@@ -41,10 +41,10 @@ fn node(key: &str, value: &Value, nodes: &mut Vec<Box<[SlValue]>>) -> SlValue {
         Value::List(_) => (SL_VALUE_LIST, 0, 0.0),
         Value::Map(_) => (SL_VALUE_MAP, 0, 0.0),
     };
-    let children: Box<[SlValue]> = match value {
+    let children: Vec<SlValue> = match value {
         Value::List(list) => list.iter().map(|item| node("", item, nodes)).collect(),
         Value::Map(map) => map.iter().map(|(key, item)| node(key, item, nodes)).collect(),
-        _ => Box::default(),
+        _ => Vec::new(),
     };
     let (items, count) = (if children.is_empty() { null() } else { children.as_ptr() }, children.len());
     if count > 0 {

@@ -8,8 +8,11 @@ use std::ffi::c_void;
 #[repr(transparent)]
 pub struct Shared<T>(pub T);
 
-// SAFETY: made by `export!` only, from tables and texts that are constants: nobody writes through the pointers.
-unsafe impl<T> Sync for Shared<T> {}
+// SAFETY: both have no cell in them, so that threads can only read them, and pointers that nobody can follow without `unsafe`; those that
+// `export!` writes lead to constants. For these two types only: safe code could put a `Cell` into a `Shared` of any type.
+unsafe impl Sync for Shared<abi::SlLibrary> {}
+// SAFETY: as above.
+unsafe impl<const N: usize> Sync for Shared<[abi::SlItem; N]> {}
 
 /// One item of a library.
 pub const fn item(kind: u32, revision: u32, name: &'static str, functions: *const c_void) -> abi::SlItem {

@@ -10,19 +10,21 @@ use spinledger_abi as abi;
 use spinledger_flatten::{EnergyData, GraphData, ModelParts, Spins, Unsound, total};
 use spinledger_numerics::random::StreamKey;
 use std::any::Any;
-use std::ptr;
+use std::rc::Rc;
+use std::sync::Arc;
 
 /// Graph and energy of a lattice and a model, as rules and observables get them.
 pub struct Bench {
     graph: GraphData,
     energy: EnergyData,
-    raw_graph: Box<abi::SlGraph>,
+    raw_graph: Rc<abi::SlGraph>,
     raw_energy: abi::SlEnergy,
     /// What the raw structs point at beside `graph` and `energy`.
     _texts: Vec<abi::SlText>,
     _tables: Vec<abi::SlFactorTable>,
-    _custom: Box<abi::SlCustom>,
-    _model: Box<dyn Any + Send + Sync>,
+    // Not boxed: a box that moves is taken to be the only way to what it holds.
+    _custom: Rc<abi::SlCustom>,
+    _model: Arc<dyn Any + Send + Sync>,
 }
 
 impl Bench {
@@ -45,9 +47,9 @@ impl Bench {
         L::new(&complete(lattice, L::SPEC.parameters))?.build(&mut builder)?;
         let graph = border::replay_lattice(&builder).and_then(|parts| parts.finish()).map_err(unsound)?;
         let texts = graph.class_texts();
-        let raw_graph = Box::new(graph.raw(&texts));
+        let raw_graph = Rc::new(graph.raw(&texts));
 
-        let model = Box::new(M::new(&complete(model, M::SPEC.parameters))?);
+        let model = Arc::new(M::new(&complete(model, M::SPEC.parameters))?);
         // SAFETY: `raw_graph` was made from `graph` and `texts`, which are kept beside it and never changed.
         let face = unsafe { border::graph(&*raw_graph) }?;
         let mut builder = ModelBuilder::new();
@@ -63,14 +65,14 @@ impl Bench {
             (0..graph.sites).map(footprint).collect()
         });
         let energy = parts.finish(&graph, footprints.as_deref()).map_err(unsound)?;
-        let custom = Box::new(abi::SlCustom {
+        let custom = Rc::new(abi::SlCustom {
             size: size_of::<abi::SlCustom>(),
-            model: ptr::from_ref::<M>(&model).cast(),
+            model: Arc::as_ptr(&model).cast(),
             total: Models::<M>::TOTAL,
             delta: Models::<M>::DELTA,
         });
         let tables = energy.factor_table_list();
-        let raw_energy = energy.raw(&tables, &raw const *custom);
+        let raw_energy = energy.raw(&tables, Rc::as_ptr(&custom));
         Ok(Bench {
             graph,
             energy,
@@ -91,7 +93,7 @@ impl Bench {
 
     /// The Hamiltonian.
     pub fn energy(&self) -> Energy<'_> {
-        // SAFETY: as above, with `raw_energy`, made for this graph.
+        // SAFETY: what both point at belongs to `self`, lives as long and does not change; the energy was made for this graph.
         unsafe { border::energy(&*self.raw_graph, &self.raw_energy) }.expect("made by this crate")
     }
 
