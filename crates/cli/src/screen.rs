@@ -63,6 +63,16 @@ impl Screen {
         complain(text);
     }
 
+    /// A line of a table that is good news no more: in its place for a person, on standard error where only what went wrong is told.
+    pub(crate) fn wrong(&mut self, text: &str, code: &str) {
+        if self.style == Style::Quiet {
+            self.trouble(text);
+        } else {
+            let text = self.tint(text, code);
+            self.line(&text);
+        }
+    }
+
     /// The line at the bottom of a terminal; without a terminal a plain line now and then. `text` is made only when it is shown.
     pub(crate) fn bottom(&mut self, text: impl FnOnce() -> String) {
         if self.style != Style::Person {

@@ -24,16 +24,24 @@ pub(crate) fn columns(rows: &[Vec<String>], right: &[usize]) -> Vec<String> {
         .collect()
 }
 
-/// A value with its error in the last digits: `2.26915(12)`.
+/// A value with its error in the last digits: `2.26915(12)`; an error of ten or more with its own digits: `1500 +- 120`.
 pub(crate) fn with_error(value: f64, error: Option<f64>) -> String {
     match error {
         Some(error) if error > 0.0 && error.is_finite() && value.is_finite() => {
-            let digits = 1 - error.log10().floor() as i32;
-            if !(0..=17).contains(&digits) {
-                return format!("{value} +- {error:.2}");
+            // Two digits of the error, after rounding: 0.0996 is 0.100.
+            let text = format!("{error:.1e}");
+            let exponent: i32 = text.split_once('e').and_then(|(_, e)| e.parse().ok()).unwrap_or(0);
+            match 1 - exponent {
+                digits @ 1..=17 => {
+                    let units = text.split_once('e').map_or(String::new(), |(mantissa, _)| mantissa.replace('.', ""));
+                    format!("{value:.*}({units})", digits as usize)
+                }
+                ..=0 => {
+                    let scale = 10f64.powi(exponent - 1);
+                    format!("{:.0} +- {:.0}", (value / scale).round() * scale, (error / scale).round() * scale)
+                }
+                _ => format!("{value} +- {error:.1e}"),
             }
-            let units = (error * 10f64.powi(digits)).round();
-            format!("{value:.*}({units:.0})", digits as usize)
         }
         Some(0.0) => format!("{value} (exact)"),
         _ => format!("{value}"),
@@ -56,14 +64,15 @@ pub(crate) fn duration(seconds: f64) -> String {
     if hours < 48 { format!("{hours} h {} min", minutes % 60) } else { format!("{} days", hours / 24) }
 }
 
-/// A large number with its power of a thousand.
+/// A large number in words: `7.8 thousand`.
 pub(crate) fn amount(x: f64) -> String {
-    for (power, word) in [(1e12, "T"), (1e9, "G"), (1e6, "M"), (1e3, "k")] {
-        if x >= power {
+    for (power, word) in [(1e12, "trillion"), (1e9, "billion"), (1e6, "million"), (1e3, "thousand")] {
+        // What rounds to a thousand of one word is one of the next.
+        if x >= 0.999_95 * power {
             return format!("{:.1} {word}", x / power);
         }
     }
-    format!("{x:.0} ")
+    format!("{x:.0}")
 }
 
 /// `1 parcel`, `2 parcels`.
@@ -79,10 +88,28 @@ mod tests {
     fn errors_stand_in_the_last_digits() {
         assert_eq!(with_error(2.269153, Some(0.00012)), "2.26915(12)");
         assert_eq!(with_error(2.2691, Some(0.0099)), "2.2691(99)");
-        assert_eq!(with_error(-1.5, Some(12.0)), "-2(12)");
+        assert_eq!(with_error(2.2691, Some(0.0996)), "2.27(10)");
+        assert_eq!(with_error(2.2691, Some(3.08)), "2.3(31)");
+        assert_eq!(with_error(-1.5, Some(12.0)), "-2 +- 12");
+        assert_eq!(with_error(-1543.0, Some(118.0)), "-1540 +- 120");
         assert_eq!(with_error(2.5, None), "2.5");
-        assert_eq!(with_error(1e6, Some(1e4)), "1000000 +- 10000.00");
+        assert_eq!(with_error(1e6, Some(1e4)), "1000000 +- 10000");
+        assert_eq!(with_error(2.5, Some(1e-20)), "2.5 +- 1.0e-20");
+        assert_eq!(with_error(f64::INFINITY, Some(0.1)), "inf");
         assert_eq!(with_error(2.0, Some(0.0)), "2 (exact)");
+    }
+
+    #[test]
+    fn amounts_are_words() {
+        let texts: Vec<String> = [0.0, 999.4, 999.96, 7812.0, 999_960.0, 4.2e12].map(amount).to_vec();
+        assert_eq!(texts, ["0", "999", "1.0 thousand", "7.8 thousand", "1.0 million", "4.2 trillion"]);
+    }
+
+    #[test]
+    fn columns_are_aligned_by_characters() {
+        let row = |cells: [&str; 3]| cells.map(String::from).to_vec();
+        let lines = columns(&[row(["step", "n", ""]), row(["größe", "12", "left"])], &[1]);
+        assert_eq!(lines, ["step    n", "größe  12  left"]);
     }
 
     #[test]

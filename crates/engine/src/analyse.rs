@@ -1,9 +1,10 @@
 //! One analysis parcel: tables from series and tables.
 
+use crate::failure::Failure;
 use crate::job::{AnalyseJob, Entry, Report};
+use crate::program;
 use crate::steps::{self, Task};
 use crate::worker::Line;
-use crate::{chain_text, program};
 use spinledger_ledger::{Claim, Draft, Input, Ledger, Payload};
 use spinledger_terms::Key;
 use std::time::Instant;
@@ -11,14 +12,14 @@ use std::time::Instant;
 /// Does the parcel.
 ///
 /// # Errors
-/// In words: why the parcel is broken.
-pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<Report, String> {
+/// Why it was not done.
+pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<Report, Failure> {
     let key = Key::of(&job.preimage);
-    let _claim = match ledger.claim(&key, &job.does).map_err(|e| chain_text(&e))? {
+    let _claim = match ledger.claim(&key, &job.does)? {
         Claim::Mine(guard) => guard,
         Claim::Theirs { host, pid, .. } => return Ok(Report::Held { by: format!("process {pid} on {host}") }),
     };
-    if let Some(found) = ledger.lookup(&key).map_err(|e| chain_text(&e))? {
+    if let Some(found) = ledger.lookup(&key)? {
         return Ok(Report::Done { computed: false, updates: 0, entries: vec![Entry::of(&found)] });
     }
     let kind = steps::kind(&job.does).ok_or_else(|| format!("there is no step kind `{}`", job.does))?;
@@ -27,7 +28,7 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     let progress = || line.progress(0);
     let task =
         Task { parameters: &job.parameters, series: &job.series, tables: &job.tables, ledger, progress: &progress };
-    let tables = (kind.analyse)(&task).map_err(|e| e.to_string())?;
+    let tables = (kind.analyse)(&task)?;
     let series = job.series.iter().map(|s| Input { name: s.role.clone(), key: s.key, content: s.content });
     let tables_in = job.tables.iter().map(|t| Input { name: t.role.clone(), key: t.key, content: t.content });
     provenance.inputs = series.chain(tables_in).collect();
@@ -39,7 +40,7 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     for (name, table) in tables {
         draft = draft.table(&name, Payload::Table(table));
     }
-    let published = ledger.publish(draft).map_err(|e| chain_text(&e))?;
+    let published = ledger.publish(draft)?;
     let entry = Entry {
         key,
         kind: job.does.clone(),

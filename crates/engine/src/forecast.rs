@@ -36,6 +36,8 @@ pub struct StepForecast {
     pub updates: f64,
     /// Steps that must run first before more can be said.
     pub waits: Vec<String>,
+    /// What will break it, in words: values that its scan takes from an earlier step are wrong, or cannot be read.
+    pub problem: Option<String>,
 }
 
 /// Forecasts a pipeline against a ledger, or against none.
@@ -81,8 +83,14 @@ fn sample(
             forecast.waits = steps;
             return;
         }
-        // What is wrong is told by the run, with its place.
-        Err(_) => return,
+        Err(Unplanned::Problems(problems)) => {
+            forecast.problem = Some(spinledger_pipeline::render(&study.source, &problems));
+            return;
+        }
+        Err(Unplanned::Failed(message)) => {
+            forecast.problem = Some(message);
+            return;
+        }
     };
     let (mut parcels, mut due) = (0, 0);
     for point in &points {

@@ -1,6 +1,6 @@
 //! The table of a step that is split by points: the tables of its parcels one below the other, with the scan columns in front.
 
-use crate::chain_text;
+use crate::failure::Failure;
 use crate::planning::Parcel;
 use crate::program;
 use crate::steps::StepKind;
@@ -24,20 +24,20 @@ pub(crate) fn preimage(kind: &StepKind, parcels: &[Parcel], index: &Index) -> Op
 /// The gathered entry: found, or made and published.
 ///
 /// # Errors
-/// In words, where a parcel's table cannot be read, tables do not fit together, or the ledger cannot be written.
+/// Where a parcel's table cannot be read, tables do not fit together, or the ledger cannot be written.
 pub(crate) fn gather(
     kind: &StepKind,
     parcels: &[Parcel],
     ledger: &Ledger,
     index: &mut Index,
     pipeline: Option<ContentHash>,
-) -> Result<(Key, ContentHash), String> {
+) -> Result<(Key, ContentHash), Failure> {
     let preimage = preimage(kind, parcels, index).ok_or("a parcel is not on record")?;
     let key = Key::of(&preimage);
     if let Some(line) = index.get(&key) {
         return Ok((key, line.content));
     }
-    if let Some(line) = ledger.lookup(&key).map_err(|e| chain_text(&e))? {
+    if let Some(line) = ledger.lookup(&key)? {
         let content = line.content;
         index.add(line);
         return Ok((key, content));
@@ -49,9 +49,9 @@ pub(crate) fn gather(
     let inputs = parcels.iter().filter_map(input).collect();
     let mut tables: Vec<(String, Table)> = Vec::new();
     for parcel in parcels {
-        let record = ledger.read_record(&parcel.key).map_err(|e| chain_text(&e))?;
+        let record = ledger.read_record(&parcel.key)?;
         for (at, described) in record.tables.iter().enumerate() {
-            let part = ledger.read_table(&parcel.key, &described.name).map_err(|e| chain_text(&e))?;
+            let part = ledger.read_table(&parcel.key, &described.name)?;
             let part = in_front(&parcel.columns, part);
             if tables.len() <= at {
                 tables.push((described.name.clone(), Table::default()));
@@ -67,8 +67,8 @@ pub(crate) fn gather(
     for (name, table) in tables {
         draft = draft.table(&name, Payload::Table(table));
     }
-    let published = ledger.publish(draft).map_err(|e| chain_text(&e))?;
-    if let Some(line) = ledger.lookup(&key).map_err(|e| chain_text(&e))? {
+    let published = ledger.publish(draft)?;
+    if let Some(line) = ledger.lookup(&key)? {
         index.add(line);
     }
     Ok((key, published.content))

@@ -4,17 +4,7 @@ use serde::{Deserialize, Serialize};
 use spinledger_plan::sample::{Group, Piece, Point};
 use spinledger_terms::{ColumnSpec, ContentHash, Key, Value};
 
-/// From the runner to a worker.
-#[derive(Clone, Debug, Serialize, Deserialize)]
-#[serde(rename_all = "lowercase")]
-pub enum Order {
-    /// Do this.
-    Work(Box<Job>),
-    /// Save what can be saved and leave.
-    Stop,
-}
-
-/// One piece of work.
+/// One piece of work: what the runner tells a worker.
 #[derive(Clone, Debug, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum Job {
@@ -154,6 +144,8 @@ pub struct AnalyseJob {
 #[derive(Clone, Debug, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum Report {
+    /// The job was taken up. Before that, the end of the worker is no fault of the job.
+    Taken,
     /// The work goes on: attempted spin updates since the last report.
     Progress {
         /// Attempted spin updates since the last report.
@@ -183,10 +175,10 @@ pub enum Report {
         /// Why.
         message: String,
     },
-    /// Stopped because the runner asked; what was done is on record.
-    Stopped {
-        /// What is now on record.
-        entries: Vec<Entry>,
+    /// What was computed cannot be kept: the disk is full, or cannot be written. No fault of the parcel.
+    Disk {
+        /// Why.
+        message: String,
     },
 }
 

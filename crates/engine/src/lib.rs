@@ -10,6 +10,7 @@
 
 mod analyse;
 mod close;
+mod failure;
 pub mod forecast;
 mod gather;
 pub mod job;

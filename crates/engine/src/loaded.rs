@@ -1,7 +1,8 @@
 //! Plugins at work: what a worker has loaded, and the lattice and Hamiltonian of the last parcels, which the next one often shares.
 
+use crate::failure::Failure;
+use crate::job::Report;
 use crate::worker::Line;
-use crate::{chain_text, job::Report};
 use spinledger_host::{Energy, Graph, Loader, Observer, Sampler, Services};
 use spinledger_numerics::random::StreamKey;
 use spinledger_plan::dynamics::{Dynamics, ItemRef};
@@ -47,16 +48,13 @@ impl Loaded {
     ///
     /// # Errors
     /// In words, where a plugin cannot be loaded or refuses.
-    pub(crate) fn problem(&mut self, dynamics: &Dynamics) -> Result<Problem, String> {
+    pub(crate) fn problem(&mut self, dynamics: &Dynamics) -> Result<Problem, Failure> {
         let (lattice, model) = (&dynamics.lattice, &dynamics.model);
         if let Some((_, _, problem)) = self.problems.iter().find(|(l, m, _)| l == lattice && m == model) {
             return Ok(problem.clone());
         }
-        let failed = |error: spinledger_host::HostError| chain_text(&error);
-        let graph =
-            self.loader.lattice(&lattice.identity, &lattice.parameters).map_err(failed)?.build().map_err(failed)?;
-        let item = self.loader.model(&model.identity, &model.parameters).map_err(failed)?;
-        let energy = item.describe(&graph).map_err(failed)?;
+        let graph = self.loader.lattice(&lattice.identity, &lattice.parameters)?.build()?;
+        let energy = self.loader.model(&model.identity, &model.parameters)?.describe(&graph)?;
         let problem = Problem { graph, energy };
         self.problems.truncate(KEPT - 1);
         self.problems.insert(0, (lattice.clone(), model.clone(), problem.clone()));
@@ -72,15 +70,14 @@ impl Loaded {
         dynamics: &Dynamics,
         problem: &Problem,
         stream: &StreamKey,
-    ) -> Result<Vec<(Sampler, u64)>, String> {
+    ) -> Result<Vec<(Sampler, u64)>, Failure> {
         let mut rules = Vec::new();
         for (number, (rule, times)) in dynamics.update.iter().enumerate() {
             let group_key = stream.derive(&format!("update {number}"));
             let lane_keys: Vec<StreamKey> = (0..dynamics.lanes).map(|lane| group_key.lane(lane)).collect();
-            let item = self.loader.update(&rule.identity, &rule.parameters).map_err(|e| chain_text(&e))?;
-            let sampler = item
-                .prepare(&problem.graph, &problem.energy, dynamics.inverse_temperature, &lane_keys, group_key)
-                .map_err(|e| chain_text(&e))?;
+            let item = self.loader.update(&rule.identity, &rule.parameters)?;
+            let sampler =
+                item.prepare(&problem.graph, &problem.energy, dynamics.inverse_temperature, &lane_keys, group_key)?;
             rules.push((sampler, *times));
         }
         Ok(rules)
@@ -94,16 +91,15 @@ impl Loaded {
         &mut self,
         dynamics: &Dynamics,
         problem: &Problem,
-    ) -> Result<(Vec<Observer>, Vec<ColumnSpec>), String> {
+    ) -> Result<(Vec<Observer>, Vec<ColumnSpec>), Failure> {
         let mut observers = Vec::new();
         let mut columns: Vec<ColumnSpec> = Vec::new();
         for observable in &dynamics.observe {
-            let item =
-                self.loader.observable(&observable.identity, &observable.parameters).map_err(|e| chain_text(&e))?;
-            let observer = item.prepare(&problem.graph, &problem.energy).map_err(|e| chain_text(&e))?;
+            let item = self.loader.observable(&observable.identity, &observable.parameters)?;
+            let observer = item.prepare(&problem.graph, &problem.energy)?;
             for column in observer.columns() {
                 if columns.iter().any(|c| c.name == column.name) {
-                    return Err(format!("two observables have the column `{}`", column.name));
+                    return Err(format!("two observables have the column `{}`", column.name).into());
                 }
                 columns.push(column.clone());
             }

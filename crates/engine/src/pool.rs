@@ -1,21 +1,26 @@
 //! The runner's side of the workers: processes are started when there is work, given jobs one at a time, watched, and replaced when they die.
 
-use crate::job::{Entry, Job, Order, Report};
-use std::collections::VecDeque;
-use std::io::{BufRead, BufReader, Write};
-use std::os::fd::OwnedFd;
-use std::os::unix::net::UnixStream;
-use std::os::unix::process::ExitStatusExt;
+mod process;
+#[cfg(test)]
+mod tests;
+
+use crate::job::{Entry, Job, Report};
+use process::{Process, Said};
+use std::collections::{BTreeMap, BTreeSet, VecDeque};
 use std::path::PathBuf;
-use std::process::{Child, Command, Stdio};
-use std::sync::mpsc::{self, Receiver, RecvTimeoutError, Sender};
-use std::sync::{Arc, Mutex};
+use std::sync::mpsc::{self, Receiver, Sender};
 use std::time::{Duration, Instant};
 
-/// Lines of a worker's own output that are kept, to be shown if it dies.
-const TAIL: usize = 20;
 /// How long to wait before asking again for work that another run holds.
 const HELD_PAUSE: Duration = Duration::from_millis(200);
+/// How long work may be held elsewhere before that is told.
+const HELD_TOLD: Duration = Duration::from_secs(3);
+/// How often workers are looked at, beside listening to them.
+const WATCH_EVERY: Duration = Duration::from_millis(100);
+/// How long a worker that has ended may still be heard of: its last reports are on their way.
+const LAST_WORDS: Duration = Duration::from_secs(1);
+/// So many workers one after another may end before taking up a job; then something is wrong with the program or the machine.
+const MOST_LOST: u32 = 3;
 
 /// How to run workers.
 #[derive(Clone, Debug)]
@@ -42,7 +47,7 @@ pub(crate) enum Event {
     },
     /// A plugin or worker has something to say.
     Log(String),
-    /// A worker took it.
+    /// A worker was given it. Told once, however often it must be given.
     Started,
     /// It is done.
     Done {
@@ -57,85 +62,99 @@ pub(crate) enum Event {
     Broken(String),
 }
 
+/// Why no job can be done.
+#[derive(Debug, thiserror::Error)]
+pub(crate) enum PoolError {
+    /// A process cannot be started.
+    #[error("no worker can be started")]
+    Start(#[from] std::io::Error),
+    /// Workers end before they take up anything.
+    #[error("workers end before they take up any work: {0}")]
+    Lost(String),
+    /// What is computed cannot be kept.
+    #[error("{0}")]
+    Disk(String),
+}
+
 /// The workers.
 pub(crate) struct Pool {
     options: PoolOptions,
-    slots: Vec<Option<Slot>>,
-    send: Sender<(usize, u64, Option<Report>)>,
-    receive: Receiver<(usize, u64, Option<Report>)>,
+    places: Vec<Option<Process>>,
+    send: Sender<Said>,
+    receive: Receiver<Said>,
     generation: u64,
+    /// Workers that ended before taking up a job, since one did.
+    lost: u32,
+    /// Who holds work elsewhere, as far as told.
+    told: BTreeSet<String>,
+    last_watch: Instant,
 }
 
-struct Slot {
-    child: Child,
-    stream: UnixStream,
-    generation: u64,
-    job: Option<usize>,
-    last: Instant,
-    tail: Arc<Mutex<VecDeque<String>>>,
-    readers: Vec<std::thread::JoinHandle<()>>,
+/// The jobs of one call.
+struct Round {
+    waiting: VecDeque<usize>,
+    /// Held elsewhere: to be asked for again.
+    held: Vec<(usize, Instant)>,
+    held_since: BTreeMap<usize, Instant>,
+    started: Vec<bool>,
+    open: usize,
+}
+
+/// What a report means for its job.
+enum Meaning {
+    GoesOn(Event),
+    Ends(Event),
+    Held(String),
+    /// The worker ended before taking it up.
+    Lost(String),
+    Disk(String),
 }
 
 impl Pool {
     /// No process is started yet.
     pub(crate) fn new(options: PoolOptions) -> Self {
         let (send, receive) = mpsc::channel();
-        let slots = (0..options.workers.max(1)).map(|_| None).collect();
-        Pool { options, slots, send, receive, generation: 0 }
+        let places = (0..options.workers.max(1)).map(|_| None).collect();
+        let last_watch = Instant::now();
+        Pool { options, places, send, receive, generation: 0, lost: 0, told: BTreeSet::new(), last_watch }
     }
 
     /// Does all jobs and tells what happens to each, by its number. Jobs are started in their order. Work that another run holds is asked for
-    /// again until it is done or free.
+    /// again until it is done or free; a job whose worker ended before taking it up is given to another.
     ///
     /// # Errors
-    /// Where no worker can be started.
-    pub(crate) fn execute(&mut self, jobs: &[Job], tell: &mut dyn FnMut(usize, Event)) -> std::io::Result<()> {
-        let mut waiting: VecDeque<usize> = (0..jobs.len()).collect();
-        let mut held: Vec<(usize, Instant)> = Vec::new();
-        let mut open = jobs.len();
-        while open > 0 {
-            let now = Instant::now();
-            held.retain(|(job, since)| {
-                let keep = now.duration_since(*since) < HELD_PAUSE;
-                if !keep {
-                    waiting.push_back(*job);
-                }
-                keep
-            });
-            for slot in 0..self.slots.len() {
-                if self.slots[slot].as_ref().is_some_and(|s| s.job.is_some()) {
+    /// Where no worker can be started or lives long enough to take up a job, and where the disk fails. Workers go on with what they have then
+    /// until the pool is dropped.
+    pub(crate) fn execute(&mut self, jobs: &[Job], tell: &mut dyn FnMut(usize, Event)) -> Result<(), PoolError> {
+        let mut round = Round {
+            waiting: (0..jobs.len()).collect(),
+            held: Vec::new(),
+            held_since: BTreeMap::new(),
+            started: vec![false; jobs.len()],
+            open: jobs.len(),
+        };
+        while round.open > 0 {
+            round.ask_again();
+            for place in 0..self.places.len() {
+                if self.places[place].as_ref().is_some_and(|worker| worker.job.is_some()) {
                     continue;
                 }
-                let Some(job) = waiting.pop_front() else { break };
-                self.start(slot, job, &jobs[job])?;
-                tell(job, Event::Started);
-            }
-            match self.receive.recv_timeout(Duration::from_millis(100)) {
-                Ok((slot, generation, report)) => {
-                    if let Some((job, event)) = self.receive_report(slot, generation, report, jobs) {
-                        match event {
-                            Finished::Not(event) => tell(job, event),
-                            Finished::Held => held.push((job, Instant::now())),
-                            Finished::Yes(event) => {
-                                open -= 1;
-                                tell(job, event);
-                            }
-                        }
-                    }
+                let Some(job) = round.waiting.pop_front() else { break };
+                self.give(place, job, &jobs[job])?;
+                if !std::mem::replace(&mut round.started[job], true) {
+                    tell(job, Event::Started);
                 }
-                Err(RecvTimeoutError::Timeout | RecvTimeoutError::Disconnected) => {}
             }
-            if let Some(stall) = self.options.stall {
-                for slot in 0..self.slots.len() {
-                    let stalled = self.slots[slot].as_ref().filter(|s| s.last.elapsed() > stall).and_then(|s| s.job);
-                    if let Some(job) = stalled {
-                        self.retire(slot, true);
-                        open -= 1;
-                        let seconds = stall.as_secs_f64();
-                        tell(
-                            job,
-                            Event::Broken(format!("no progress for {seconds} s (--stall): its worker was ended")),
-                        );
+            if let Ok((place, generation, report)) = self.receive.recv_timeout(WATCH_EVERY)
+                && let Some((job, meaning)) = self.understand(place, generation, report, jobs)
+            {
+                self.settle(&mut round, job, meaning, tell)?;
+            }
+            if self.last_watch.elapsed() >= WATCH_EVERY {
+                self.last_watch = Instant::now();
+                for place in 0..self.places.len() {
+                    if let Some((job, meaning)) = self.watch(place) {
+                        self.settle(&mut round, job, meaning, tell)?;
                     }
                 }
             }
@@ -143,169 +162,123 @@ impl Pool {
         Ok(())
     }
 
-    fn start(&mut self, slot: usize, number: usize, job: &Job) -> std::io::Result<()> {
-        if self.slots[slot].is_none() {
-            self.slots[slot] = Some(self.spawn(slot)?);
-        }
-        let mut text = serde_json::to_vec(&Order::Work(Box::new(job.clone())))?;
-        text.push(b'\n');
+    fn give(&mut self, place: usize, number: usize, job: &Job) -> Result<(), PoolError> {
         // A worker that died while it had nothing to do is replaced, and breaks nothing.
-        if self.slots[slot].as_mut().is_some_and(|worker| worker.stream.write_all(&text).is_err()) {
-            self.retire(slot, true);
-            let mut worker = self.spawn(slot)?;
-            // If this one dies too, its reader tells the job's end.
-            let _ = worker.stream.write_all(&text);
-            self.slots[slot] = Some(worker);
+        if let Some(mut worker) = self.places[place].take()
+            && worker.give(number, job)?
+        {
+            self.places[place] = Some(worker);
+            return Ok(());
         }
-        if let Some(worker) = self.slots[slot].as_mut() {
-            worker.job = Some(number);
-            worker.last = Instant::now();
-        }
+        self.generation += 1;
+        let mut worker = Process::start(&self.options, place, self.generation, self.send.clone())?;
+        // If this one is gone too, its reader tells.
+        worker.give(number, job)?;
+        self.places[place] = Some(worker);
         Ok(())
     }
 
-    fn spawn(&mut self, slot: usize) -> std::io::Result<Slot> {
-        let (ours, theirs) = UnixStream::pair()?;
-        let mut child = Command::new(&self.options.program)
-            .arg("worker")
-            .arg(&self.options.ledger)
-            .arg(self.options.threads.to_string())
-            .stdin(Stdio::from(OwnedFd::from(theirs)))
-            .stdout(Stdio::piped())
-            .stderr(Stdio::piped())
-            .spawn()?;
-        self.generation += 1;
-        let generation = self.generation;
-        let tail = Arc::new(Mutex::new(VecDeque::new()));
-        let mut readers = Vec::new();
-        if let Some(out) = child.stdout.take() {
-            readers.push(keep_tail(out, tail.clone()));
-        }
-        if let Some(err) = child.stderr.take() {
-            readers.push(keep_tail(err, tail.clone()));
-        }
-        let send = self.send.clone();
-        let incoming = ours.try_clone()?;
-        std::thread::spawn(move || {
-            for line in BufReader::new(incoming).lines() {
-                let Some(report) = line.ok().and_then(|l| serde_json::from_str::<Report>(&l).ok()) else { break };
-                if send.send((slot, generation, Some(report))).is_err() {
-                    return;
-                }
-            }
-            let _ = send.send((slot, generation, None));
-        });
-        Ok(Slot { child, stream: ours, generation, job: None, last: Instant::now(), tail, readers })
-    }
-
-    fn receive_report(
+    /// What a report means, and for which job; None where it is of no interest.
+    fn understand(
         &mut self,
-        slot: usize,
+        place: usize,
         generation: u64,
         report: Option<Report>,
         jobs: &[Job],
-    ) -> Option<(usize, Finished)> {
-        let worker = self.slots[slot].as_mut().filter(|w| w.generation == generation)?;
+    ) -> Option<(usize, Meaning)> {
+        let worker = self.places[place].as_mut().filter(|w| w.generation == generation)?;
         worker.last = Instant::now();
-        let job = worker.job;
-        let Some(report) = report else {
-            let message = self.retire(slot, false);
-            return job.map(|job| (job, Finished::Yes(Event::Broken(message))));
+        let Some(report) = report else { return self.bury(place) };
+        let job = worker.job?;
+        let meaning = match report {
+            Report::Taken => {
+                worker.taken = true;
+                self.lost = 0;
+                return None;
+            }
+            Report::Progress { updates } => Meaning::GoesOn(Event::Progress { updates }),
+            Report::Log { text } => Meaning::GoesOn(Event::Log(text)),
+            Report::Held { by } => Meaning::Held(by),
+            Report::Done { computed, updates, entries } => Meaning::Ends(Event::Done { computed, updates, entries }),
+            Report::Broken { message } => Meaning::Ends(Event::Broken(message)),
+            Report::Disk { message } => Meaning::Disk(message),
         };
-        let job = job?;
-        let event = match report {
-            Report::Progress { updates } => Finished::Not(Event::Progress { updates }),
-            Report::Log { text } => Finished::Not(Event::Log(text)),
-            Report::Held { .. } => Finished::Held,
-            Report::Done { computed, updates, entries } => Finished::Yes(Event::Done { computed, updates, entries }),
-            Report::Stopped { .. } => Finished::Yes(Event::Broken("its worker was told to stop".into())),
-            Report::Broken { message } => Finished::Yes(Event::Broken(message)),
-        };
-        if !matches!(event, Finished::Not(_)) {
+        if !matches!(meaning, Meaning::GoesOn(_)) {
             worker.job = None;
-            // Foreign code may have left anything behind: its process serves one parcel only.
-            if matches!(&jobs[job], Job::Sample(job) if job.point.dynamics.is_foreign()) {
-                self.retire(slot, true);
+        }
+        // Foreign code may have left anything behind: its process serves one parcel only.
+        let foreign = matches!(&jobs[job], Job::Sample(job) if job.point.dynamics.is_foreign());
+        if foreign && matches!(meaning, Meaning::Ends(_)) {
+            self.places[place] = None;
+        }
+        Some((job, meaning))
+    }
+
+    /// A worker that has ended, and what that means for the job that it had.
+    fn bury(&mut self, place: usize) -> Option<(usize, Meaning)> {
+        let worker = self.places[place].take()?;
+        let (job, taken) = (worker.job, worker.taken);
+        let message = worker.end(false);
+        Some((job?, if taken { Meaning::Ends(Event::Broken(message)) } else { Meaning::Lost(message) }))
+    }
+
+    /// Looks after a worker: one that makes no progress is ended, and one that ended while processes that it left behind keep its descriptor open
+    /// is noticed.
+    fn watch(&mut self, place: usize) -> Option<(usize, Meaning)> {
+        let worker = self.places[place].as_mut()?;
+        let job = worker.job?;
+        let silent = worker.last.elapsed();
+        if let Some(stall) = self.options.stall.filter(|stall| silent > *stall) {
+            self.places[place].take()?.end(true);
+            let message = format!("no progress for {} s (--stall): its worker was ended", stall.as_secs_f64());
+            return Some((job, Meaning::Ends(Event::Broken(message))));
+        }
+        if silent > LAST_WORDS && worker.has_ended() { self.bury(place) } else { None }
+    }
+
+    fn settle(
+        &mut self,
+        round: &mut Round,
+        job: usize,
+        meaning: Meaning,
+        tell: &mut dyn FnMut(usize, Event),
+    ) -> Result<(), PoolError> {
+        match meaning {
+            Meaning::GoesOn(event) => tell(job, event),
+            Meaning::Ends(event) => {
+                round.open -= 1;
+                tell(job, event);
             }
-        }
-        Some((job, event))
-    }
-
-    /// Ends a worker; returns in words how it ended.
-    fn retire(&mut self, slot: usize, kill: bool) -> String {
-        let Some(mut worker) = self.slots[slot].take() else { return String::new() };
-        if kill {
-            let _ = worker.child.kill();
-        }
-        let status = worker.child.wait();
-        // Its output ends with it, unless a child of its own holds the pipe: then it is not waited for.
-        let deadline = Instant::now() + Duration::from_millis(500);
-        while worker.readers.iter().any(|r| !r.is_finished()) && Instant::now() < deadline {
-            std::thread::sleep(Duration::from_millis(2));
-        }
-        let how = match status {
-            Ok(status) => match (status.signal(), status.code()) {
-                (Some(signal), _) => format!("its worker was ended by signal {signal}{}", signal_words(signal)),
-                (None, Some(code)) => format!("its worker ended by itself with status {code}"),
-                (None, None) => "its worker ended".into(),
-            },
-            Err(error) => format!("its worker was lost: {error}"),
-        };
-        let tail: Vec<String> = worker.tail.lock().map(|t| t.iter().cloned().collect()).unwrap_or_default();
-        if tail.is_empty() { how } else { format!("{how}; its last words: {}", tail.join(" | ")) }
-    }
-}
-
-impl Drop for Pool {
-    fn drop(&mut self) {
-        for slot in &mut self.slots {
-            if let Some(mut worker) = slot.take() {
-                let _ = worker.stream.shutdown(std::net::Shutdown::Both);
-                let _ = worker.child.kill();
-                let _ = worker.child.wait();
-            }
-        }
-    }
-}
-
-/// Whether an event ends its job.
-enum Finished {
-    Not(Event),
-    Held,
-    Yes(Event),
-}
-
-fn signal_words(signal: i32) -> &'static str {
-    match signal {
-        4 => " (illegal instruction)",
-        6 => " (abort)",
-        7 => " (bus error)",
-        8 => " (arithmetic error)",
-        9 => " (killed)",
-        11 => " (invalid memory access)",
-        15 => " (terminated)",
-        _ => "",
-    }
-}
-
-fn keep_tail(
-    from: impl std::io::Read + Send + 'static,
-    tail: Arc<Mutex<VecDeque<String>>>,
-) -> std::thread::JoinHandle<()> {
-    std::thread::spawn(move || {
-        let mut reader = BufReader::new(from);
-        let mut bytes = Vec::new();
-        while reader.read_until(b'\n', &mut bytes).is_ok_and(|n| n > 0) {
-            let text: String = String::from_utf8_lossy(&bytes).trim_end().chars().take(300).collect();
-            bytes.clear();
-            if let Ok(mut tail) = tail.lock() {
-                if tail.len() == TAIL {
-                    tail.pop_front();
+            Meaning::Held(by) => {
+                let since = *round.held_since.entry(job).or_insert_with(Instant::now);
+                if since.elapsed() >= HELD_TOLD && self.told.insert(by.clone()) {
+                    tell(job, Event::Log(format!("waiting for work that another run does ({by})")));
                 }
-                if !text.is_empty() {
-                    tail.push_back(text);
-                }
+                round.held.push((job, Instant::now()));
             }
+            Meaning::Lost(message) => {
+                self.lost += 1;
+                if self.lost >= MOST_LOST {
+                    return Err(PoolError::Lost(message));
+                }
+                round.waiting.push_front(job);
+            }
+            Meaning::Disk(message) => return Err(PoolError::Disk(message)),
         }
-    })
+        Ok(())
+    }
+}
+
+impl Round {
+    /// Work that was held elsewhere comes up again after a pause, behind what waits.
+    fn ask_again(&mut self) {
+        let waiting = &mut self.waiting;
+        self.held.retain(|(job, since)| {
+            let keep = since.elapsed() < HELD_PAUSE;
+            if !keep {
+                waiting.push_back(*job);
+            }
+            keep
+        });
+    }
 }

@@ -5,7 +5,8 @@
 
 use crate::analyse;
 use crate::close;
-use crate::job::{Job, Order, Report};
+use crate::failure::Failure;
+use crate::job::{Job, Report};
 use crate::loaded::Loaded;
 use crate::sampling;
 use rustix::fd::OwnedFd;
@@ -82,18 +83,20 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
     };
     let (send, receive) = mpsc::channel();
     let back = line.clone();
-    std::thread::spawn(move || listen(stream, &stop, &send, &back));
+    std::thread::spawn(move || listen(stream, &stop, send, &back));
     let ledger = Ledger::open(ledger)?;
     let mut loaded = Loaded::new(threads, line.clone())?;
     while let Ok(job) = receive.recv() {
+        line.send(&Report::Taken);
         let work = std::panic::AssertUnwindSafe(|| match job {
             Job::Sample(job) => sampling::sample(&job, &ledger, &mut loaded, &line),
-            Job::Close(job) => close::close(&job, &ledger),
+            Job::Close(job) => close::close(&job, &ledger, &line),
             Job::Analyse(job) => analyse::analyse(&job, &ledger, &line),
         });
         let report = match std::panic::catch_unwind(work) {
             Ok(Ok(report)) => report,
-            Ok(Err(message)) => Report::Broken { message },
+            Ok(Err(Failure::Broken(message))) => Report::Broken { message },
+            Ok(Err(Failure::Disk(message))) => Report::Disk { message },
             Err(panic) => Report::Broken { message: format!("a defect of spinledger: {}", panic_text(&*panic)) },
         };
         line.send(&report);
@@ -101,16 +104,15 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
     Ok(())
 }
 
-fn listen(stream: UnixStream, stop: &AtomicBool, send: &mpsc::Sender<Job>, back: &Line) {
+fn listen(stream: UnixStream, stop: &AtomicBool, send: mpsc::Sender<Job>, back: &Line) {
     for text in BufReader::new(stream).lines() {
         let Ok(text) = text else { break };
-        match serde_json::from_str::<Order>(&text) {
-            Ok(Order::Work(job)) => {
-                if send.send(*job).is_err() {
+        match serde_json::from_str::<Job>(&text) {
+            Ok(job) => {
+                if send.send(job).is_err() {
                     return;
                 }
             }
-            Ok(Order::Stop) => break,
             Err(error) => {
                 let message = format!("a defect of spinledger: an order cannot be read: {error}");
                 back.send(&Report::Broken { message });
@@ -118,6 +120,8 @@ fn listen(stream: UnixStream, stop: &AtomicBool, send: &mpsc::Sender<Job>, back:
         }
     }
     stop.store(true, Ordering::Relaxed);
+    // A worker that has nothing to do ends now.
+    drop(send);
     std::thread::sleep(GRACE);
     std::process::exit(3);
 }

@@ -25,7 +25,7 @@ pub(crate) fn forecast(args: &ForecastArgs) -> anyhow::Result<u8> {
     let mut rows = vec![header.map(String::from).to_vec()];
     for step in &forecast.steps {
         let count = |n: Option<u64>| n.map_or("?".to_owned(), |n| n.to_string());
-        let updates = if step.updates > 0.0 { amount(step.updates).trim_end().to_owned() } else { String::new() };
+        let updates = if step.updates > 0.0 { amount(step.updates) } else { String::new() };
         rows.push(vec![
             step.step.clone(),
             step.does.clone(),
@@ -38,10 +38,17 @@ pub(crate) fn forecast(args: &ForecastArgs) -> anyhow::Result<u8> {
         ]);
     }
     columns(&rows, &[2, 3, 4, 5, 6]).iter().for_each(|line| screen.line(line));
+    for step in &forecast.steps {
+        if let Some(problem) = &step.problem {
+            screen.trouble(&format!("{} will break:\n{problem}", step.step));
+        }
+    }
     let seconds = forecast.seconds.map(|seconds| seconds / workers as f64);
     screen.event(&json!({ "event": "forecast", "steps": forecast.steps, "workers": workers, "seconds": seconds }));
     if forecast.steps.iter().all(|step| step.due == Some(0) && step.partial == 0) {
         screen.line("nothing is due");
+    } else if forecast.steps.iter().all(|step| step.updates == 0.0 && step.waits.is_empty()) {
+        screen.line("no sampling is due");
     } else if let Some(seconds) = seconds {
         screen.line(&format!("about {} of sampling with {workers} workers, by the times on record", duration(seconds)));
     } else {

@@ -1,6 +1,7 @@
-//! One file a command.
+//! One file a command, and what they share.
 
 pub(crate) mod check;
+pub(crate) mod closing;
 pub(crate) mod forecast;
 pub(crate) mod plugins;
 pub(crate) mod run;

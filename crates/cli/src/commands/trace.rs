@@ -3,7 +3,7 @@
 use crate::args::TraceArgs;
 use crate::commands::{BROKEN, WELL, WRONG};
 use crate::screen::{Screen, Style, complain, put};
-use crate::text::{amount, duration};
+use crate::text::{amount, counted, duration};
 use anyhow::{Context, bail};
 use spinledger_ledger::{Ledger, Record, file_key};
 use spinledger_terms::{Key, Value};
@@ -28,15 +28,16 @@ pub(crate) fn trace(args: &TraceArgs) -> anyhow::Result<u8> {
             return Ok(WRONG);
         }
     };
-    let mut seen = BTreeSet::new();
-    let mut missing = 0;
+    let mut trace = Trace { ledger: &ledger, seen: BTreeSet::new(), missing: 0, makers: BTreeSet::new() };
     if args.json {
-        dump(&ledger, &key, &mut seen, &mut missing, &mut screen);
+        trace.dump(&key, &mut screen);
     } else {
-        tree(&ledger, &key, "", "", &mut seen, &mut missing);
+        trace.tree(&key, "", "");
+        trace.makers.iter().for_each(|maker| put(&format!("made by {maker}\n")));
     }
-    if missing > 0 {
-        complain(&format!("spinledger: {missing} records are not in the ledger {}", args.ledger.ledger.display()));
+    if trace.missing > 0 {
+        let missing = counted(trace.missing, "record");
+        complain(&format!("spinledger: {missing} not in the ledger {}", args.ledger.ledger.display()));
         return Ok(BROKEN);
     }
     Ok(WELL)
@@ -67,53 +68,72 @@ fn find(what: &str, ledger: &Ledger) -> anyhow::Result<Found> {
     }
 }
 
-/// All records below a key, each once, inputs first.
-fn dump(ledger: &Ledger, key: &Key, seen: &mut BTreeSet<Key>, missing: &mut u64, screen: &mut Screen) {
-    if !seen.insert(*key) {
-        return;
-    }
-    match ledger.read_record(key) {
-        Ok(record) => {
-            for input in &record.provenance.inputs {
-                dump(ledger, &input.key, seen, missing, screen);
-            }
-            screen.event(&serde_json::json!(record));
+/// Records on the way from a result to its inputs.
+struct Trace<'a> {
+    ledger: &'a Ledger,
+    seen: BTreeSet<Key>,
+    missing: u64,
+    /// Programs and machines, told once each.
+    makers: BTreeSet<String>,
+}
+
+impl Trace<'_> {
+    /// All records below a key, each once, inputs first.
+    fn dump(&mut self, key: &Key, screen: &mut Screen) {
+        if !self.seen.insert(*key) {
+            return;
         }
-        Err(_) => *missing += 1,
+        match self.ledger.read_record(key) {
+            Ok(record) => {
+                for input in &record.provenance.inputs {
+                    self.dump(&input.key, screen);
+                }
+                screen.event(&serde_json::json!(record));
+            }
+            Err(_) => self.missing += 1,
+        }
+    }
+
+    fn tree(&mut self, key: &Key, lead: &str, name: &str) {
+        let name = if name.is_empty() { String::new() } else { format!("{name}: ") };
+        let record = match self.ledger.read_record(key) {
+            Ok(record) => record,
+            Err(error) => {
+                self.missing += 1;
+                put(&format!("{lead}{name}{}: {}\n", key.short(), spinledger_engine::chain_text(&error)));
+                return;
+            }
+        };
+        let again = !self.seen.insert(*key);
+        put(&format!("{lead}{name}{}{}\n", headline(&record), if again { " (above)" } else { "" }));
+        if again {
+            return;
+        }
+        self.makers.insert(maker(&record));
+        // What hangs below a branch is indented by it.
+        let below = lead.replace("+- ", "|  ").replace("`- ", "   ");
+        let inputs = &record.provenance.inputs;
+        let bar = if inputs.is_empty() { " " } else { "|" };
+        details(&record).iter().for_each(|line| put(&format!("{below}{bar}  {line}\n")));
+        let shown = if inputs.len() > SHOWN { SHOWN - 1 } else { inputs.len() };
+        for (at, input) in inputs.iter().take(shown).enumerate() {
+            let branch = if at + 1 == inputs.len() { "`- " } else { "+- " };
+            self.tree(&input.key, &format!("{below}{branch}"), &input.name);
+        }
+        if inputs.len() > shown {
+            put(&format!("{below}`- and {} more like these (--json lists all)\n", inputs.len() - shown));
+        }
     }
 }
 
-fn tree(ledger: &Ledger, key: &Key, lead: &str, name: &str, seen: &mut BTreeSet<Key>, missing: &mut u64) {
-    let name = if name.is_empty() { String::new() } else { format!("{name}: ") };
-    let record = match ledger.read_record(key) {
-        Ok(record) => record,
-        Err(error) => {
-            *missing += 1;
-            put(&format!("{lead}{name}{} is not on record: {error}\n", key.short()));
-            return;
-        }
-    };
-    let again = !seen.insert(*key);
-    put(&format!("{lead}{name}{}{}\n", headline(&record), if again { " (above)" } else { "" }));
-    if again {
-        return;
-    }
-    // What hangs below a branch is indented by it.
-    let below = lead.replace("+- ", "|  ").replace("`- ", "   ");
-    let inputs = &record.provenance.inputs;
-    let details = details(&record);
-    for (at, line) in details.iter().enumerate() {
-        let bar = if inputs.is_empty() && at + 1 == details.len() { " " } else { "|" };
-        put(&format!("{below}{bar}  {line}\n"));
-    }
-    let shown = if inputs.len() > SHOWN { SHOWN - 1 } else { inputs.len() };
-    for (at, input) in inputs.iter().take(shown).enumerate() {
-        let branch = if at + 1 == inputs.len() { "`- " } else { "+- " };
-        tree(ledger, &input.key, &format!("{below}{branch}"), &input.name, seen, missing);
-    }
-    if inputs.len() > shown {
-        put(&format!("{below}`- and {} more like these (--json lists all)\n", inputs.len() - shown));
-    }
+/// The program and the machine that made an entry.
+fn maker(record: &Record) -> String {
+    let p = &record.provenance;
+    let (commit, changes) = p.program.commit.split_once(' ').unwrap_or((&p.program.commit, ""));
+    let commit = format!("{} {changes}", commit.get(..12).unwrap_or(commit));
+    let compiler = p.program.compiler.split(" (").next().unwrap_or_default();
+    let program = format!("{} {}, commit {}, {compiler}", p.program.name, p.program.version, commit.trim_end());
+    format!("{program}\n    on {} ({})", p.host, p.processor.model)
 }
 
 fn headline(record: &Record) -> String {
@@ -131,7 +151,7 @@ fn details(record: &Record) -> Vec<String> {
             if let (Some(chains), "chains") = (value.as_map(), name.as_str()) {
                 for part in ["lattice", "model", "update", "observe", "start", "seed"] {
                     if let Some(value) = chains.get(part) {
-                        lines.push(format!("{part} {}", value.canonical()));
+                        lines.push(format!("{part} {}", item_words(value)));
                     }
                 }
             } else if *value != Value::Map(Default::default()) {
@@ -141,7 +161,7 @@ fn details(record: &Record) -> Vec<String> {
     }
     if p.updates > 0 {
         lines.push(format!(
-            "{}spin updates, streams {} version {}",
+            "{} spin updates, streams {} version {}",
             amount(p.updates as f64),
             p.streams.as_ref().map_or("", |s| s.generator.as_str()),
             p.streams.as_ref().map_or(0, |s| s.version)
@@ -153,11 +173,6 @@ fn details(record: &Record) -> Vec<String> {
     if record.tables.is_empty() {
         lines.push(format!("content {}", &record.content.to_string()[..12]));
     }
-    let program = &p.program;
-    lines.push(format!(
-        "{} {} (commit {}), {}, on {} ({})",
-        program.name, program.version, program.commit, program.compiler, p.host, p.processor.model
-    ));
     for identity in p.plugins.iter().filter(|i| !i.standard) {
         lines.push(format!(
             "foreign plugin {} from {}, file hash {}",
@@ -168,4 +183,22 @@ fn details(record: &Record) -> Vec<String> {
     }
     lines.extend(p.notes.iter().map(|note| format!("note: {note}")));
     lines
+}
+
+/// A plugin item with its parameters, or several; other values as they are.
+fn item_words(value: &Value) -> String {
+    if let Some(list) = value.as_list() {
+        return list.iter().map(item_words).collect::<Vec<_>>().join(", ");
+    }
+    let Some(item) = value.get("item").and_then(Value::as_str) else {
+        return value.as_str().map_or_else(|| value.canonical(), str::to_owned);
+    };
+    let mut text = item.to_owned();
+    if let Some(parameters) = value.get("parameters").filter(|p| p.as_map().is_some_and(|map| !map.is_empty())) {
+        text.push_str(&format!(" {}", parameters.canonical()));
+    }
+    if let Some(times) = value.get("times").and_then(Value::as_i64).filter(|times| *times != 1) {
+        text.push_str(&format!(" {times} times"));
+    }
+    text
 }

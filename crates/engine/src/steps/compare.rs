@@ -1,11 +1,11 @@
 //! `compare`: results against published values, other results, or brackets.
 
-use super::{Split, StepError, StepKind, Task, flags_text, no_check};
-use spinledger_terms::{Column, Field, Kind, StepSpec, Table, Value};
+use super::{Checked, Split, StepError, StepKind, Task, flags_text};
+use spinledger_terms::{Cells, Column, Field, Kind, Problem, StepSpec, Table, Value};
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "compare", revision: 1, split: Split::Whole, spec, check: no_check, complete, analyse };
+    StepKind { does: "compare", revision: 1, split: Split::Whole, spec, check, complete, analyse };
 
 /// Values without errors are the same when they differ by rounding only.
 const ROUNDING: f64 = 1e-12;
@@ -43,6 +43,42 @@ fn spec() -> StepSpec {
     }
 }
 
+/// What can be told without a table: which step has tables, what a result is held against.
+fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
+    let Some(point) = step.points.first() else { return };
+    let items = point.get("items").and_then(|items| items.as_list().map(<[Value]>::len)).unwrap_or(0);
+    for item in 0..items {
+        for side in ["take", "against"] {
+            super::must_have_tables(step, &format!("items.{item}.{side}.step"), problems);
+        }
+        let place = format!("items.{item}.against");
+        let Some(against) = point.get(&place) else { continue };
+        let has = |name: &str| against.get(name).is_some();
+        let number = |name: &str| against.get(name).and_then(Value::as_f64);
+        let given =
+            [has("value"), has("lower") || has("upper"), has("step")].into_iter().filter(|given| *given).count();
+        if given != 1 {
+            let message = if given == 0 {
+                "there is nothing to hold the result against"
+            } else {
+                "the result is held against several things"
+            };
+            let problem = Problem::at_value(&point.place(&place), message);
+            problems.push(problem.expected("one of: `value`, a bracket (`lower`, `upper` or both), `step`"));
+        }
+        if let (Some(lower), Some(upper)) = (number("lower"), number("upper"))
+            && lower > upper
+        {
+            let problem = Problem::at_value(&point.place(&format!("{place}.lower")), "the bracket is empty");
+            problems.push(
+                problem
+                    .expected("`lower` at most `upper`")
+                    .other(point.place(&format!("{place}.upper")), "the upper end"),
+            );
+        }
+    }
+}
+
 /// Names rows after the step and quantity, which do not enter the key otherwise.
 fn complete(parameters: &mut Value) {
     let count = parameters.get("items").and_then(Value::as_list).map_or(0, <[Value]>::len);
@@ -66,8 +102,17 @@ struct Found {
 
 /// What it is held against.
 enum Against {
-    Value { value: f64, error: f64, flags: String },
-    Bracket { lower: Option<f64>, upper: Option<f64>, flags: String },
+    /// An error that is not known is not zero.
+    Value {
+        value: f64,
+        error: Option<f64>,
+        flags: String,
+    },
+    Bracket {
+        lower: Option<f64>,
+        upper: Option<f64>,
+        flags: String,
+    },
 }
 
 /// One row.
@@ -102,6 +147,9 @@ fn take(task: &Task<'_>, role: &str, which: &Value) -> Result<Found, StepError> 
     let table = task.table(role, text("table").unwrap_or("main"))?;
     let column = text("column").unwrap_or("value");
     let values = &table.column(column).ok_or_else(|| no_column(&table, column))?.cells;
+    if !matches!(values, Cells::Number(_) | Cells::Integer(_)) {
+        return Err(StepError(format!("the column `{column}` holds no numbers")));
+    }
     let mut wanted: Vec<(&str, Value)> = Vec::new();
     if let Some(quantity) = text("quantity") {
         wanted.push(("quantity", Value::text(quantity)));
@@ -143,7 +191,7 @@ fn same(a: &Value, b: &Value) -> bool {
 fn against(task: &Task<'_>, role: &str, which: &Value) -> Result<Against, StepError> {
     let number = |key: &str| which.get(key).and_then(Value::as_f64);
     if let Some(value) = number("value") {
-        return Ok(Against::Value { value, error: number("error").unwrap_or(0.0), flags: String::new() });
+        return Ok(Against::Value { value, error: Some(number("error").unwrap_or(0.0)), flags: String::new() });
     }
     if number("lower").is_some() || number("upper").is_some() {
         return Ok(Against::Bracket { lower: number("lower"), upper: number("upper"), flags: String::new() });
@@ -160,17 +208,21 @@ fn against(task: &Task<'_>, role: &str, which: &Value) -> Result<Against, StepEr
                 rows.filter_map(|row| value.cells.number(row)).reduce(better)
             };
             let flags = (0..table.rows()).filter_map(|row| table.text("flags", row)).collect::<Vec<_>>().join(";");
-            return Ok(Against::Bracket { lower: best("lower", f64::max), upper: best("upper", f64::min), flags });
+            let (lower, upper) = (best("lower", f64::max), best("upper", f64::min));
+            if lower.is_none() && upper.is_none() {
+                return Err(StepError("the step has no bound".into()));
+            }
+            return Ok(Against::Bracket { lower, upper, flags });
         }
     }
     let found = take(task, role, which)?;
     let value = found.value.ok_or_else(|| StepError("the reference is not known".into()))?;
-    Ok(Against::Value { value, error: found.error.unwrap_or(0.0), flags: found.flags })
+    Ok(Against::Value { value, error: found.error, flags: found.flags })
 }
 
 fn judge(name: String, found: Found, against: Against, within: f64, precision: Option<f64>) -> Row {
     let (reference, reference_error, other_flags) = match &against {
-        Against::Value { value, error, flags } => (Some(*value), Some(*error), flags),
+        Against::Value { value, error, flags } => (Some(*value), *error, flags),
         Against::Bracket { lower, upper, flags } => {
             let near = found.value.and_then(|value| match (lower, upper) {
                 (Some(lower), _) if value < *lower => Some(*lower),
@@ -188,10 +240,7 @@ fn judge(name: String, found: Found, against: Against, within: f64, precision: O
             .is_some_and(|value| lower.is_none_or(|lower| value >= lower) && upper.is_none_or(|upper| value <= upper)),
         Against::Value { .. } => false,
     };
-    let combined = found.error.map(|error| {
-        let other = reference_error.unwrap_or(0.0);
-        (error * error + other * other).sqrt()
-    });
+    let combined = found.error.zip(reference_error).map(|(error, other)| (error * error + other * other).sqrt());
     let difference = found.value.zip(reference).map(|(value, reference)| if inside { 0.0 } else { value - reference });
     let deviation = match (difference, combined) {
         (Some(difference), Some(error)) if error > 0.0 => Some(difference / error),
@@ -201,7 +250,7 @@ fn judge(name: String, found: Found, against: Against, within: f64, precision: O
         }
         _ => None,
     };
-    if found.error.is_none() {
+    if combined.is_none() {
         flags.push("no-error");
     }
     if precision.is_some_and(|precision| found.error.is_some_and(|error| error > precision)) {
@@ -243,7 +292,7 @@ mod tests {
     }
 
     fn value(value: f64, error: f64) -> Against {
-        Against::Value { value, error, flags: String::new() }
+        Against::Value { value, error: Some(error), flags: String::new() }
     }
 
     fn verdict(found: Found, against: Against, precision: Option<f64>) -> (&'static str, Option<f64>) {
@@ -261,6 +310,8 @@ mod tests {
         assert_eq!(verdict(without, value(1.0, 0.0), None), ("undecided", None));
         assert_eq!(verdict(found(1.0, 0.0, ""), value(1.0, 0.0), None), ("agrees", Some(0.0)));
         assert_eq!(verdict(found(1.1, 0.0, ""), value(1.0, 0.0), None), ("disagrees", None));
+        let unknown = Against::Value { value: 9.0, error: None, flags: String::new() };
+        assert_eq!(verdict(found(1.0, 0.1, ""), unknown, None), ("undecided", None), "an unknown error is not zero");
     }
 
     #[test]

@@ -121,9 +121,6 @@ impl From<spinledger_ledger::LedgerError> for StepError {
     }
 }
 
-/// Nothing to check.
-pub(crate) fn no_check(_: &Checked<'_>, _: &mut Vec<Problem>) {}
-
 /// The step that a parameter names must be of one of some kinds.
 pub(crate) fn must_be_of(step: &Checked<'_>, parameter: &str, kinds: &[&str], problems: &mut Vec<Problem>) {
     let Some(point) = step.points.first() else { return };
@@ -133,6 +130,16 @@ pub(crate) fn must_be_of(step: &Checked<'_>, parameter: &str, kinds: &[&str], pr
         let message = format!("`{}` does {kind}", name.as_str().unwrap_or_default());
         let problem = Problem::at_value(&point.place(parameter), message);
         problems.push(problem.expected(format!("a step that does: {}", kinds.join(", "))));
+    }
+}
+
+/// The step that a parameter names, if any, must be one that gives tables.
+pub(crate) fn must_have_tables(step: &Checked<'_>, parameter: &str, problems: &mut Vec<Problem>) {
+    let named = step.points.first().and_then(|point| point.get(parameter));
+    let sampled = named.and_then(|name| step.kinds.get(name.as_str()?).map(|does| does == "sample"));
+    if sampled == Some(true) {
+        let with: Vec<&str> = KINDS.iter().filter(|kind| kind.split != Split::Chains).map(|kind| kind.does).collect();
+        must_be_of(step, parameter, &with, problems);
     }
 }
 

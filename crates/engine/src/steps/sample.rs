@@ -2,6 +2,7 @@
 
 use super::{Checked, Split, StepError, StepKind, Task, as_is};
 use spinledger_pipeline::Point;
+use spinledger_plan::blocks::{block_rows, most_rows};
 use spinledger_plan::dynamics::{nominal_sites, rule_lanes};
 use spinledger_plan::sample::Ask;
 use spinledger_terms::{
@@ -22,6 +23,12 @@ pub const KIND: StepKind = StepKind {
 
 /// Most sites of a lattice: they are numbered with 32 bits.
 const MOST_SITES: u64 = u32::MAX as u64;
+
+/// Most sweeps of a chain: doubles count no further.
+const MOST_SWEEPS: u64 = 1 << 53;
+
+/// Smallest temperature, and reciprocal of the largest.
+const SMALLEST: f64 = 1e-300;
 
 fn spec() -> StepSpec {
     let plugin = |of| Kind::Plugin { of };
@@ -99,12 +106,14 @@ fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
         ),
         _ => {}
     }
+    check_temperature(point, body, problems);
     let item = |kind: ItemKind, value: Option<&Value>| -> Option<Item> {
         Some(step.vocabulary.item(kind, value?.get("plugin")?.as_str()?)?.1.clone())
     };
     let Some(lattice) = item(ItemKind::Lattice, body.get("lattice")) else { return };
     let Some(model) = item(ItemKind::Model, body.get("model")) else { return };
     check_lattice(point, body, &lattice, &model, problems);
+    check_lengths(point, body, &lattice, problems);
     check_model(point, body, &lattice, &model, problems);
     if let Some(update) = body.get("update") {
         let listed = update.as_list().is_some();
@@ -137,6 +146,40 @@ fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
                 problems.push(Problem::at_value(&place, format!("the column `{}` is observed twice", column.name)));
             }
         }
+    }
+}
+
+/// Temperatures whose reciprocal cannot be told from infinity or zero.
+fn check_temperature(point: &Point, body: &Value, problems: &mut Vec<Problem>) {
+    for name in ["temperature", "inverse_temperature"] {
+        let value = body.get(name).and_then(Value::as_f64).filter(|value| *value != 0.0);
+        if value.is_some_and(|value| !(SMALLEST..=1.0 / SMALLEST).contains(&value)) {
+            let expected = if name == "temperature" {
+                format!("from {SMALLEST:e} to {:e}; infinite is `inverse_temperature: 0`", 1.0 / SMALLEST)
+            } else {
+                format!("0, or from {SMALLEST:e} to {:e}", 1.0 / SMALLEST)
+            };
+            let message = format!("no number has the reciprocal of this {}", name.replace('_', " "));
+            problems.push(Problem::at_value(&point.place(name), message).expected(expected));
+        }
+    }
+}
+
+/// Sweeps and blocks must be countable; what is more could not be run in a lifetime either.
+fn check_lengths(point: &Point, body: &Value, lattice: &Item, problems: &mut Vec<Problem>) {
+    let count = |name: &str| body.get(name).and_then(Value::as_i64).and_then(|n| u64::try_from(n).ok());
+    let (measure, every) = (count("measure").unwrap_or(1), count("every").unwrap_or(1));
+    let before = count("settle").unwrap_or(0).saturating_add(count("equilibrate").unwrap_or(0));
+    if measure.saturating_mul(every).saturating_add(before) > MOST_SWEEPS {
+        let message = "a chain would have more sweeps than can be counted";
+        let expected = format!("settle + equilibrate + measure * every of at most {MOST_SWEEPS}");
+        problems.push(Problem::at_value(&point.place("measure"), message).expected(expected));
+        return;
+    }
+    let most = most_rows(block_rows(nominal_sites(body.get("lattice").unwrap_or(&Value::Null), lattice), every));
+    if measure > most {
+        let message = "a chain would have more blocks than can be numbered";
+        problems.push(Problem::at_value(&point.place("measure"), message).expected(format!("at most {most}")));
     }
 }
 

@@ -1,0 +1,201 @@
+//! The end of a run: the closing table, verdicts, what is not settled, where the results are, the exit status.
+
+use crate::commands::{BROKEN, WELL};
+use crate::screen::Screen;
+use crate::text::{amount, columns, counted, duration, with_error};
+use serde_json::json;
+use spinledger_engine::planning::Product;
+use spinledger_engine::run::Outcome;
+use spinledger_engine::{Study, chain_text};
+use spinledger_ledger::Ledger;
+use spinledger_terms::Table;
+use std::collections::BTreeMap;
+use std::path::{Path, PathBuf};
+
+/// What a run took.
+pub(crate) struct Spent {
+    /// Seconds.
+    pub(crate) seconds: f64,
+    /// Attempted spin updates.
+    pub(crate) updates: f64,
+}
+
+/// Flagged rows of a step: how many, of how many, and how often each flag stands there.
+#[derive(Default)]
+struct Flagged {
+    rows: usize,
+    of: usize,
+    flags: BTreeMap<String, usize>,
+}
+
+/// Tells how a run ended; returns the exit status.
+pub(crate) fn close(
+    study: &Study,
+    ledger: &Ledger,
+    outcome: &Outcome,
+    out: &Path,
+    spent: Spent,
+    screen: &mut Screen,
+) -> u8 {
+    tell_counts(study, outcome, screen);
+    let mut well = outcome.counts.broken == 0 && outcome.left.is_empty() && outcome.stopped.is_none();
+    let mut verdicts = Vec::new();
+    let mut flagged = Vec::new();
+    for step in &study.pipeline.steps {
+        let Some(Product::Tables { key, .. }) = outcome.products.get(&step.name) else { continue };
+        match ledger.read_table(key, "main") {
+            Ok(table) => {
+                verdicts.extend(verdicts_of(&table));
+                flagged.extend(flagged_of(&table).map(|flagged| (step.name.as_str(), flagged)));
+            }
+            Err(error) => {
+                well = false;
+                screen.trouble(&format!("spinledger: {}: {}", step.name, chain_text(&error)));
+            }
+        }
+    }
+    well &= !tell_verdicts(&verdicts, screen);
+    tell_flags(&flagged, screen);
+    let counts = outcome.counts;
+    screen.line("");
+    if let Some(why) = &outcome.stopped {
+        screen.event(&json!({ "event": "warning", "text": format!("stopped early: {why}") }));
+        screen.trouble(&format!(
+            "stopped early: {why}\nwhat was computed so far is on record, and the same command goes on from there"
+        ));
+    } else {
+        let out: PathBuf = out.components().collect();
+        screen.line(&format!("results in {} in {}", out.display(), duration(spent.seconds)));
+        if spent.updates > 0.0 && spent.seconds > 0.0 {
+            let rate = amount(spent.updates / spent.seconds);
+            screen.line(&format!("{} spin updates, {rate} a second", amount(spent.updates)));
+        }
+    }
+    if counts.broken > 0 {
+        let parcels = counted(counts.broken, "parcel");
+        screen.line(&format!("{parcels} broken; all else is on record, and the same command goes on from there"));
+    }
+    screen.event(&json!({ "event": "finished", "computed": counts.computed, "reused": counts.reused,
+        "broken": counts.broken, "steps": outcome.steps, "out": out }));
+    if well { WELL } else { BROKEN }
+}
+
+fn tell_counts(study: &Study, outcome: &Outcome, screen: &mut Screen) {
+    let mut rows = vec![["step", "computed", "reused", "broken", ""].map(String::from).to_vec()];
+    for step in &study.pipeline.steps {
+        let Some(counts) = outcome.steps.get(&step.name) else { continue };
+        let left = if outcome.left.contains(&step.name) { "left due" } else { "" };
+        let numbers = [counts.computed, counts.reused, counts.broken].map(|n| n.to_string());
+        let mut row = vec![step.name.clone()];
+        row.extend(numbers);
+        row.push(left.to_owned());
+        rows.push(row);
+    }
+    screen.line("");
+    columns(&rows, &[1, 2, 3]).iter().for_each(|line| screen.line(line));
+}
+
+/// A row of a comparison.
+struct Verdict {
+    name: String,
+    /// Value and error, reference and its error, deviation.
+    numbers: [Option<f64>; 5],
+    verdict: String,
+    flags: String,
+}
+
+fn verdicts_of(table: &Table) -> Vec<Verdict> {
+    if table.column("verdict").is_none() || table.column("name").is_none() {
+        return Vec::new();
+    }
+    let verdict = |row: usize| {
+        let number = |name: &str| table.column(name).and_then(|c| c.cells.number(row));
+        let text = |name: &str| table.text(name, row).unwrap_or_default().to_owned();
+        Verdict {
+            name: text("name"),
+            numbers: ["value", "error", "reference", "reference_error", "deviation"].map(number),
+            verdict: text("verdict"),
+            flags: text("flags"),
+        }
+    };
+    (0..table.rows()).map(verdict).collect()
+}
+
+/// Returns whether anything disagrees.
+fn tell_verdicts(verdicts: &[Verdict], screen: &mut Screen) -> bool {
+    if verdicts.is_empty() {
+        return false;
+    }
+    let mut rows = vec![["result", "value", "reference", "deviation", "verdict"].map(String::from).to_vec()];
+    for Verdict { name, numbers, verdict, flags } in verdicts {
+        let [value, error, reference, reference_error, deviation] = *numbers;
+        screen.event(&json!({ "event": "verdict", "name": name, "value": value, "error": error,
+            "reference": reference, "deviation": deviation, "verdict": verdict, "flags": flags }));
+        rows.push(vec![
+            name.clone(),
+            value.map_or("unknown".to_owned(), |v| with_error(v, error)),
+            reference.map_or(String::new(), |v| with_error(v, reference_error)),
+            deviation.map_or(String::new(), |d| format!("{d:+.2}")),
+            verdict.clone(),
+        ]);
+    }
+    screen.line("");
+    let mut disagrees = false;
+    for (line, row) in columns(&rows, &[3]).iter().zip(&rows) {
+        let code = match row[4].as_str() {
+            "agrees" => "32",
+            "disagrees" => "31",
+            "undecided" => "33",
+            _ => "1",
+        };
+        if row[4] == "disagrees" {
+            disagrees = true;
+            screen.wrong(line, code);
+        } else {
+            let line = screen.tint(line, code);
+            screen.line(&line);
+        }
+    }
+    disagrees
+}
+
+fn flagged_of(table: &Table) -> Option<Flagged> {
+    let mut flagged = Flagged { of: table.rows(), ..Flagged::default() };
+    for row in 0..table.rows() {
+        let flags = table.text("flags", row).unwrap_or_default();
+        flagged.rows += usize::from(!flags.is_empty());
+        for flag in flags.split(';').filter(|flag| !flag.is_empty()) {
+            *flagged.flags.entry(flag.to_owned()).or_default() += 1;
+        }
+    }
+    (flagged.rows > 0).then_some(flagged)
+}
+
+/// What is not settled, in words.
+fn tell_flags(flagged: &[(&str, Flagged)], screen: &mut Screen) {
+    if !flagged.is_empty() {
+        screen.line("");
+    }
+    for (step, Flagged { rows, of, flags }) in flagged {
+        let text = screen.tint(&format!("not settled: {step}: {rows} of {of} rows"), "33");
+        screen.line(&text);
+        for (flag, count) in flags {
+            screen.line(&format!("  {count} {}", flag_words(flag)));
+        }
+    }
+}
+
+fn flag_words(flag: &str) -> &str {
+    match flag {
+        "not-equilibrated" => "not equilibrated (chains drift or disagree: equilibrate longer)",
+        "few-samples" => "with too few independent measurements (measure longer)",
+        "bad-fit" => "from a fit that does not fit",
+        "few-sizes" => "from too few sizes to test a correction",
+        "no-crossing" => "with sizes that do not cross in the range",
+        "poor-overlap" => "where histograms do not overlap",
+        "no-error" => "without an error",
+        "imprecise" => "less precise than asked for",
+        "not-finite" => "not finite",
+        other => other,
+    }
+}
