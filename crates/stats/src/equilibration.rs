@@ -20,7 +20,7 @@ use spinledger_numerics::special::normal_quantile;
 use spinledger_numerics::sum::{mean, sum_by};
 
 use crate::autocorrelation::{AutocorrelationParams, autocorrelation};
-use crate::rhat::{MOST_VALUES, rhat};
+use crate::rhat::{MOST_VALUES, rhat, rounding};
 
 /// Thresholds of [`equilibration`].
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -159,24 +159,20 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
     EquilibrationInfo { verdict, spread, deviation: worst.1 }
 }
 
-/// The values as normal scores of their ranks among all of them; equal values have equal scores. Zeros where nothing but rounding differs.
+/// The values as normal scores of their ranks among all of them; values that are equal up to rounding have equal scores.
 ///
 /// Ranks are taken in at most 2^17 values, every k-th of each chain, which moves a score by far less than its spread.
 fn scores(chains: &[&[f64]]) -> Vec<Vec<f64>> {
     let every = chains.iter().map(|chain| chain.len()).sum::<usize>().div_ceil(MOST_VALUES).max(1);
     let mut sorted: Vec<f64> = chains.iter().flat_map(|chain| chain.iter().step_by(every).copied()).collect();
     sorted.sort_unstable_by(f64::total_cmp);
-    let all = || chains.iter().flat_map(|chain| chain.iter().copied());
-    let (least, most) = (all().fold(f64::INFINITY, f64::min), all().fold(f64::NEG_INFINITY, f64::max));
-    if most - least <= 1e-13 * least.abs().max(most.abs()) {
-        return chains.iter().map(|chain| vec![0.0; chain.len()]).collect();
-    }
+    let tolerance = rounding(chains);
     let count = sorted.len();
     let table: Vec<f64> =
         (0..=2 * count).map(|place| normal_quantile((place + 1) as f64 / (2 * (count + 1)) as f64)).collect();
     let score = |value: &f64| {
-        let below = sorted.partition_point(|other| other < value);
-        let upto = below + sorted[below..].partition_point(|other| other <= value);
+        let below = sorted.partition_point(|other| *other < value - tolerance);
+        let upto = below + sorted[below..].partition_point(|other| *other <= value + tolerance);
         table[below + upto]
     };
     chains.iter().map(|chain| chain.iter().map(score).collect()).collect()
@@ -211,6 +207,10 @@ mod tests {
         assert!(scored[0][1] < scored[0][2] && scored[0][2] < scored[0][0] && scored[0][0] < scored[1][1]);
         assert_eq!(scored[0][2], scored[1][0]);
         assert!((scored[0][1] + scored[1][1]).abs() < 1e-12);
+        // Levels that repeat up to rounding, later ones always a little higher.
+        let drifting: Vec<f64> = (0..100).map(|k| f64::from(k % 3) + 1e-15 * f64::from(k)).collect();
+        let scored = scores(&[&drifting]);
+        assert!(scored[0].iter().zip(&scored[0][3..]).all(|(now, later)| now == later));
         assert_eq!(scores(&[&[0.1 + 0.2, 0.3]]), [[0.0, 0.0]]);
     }
 }

@@ -140,7 +140,7 @@ pub fn local(x: &[f64], y: &[f64], errors: &[f64], centre: f64, params: &LocalPa
         // Nothing can be tested, or nothing needs to be.
         let least = if params.smooth { last - first - 1 } else { 1 };
         for degree in least..=(last - first - 1).min(params.most_degree.max(1)) {
-            models.windows(right, |points| points >= degree + 1 && (!params.smooth || points == last - first), degree);
+            models.windows(right, |points| points > degree && (!params.smooth || points == last - first), degree);
         }
     } else {
         // A polynomial through as many points as it has coefficients fits whatever it is: a straight line through two

@@ -33,13 +33,20 @@ pub fn rhat(chains: &[&[f64]]) -> Option<f64> {
         halves.push(thinned(&chain[..half], every));
         halves.push(thinned(&chain[chain.len() - half..], every));
     }
-    let bulk = of_ranks(&halves)?;
+    let tolerance = rounding(chains);
+    let bulk = of_ranks(&halves, tolerance)?;
     let median = median(&halves);
     for value in halves.iter_mut().flatten() {
         *value = (*value - median).abs();
     }
     // Folding makes a two-valued series constant: then the first is all there is.
-    Some(of_ranks(&halves).map_or(bulk, |folded| bulk.max(folded)))
+    Some(of_ranks(&halves, tolerance).map_or(bulk, |folded| bulk.max(folded)))
+}
+
+/// Values no further apart than this are equal: 1e-10 of the largest. A running energy repeats its levels only up to rounding that
+/// accumulates, and ranks would blow up the drift of that into a drift of the chain.
+pub(crate) fn rounding(chains: &[&[f64]]) -> f64 {
+    1e-10 * chains.iter().flat_map(|chain| chain.iter()).fold(0.0f64, |most, value| most.max(value.abs()))
 }
 
 fn thinned(values: &[f64], every: usize) -> Vec<f64> {
@@ -54,19 +61,18 @@ fn median(parts: &[Vec<f64>]) -> f64 {
 }
 
 /// R-hat of the normal scores of the values; `None` when all are equal.
-fn of_ranks(parts: &[Vec<f64>]) -> Option<f64> {
+fn of_ranks(parts: &[Vec<f64>], tolerance: f64) -> Option<f64> {
     let mut places: Vec<(f64, usize, usize)> = Vec::new();
     for (number, part) in parts.iter().enumerate() {
         places.extend(part.iter().enumerate().map(|(index, value)| (*value, number, index)));
     }
-    // -0 and 0 are one value: adding 0 makes them so for the comparison, too.
-    places.sort_unstable_by(|a, b| (a.0 + 0.0).total_cmp(&(b.0 + 0.0)).then((a.1, a.2).cmp(&(b.1, b.2))));
+    places.sort_unstable_by(|a, b| a.0.total_cmp(&b.0).then((a.1, a.2).cmp(&(b.1, b.2))));
     let count = places.len() as f64;
     let mut scores: Vec<Vec<f64>> = parts.iter().map(|part| vec![0.0; part.len()]).collect();
     let mut start = 0;
     while start < places.len() {
         let value = places[start].0;
-        let end = start + places[start..].iter().take_while(|place| place.0 == value).count();
+        let end = start + places[start..].iter().take_while(|place| place.0 - value <= tolerance).count();
         if start == 0 && end == places.len() {
             return None;
         }
