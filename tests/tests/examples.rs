@@ -41,16 +41,15 @@ fn rust(folder: &Path) -> PathBuf {
     // The versions that are here already, so that no network is needed.
     std::fs::copy(top().join("Cargo.lock"), copy.join("Cargo.lock")).expect("the lock file can be copied");
     let cargo = std::env::var_os("CARGO").unwrap_or_else(|| "cargo".into());
+    // What is built stays for the next time; a plugin's author would find it in `target`.
+    let target = top().join("target/test-plugins/stranger");
     for command in ["test", "build"] {
-        succeed(
-            Command::new(&cargo)
-                .args([command, "--release", "--quiet"])
-                .current_dir(&copy)
-                .env_remove("CARGO_TARGET_DIR"),
-        );
+        let mut command_line = Command::new(&cargo);
+        command_line.args([command, "--release", "--quiet"]).current_dir(&copy);
+        succeed(command_line.env("CARGO_TARGET_DIR", &target));
     }
     let file = format!("{}minimal_lattice{}", std::env::consts::DLL_PREFIX, std::env::consts::DLL_SUFFIX);
-    copy.join("target/release").join(file)
+    target.canonicalize().expect("it was built").join("release").join(file)
 }
 
 /// The observable in C: its file is copied elsewhere and compiled by the command in its first comment.
