@@ -166,6 +166,36 @@ fn a_disk_that_fails_breaks_nothing() {
     assert!(desk.parquet("results") == fresh.parquet("results"));
 }
 
+/// Where entries were removed from the ledger, what needs them breaks and says how to have them made again; that computes what is missing and
+/// nothing else.
+#[test]
+fn removed_entries_are_made_again_on_advice() {
+    let desk = Desk::new();
+    desk.write("robust.yaml", &scanned(60));
+    desk.run_pipeline("robust.yaml", &[], 0);
+    let before = desk.parquet("results");
+    let mut removed = 0;
+    for name in "01234567".chars() {
+        for folder in std::fs::read_dir(desk.path(".spinledger/entries")).unwrap() {
+            let folder = folder.unwrap().path();
+            if folder.file_name().unwrap().to_str().unwrap().starts_with(name) {
+                std::fs::remove_dir_all(folder).unwrap();
+                removed += 1;
+            }
+        }
+    }
+    assert!(removed > 3);
+    std::fs::remove_dir_all(desk.path("results")).unwrap();
+    let events = desk.run_pipeline("robust.yaml", &[], 1);
+    let broken = events.broken();
+    assert!(!broken.is_empty() && broken.iter().all(|message| message.contains(".spinledger/journal")), "{broken:?}");
+    std::fs::remove_dir_all(desk.path(".spinledger/journal")).unwrap();
+    let events = desk.run_pipeline("robust.yaml", &[], 0);
+    let (computed, reused, _) = events.counts();
+    assert!(computed > 0 && reused > 0, "{computed} computed, {reused} reused");
+    assert!(before == desk.parquet("results"));
+}
+
 /// What stands in the way of results or ledger is told before anything is computed.
 #[test]
 fn folders_that_cannot_be_used_are_told_first() {

@@ -4,6 +4,7 @@ use crate::chain_text;
 use crate::steps::StepError;
 use spinledger_host::HostError;
 use spinledger_ledger::LedgerError;
+use std::path::Path;
 
 /// Why a parcel was not done.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -19,11 +20,28 @@ impl From<LedgerError> for Failure {
         if error.is_disk_full() {
             return Failure::Disk(format!("the disk is full: {}", chain_text(&error)));
         }
-        match error {
-            LedgerError::Write(_) => Failure::Disk(chain_text(&error)),
-            other => Failure::Broken(chain_text(&other)),
+        let text = chain_text(&error);
+        match &error {
+            LedgerError::Write(_) => Failure::Disk(text),
+            LedgerError::Absent { path } | LedgerError::Damaged { path, .. } | LedgerError::Parquet { path, .. } => {
+                Failure::Broken(text + &remedy(path))
+            }
+            _ => Failure::Broken(text),
         }
     }
+}
+
+/// How to have an entry made again of which something was removed or damaged: journals name what was published, and are believed; without them
+/// everything that is there is looked up. Empty where the file is not one of an entry.
+fn remedy(path: &Path) -> String {
+    let is_entries = |folder: &&Path| folder.file_name().is_some_and(|name| name == "entries");
+    let root = path.ancestors().find(is_entries).and_then(Path::parent);
+    let (Some(entry), Some(root)) = (path.parent(), root) else { return String::new() };
+    let (entry, journal) = (entry.display(), root.join("journal"));
+    format!(
+        "; to have it made again, remove {entry} and {} and run again: all else is then found where it is",
+        journal.display()
+    )
 }
 
 impl From<HostError> for Failure {
@@ -76,6 +94,9 @@ mod tests {
         let folder = tempfile::tempdir().unwrap();
         let ledger = Ledger::open(folder.path()).unwrap();
         let error = ledger.read_record(&spinledger_terms::Key([0; 32])).unwrap_err();
-        assert!(matches!(Failure::from(error), Failure::Broken(_)));
+        let Failure::Broken(text) = Failure::from(error) else { panic!("the disk is not to blame") };
+        let journal = folder.path().join("journal");
+        assert!(text.contains("is not on record; to have it made again, remove "), "{text}");
+        assert!(text.contains(&journal.display().to_string()), "{text}");
     }
 }

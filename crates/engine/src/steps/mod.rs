@@ -9,6 +9,7 @@ mod crossing;
 pub mod sample;
 pub(crate) mod settled;
 
+use crate::failure::Failure;
 use crate::job::{SeriesInput, TableInput};
 use crate::series::SeriesReader;
 use spinledger_ledger::Ledger;
@@ -94,12 +95,12 @@ impl Task<'_> {
     pub fn table(&self, role: &str, name: &str) -> Result<Table, StepError> {
         let input = self.tables.iter().find(|input| input.role == role);
         let input = input.ok_or_else(|| StepError(format!("there is no input for `{role}`")))?;
-        let record = self.ledger.read_record(&input.key).map_err(|e| StepError(e.to_string()))?;
+        let record = self.ledger.read_record(&input.key)?;
         if record.tables.iter().all(|table| table.name != name) {
             let known: Vec<&str> = record.tables.iter().map(|t| t.name.as_str()).collect();
             return Err(StepError(format!("the step has no table `{name}`; it has: {}", known.join(", "))));
         }
-        self.ledger.read_table(&input.key, name).map_err(|e| StepError(e.to_string()))
+        Ok(self.ledger.read_table(&input.key, name)?)
     }
 }
 
@@ -117,7 +118,9 @@ impl std::error::Error for StepError {}
 
 impl From<spinledger_ledger::LedgerError> for StepError {
     fn from(error: spinledger_ledger::LedgerError) -> Self {
-        StepError(crate::chain_text(&error))
+        // With what can be done about it.
+        let (Failure::Broken(text) | Failure::Disk(text)) = Failure::from(error);
+        StepError(text)
     }
 }
 
