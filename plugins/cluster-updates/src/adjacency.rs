@@ -1,7 +1,6 @@
 //! Neighbours with the pair energy over each bond.
 
-use spinledger_sdk::Problem;
-use std::borrow::Cow;
+use spinledger_sdk::{Neighbours, Problem};
 use std::collections::HashMap;
 
 /// Most kinds of bonds that get rows of precomputed thresholds.
@@ -14,73 +13,38 @@ pub(crate) struct Tie {
     pub(crate) strength: f64,
 }
 
-/// Neighbours of all free sites. Bonds of a site with itself are left out: no symmetry changes their energy.
+impl From<(u16, f64)> for Tie {
+    fn from((table, strength): (u16, f64)) -> Self {
+        Tie { table, strength }
+    }
+}
+
+/// Neighbours of all free sites, with their bonds sorted into kinds. Bonds of a site with itself are left out: no symmetry changes their
+/// energy.
 pub(crate) struct Adjacency<'a> {
-    /// Where the neighbours of each free site begin.
-    pub(crate) offsets: Cow<'a, [u32]>,
-    pub(crate) neighbours: Cow<'a, [u32]>,
+    pub(crate) neighbours: Neighbours<'a>,
     /// The kinds of bonds; empty where there are too many of them.
     pub(crate) ties: Vec<Tie>,
     /// Kind of each neighbour's bond; empty where there is one kind or too many.
     pub(crate) tie: Vec<u16>,
-    /// Table of each neighbour's bond.
-    tables: Cow<'a, [u16]>,
-    /// Factor on each neighbour's energy; empty where all are 1.
-    strengths: Cow<'a, [f64]>,
 }
 
 impl<'a> Adjacency<'a> {
     /// Cost: one pass over the adjacency.
     pub(crate) fn new(problem: &Problem<'a>) -> Self {
-        let (graph, energy) = (&problem.graph, &problem.energy);
-        let mut adjacency = Adjacency {
-            offsets: Cow::Borrowed(graph.offsets),
-            neighbours: Cow::Borrowed(graph.neighbours),
-            ties: Vec::new(),
-            tie: Vec::new(),
-            tables: Cow::Borrowed(energy.neighbour_tables),
-            strengths: Cow::Borrowed(energy.neighbour_strengths),
-        };
-        if energy.pair_tables.is_empty() {
-            adjacency.offsets = Cow::Owned(vec![0; graph.sites + 1]);
-            adjacency.neighbours = Cow::Borrowed(&[]);
-        } else if graph.bonds.iter().any(|b| b.i == b.j) {
-            adjacency.take_out_selves(problem);
-        }
-        adjacency.sort_out_ties();
-        adjacency
-    }
-
-    fn take_out_selves(&mut self, problem: &Problem<'a>) {
-        let (graph, energy) = (&problem.graph, &problem.energy);
-        let mut offsets = vec![0];
-        let (mut neighbours, mut tables, mut strengths) = (Vec::new(), Vec::new(), Vec::new());
-        for site in 0..graph.sites {
-            for entry in graph.range(site).filter(|&e| graph.neighbours[e] as usize != site) {
-                neighbours.push(graph.neighbours[entry]);
-                tables.push(energy.neighbour_tables[entry]);
-                strengths.extend(energy.neighbour_strengths.get(entry));
-            }
-            offsets.push(neighbours.len() as u32);
-        }
-        self.offsets = Cow::Owned(offsets);
-        self.neighbours = Cow::Owned(neighbours);
-        self.tables = Cow::Owned(tables);
-        self.strengths = Cow::Owned(strengths);
-    }
-
-    fn sort_out_ties(&mut self) {
-        (self.ties, self.tie) = kinds(self.neighbours.len(), |entry| self.tie_of(entry));
+        let neighbours = Neighbours::new(problem);
+        let (ties, tie) = kinds(neighbours.sites.len(), |entry| neighbours.tie(entry).into());
+        Adjacency { neighbours, ties, tie }
     }
 
     /// Whether every bond has its own threshold computed when it is looked at.
     pub(crate) fn is_varied(&self) -> bool {
-        self.ties.is_empty() && !self.neighbours.is_empty()
+        self.ties.is_empty() && !self.neighbours.sites.is_empty()
     }
 
-    /// The bond behind an entry of `neighbours`.
+    /// The bond behind an entry of the neighbours.
     pub(crate) fn tie_of(&self, entry: usize) -> Tie {
-        Tie { table: self.tables[entry], strength: self.strengths.get(entry).copied().unwrap_or(1.0) }
+        self.neighbours.tie(entry).into()
     }
 }
 

@@ -24,15 +24,15 @@ pub(crate) struct Even {
 impl Even {
     /// The same neighbours in the same order, if they can be told so. Cost: one pass over the adjacency.
     pub(crate) fn new(adjacency: &Adjacency<'_>) -> Option<Self> {
-        let degree = *adjacency.offsets.get(1)? as usize;
+        let degree = *adjacency.neighbours.offsets.get(1)? as usize;
         let one_kind = adjacency.tie.is_empty() && !adjacency.is_varied();
-        let alike = adjacency.offsets.windows(2).all(|pair| (pair[1] - pair[0]) as usize == degree);
+        let alike = adjacency.neighbours.offsets.windows(2).all(|pair| (pair[1] - pair[0]) as usize == degree);
         if !one_kind || !alike || !(1..=MOST).contains(&degree) {
             return None;
         }
-        let mut even = Even { degree, steps: Vec::new(), rows: Vec::with_capacity(adjacency.offsets.len()) };
+        let mut even = Even { degree, steps: Vec::new(), rows: Vec::with_capacity(adjacency.neighbours.offsets.len()) };
         let mut last = 0;
-        for (site, neighbours) in adjacency.neighbours.chunks_exact(degree).enumerate() {
+        for (site, neighbours) in adjacency.neighbours.sites.chunks_exact(degree).enumerate() {
             // A neighbour twice would be looked at twice before it is added once.
             if (1..degree).any(|k| neighbours[..k].contains(&neighbours[k])) {
                 return None;

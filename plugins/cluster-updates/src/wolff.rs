@@ -227,10 +227,10 @@ impl<'a> Chain<'a> {
             let row = rows.row(state as usize);
             // Summed by site first: sites follow each other faster than one long chain of additions would let them.
             let mut step = 0.0;
-            let mut entry = self.adjacency.offsets[site as usize] as usize;
-            let end = self.adjacency.offsets[site as usize + 1] as usize;
+            let mut entry = self.adjacency.neighbours.offsets[site as usize] as usize;
+            let end = self.adjacency.neighbours.offsets[site as usize + 1] as usize;
             while entry < end {
-                let neighbours = &self.adjacency.neighbours[entry..end.min(entry + Halves::FEW)];
+                let neighbours = &self.adjacency.neighbours.sites[entry..end.min(entry + Halves::FEW)];
                 let words = words.few(neighbours.len());
                 for (place, (&neighbour, &word)) in neighbours.iter().zip(words).enumerate() {
                     let mark = marks[neighbour as usize];

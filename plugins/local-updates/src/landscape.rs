@@ -1,7 +1,6 @@
 //! The energy as a function of the state of one site, all others held.
 
-use spinledger_sdk::{Error, FactorTable, Problem, Result, View};
-use std::borrow::Cow;
+use spinledger_sdk::{Error, FactorTable, Neighbours, Problem, Result, View};
 
 /// States of one chain of a group: site s is byte `s * lanes + lane`.
 #[derive(Clone, Copy)]
@@ -34,15 +33,7 @@ impl<'a> States<'a> {
 pub(crate) struct Landscape<'a> {
     /// Graph and Hamiltonian.
     pub(crate) problem: Problem<'a>,
-    /// Where the neighbours of each free site begin.
-    offsets: Cow<'a, [u32]>,
-    neighbours: Cow<'a, [u32]>,
-    /// Pair table of each neighbour, rows by the site's own state.
-    tables: Cow<'a, [u16]>,
-    /// Factor on each neighbour's energy; empty where all are 1.
-    strengths: Cow<'a, [f64]>,
-    /// Energies of each free site's bonds with itself, `states` each; empty where there are none.
-    selves: Vec<f64>,
+    around: Neighbours<'a>,
 }
 
 impl<'a> Landscape<'a> {
@@ -51,56 +42,10 @@ impl<'a> Landscape<'a> {
     /// # Errors
     /// Where spins are not discrete.
     pub(crate) fn new(problem: Problem<'a>) -> Result<Self> {
-        let (graph, energy) = (&problem.graph, &problem.energy);
-        if energy.states == 0 {
+        if problem.energy.states == 0 {
             return Err(Error::new("this rule serves discrete spins, not vectors"));
         }
-        let mut landscape = Landscape {
-            offsets: Cow::Borrowed(graph.offsets),
-            neighbours: Cow::Borrowed(graph.neighbours),
-            tables: Cow::Borrowed(energy.neighbour_tables),
-            strengths: Cow::Borrowed(energy.neighbour_strengths),
-            selves: Vec::new(),
-            problem,
-        };
-        if landscape.problem.energy.pair_tables.is_empty() {
-            // Not coupled pairwise at all: the adjacency says nothing about the energy.
-            landscape.offsets = Cow::Owned(vec![0; landscape.problem.graph.sites + 1]);
-            landscape.neighbours = Cow::Borrowed(&[]);
-            landscape.tables = Cow::Borrowed(&[]);
-            landscape.strengths = Cow::Borrowed(&[]);
-        } else if landscape.problem.graph.bonds.iter().any(|b| b.i == b.j) {
-            landscape.take_out_selves();
-        }
-        Ok(landscape)
-    }
-
-    fn take_out_selves(&mut self) {
-        let (graph, energy) = (&self.problem.graph, &self.problem.energy);
-        let q = energy.states;
-        let mut selves = vec![0.0; graph.sites * q];
-        for (number, bond) in graph.bonds.iter().enumerate().filter(|(_, b)| b.i == b.j) {
-            let table = &energy.pair_tables[energy.bond_tables[number] as usize * q * q..][..q * q];
-            let strength = energy.bond_strengths.get(number).copied().unwrap_or(1.0);
-            for (state, own) in selves[bond.i as usize * q..][..q].iter_mut().enumerate() {
-                *own += strength * table[state * q + state];
-            }
-        }
-        let mut offsets = vec![0];
-        let (mut neighbours, mut tables, mut strengths) = (Vec::new(), Vec::new(), Vec::new());
-        for site in 0..graph.sites {
-            for entry in graph.range(site).filter(|&e| graph.neighbours[e] as usize != site) {
-                neighbours.push(graph.neighbours[entry]);
-                tables.push(energy.neighbour_tables[entry]);
-                strengths.extend(energy.neighbour_strengths.get(entry));
-            }
-            offsets.push(neighbours.len() as u32);
-        }
-        self.offsets = Cow::Owned(offsets);
-        self.neighbours = Cow::Owned(neighbours);
-        self.tables = Cow::Owned(tables);
-        self.strengths = Cow::Owned(strengths);
-        self.selves = selves;
+        Ok(Landscape { around: Neighbours::new(&problem), problem })
     }
 
     /// Number of states of a spin.
@@ -110,16 +55,12 @@ impl<'a> Landscape<'a> {
 
     /// Neighbours of a free site, itself aside.
     pub(crate) fn neighbours(&self, site: usize) -> &[u32] {
-        &self.neighbours[self.range(site)]
+        &self.around.sites[self.around.range(site)]
     }
 
     /// Pair table and strength of each of these neighbours.
     pub(crate) fn ties(&self, site: usize) -> impl Iterator<Item = (u16, f64)> {
-        self.range(site).map(|entry| (self.tables[entry], self.strengths.get(entry).copied().unwrap_or(1.0)))
-    }
-
-    fn range(&self, site: usize) -> std::ops::Range<usize> {
-        self.offsets[site] as usize..self.offsets[site + 1] as usize
+        self.around.range(site).map(|entry| self.around.tie(entry))
     }
 
     /// Energies of a pair table, rows by own state.
@@ -137,8 +78,8 @@ impl<'a> Landscape<'a> {
             let strength = energy.site_strengths.get(site).copied().unwrap_or(1.0);
             own = strength * energy.site_tables[energy.site_class[site] as usize * energy.states + state];
         }
-        if !self.selves.is_empty() {
-            own += self.selves[site * energy.states + state];
+        if !self.around.selves.is_empty() {
+            own += self.around.selves[site * energy.states + state];
         }
         own
     }
@@ -157,11 +98,11 @@ impl<'a> Landscape<'a> {
         let q = self.states();
         let (from, to) = (from as usize, to as usize);
         let mut change = self.own(site, to) - self.own(site, from);
-        for entry in self.range(site) {
-            let other = states.at(self.neighbours[entry] as usize) as usize;
-            let table = self.table(self.tables[entry]);
-            let step = table[to * q + other] - table[from * q + other];
-            change += self.strengths.get(entry).copied().unwrap_or(1.0) * step;
+        for entry in self.around.range(site) {
+            let other = states.at(self.around.sites[entry] as usize) as usize;
+            let (table, strength) = self.around.tie(entry);
+            let table = self.table(table);
+            change += strength * (table[to * q + other] - table[from * q + other]);
         }
         self.visit_factors(site, |table, sites, slot| {
             let (rest, unit) = rest_of(q, sites, slot, states);

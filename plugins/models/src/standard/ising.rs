@@ -24,7 +24,13 @@ impl Model for Ising {
                 "J: a number, or a mapping from bond class to number",
             )
             .unit("energy"),
-            Parameter::optional("field", kinds::NUMBER, "0", "h: an energy, or in tesla where the pipeline gives a moment").unit("field"),
+            Parameter::optional(
+                "field",
+                kinds::NUMBER,
+                "0",
+                "h: an energy, or in tesla where the pipeline gives a moment",
+            )
+            .unit("field"),
         ],
         states: 2,
         offers: &[
