@@ -22,7 +22,7 @@ const STEPS: &[Step] = &[
     [
         "plaquettes",
         "{ plugin: test-grid, size: [4, 3] }",
-        "{ plugin: test-four-spin, coupling: 0.75 }",
+        "{ plugin: test-four-spin, coupling: 0.8 }",
         "probe-factors",
         "[energy, magnetisation, probe-mean]",
         "temperature: [1.7, 3]",
@@ -30,7 +30,7 @@ const STEPS: &[Step] = &[
     [
         "plaquettes-by-standard-rules",
         "{ plugin: square, size: [4, 3] }",
-        "{ plugin: test-four-spin, coupling: 0.75 }",
+        "{ plugin: test-four-spin, coupling: 0.8 }",
         "[heat-bath, metropolis]",
         "[energy, magnetisation, probe-mean]",
         "temperature: [1.7, 3]",
@@ -189,7 +189,7 @@ fn plaquettes() -> PairSystem {
     let at = |x: u32, y: u32| x % 4 * 3 + y % 3;
     let face = |x: u32, y: u32| (0, vec![at(x, y), at(x + 1, y), at(x + 1, y + 1), at(x, y + 1)]);
     let factors = (0..4).flat_map(|x| (0..3).map(move |y| (x, y))).map(|(x, y)| face(x, y)).collect();
-    PairSystem { factors, factor_tables: vec![product(4, 0.75)], ..spins(12) }
+    PairSystem { factors, factor_tables: vec![product(4, 0.8)], ..spins(12) }
 }
 
 /// Pairs and triples of neighbours on a ring of seven.
