@@ -8,6 +8,7 @@
 //! - [`jackknife`]: functions of means from blocks, with covariances
 //! - [`rhat`], [`equilibration`], [`discard`]: whether chains have forgotten where they began
 //! - [`fit`], [`local`]: least squares with covariance, nonlinear least squares, local polynomials
+//! - [`reweight`]: curves over temperature from multiple histograms
 //! - [`crossing`]: where curves of several sizes cross, and where that tends
 //!
 //! ```
@@ -34,6 +35,7 @@ pub mod fit;
 pub mod jackknife;
 pub mod local;
 pub mod matrix;
+pub mod reweight;
 pub mod rhat;
 
 mod autocovariance;
