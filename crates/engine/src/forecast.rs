@@ -122,7 +122,7 @@ fn analysis(study: &Study, step: &Step, index: &Index, products: &mut Products, 
     if forecast.due != Some(0) {
         return;
     }
-    let line = if kind.split == Split::Points {
+    let line = if matches!(kind.split, Split::Points | Split::Groups) {
         gather::preimage(kind, &parcels, index).and_then(|preimage| index.get(&spinledger_terms::Key::of(&preimage)))
     } else {
         parcels.first().and_then(|parcel| index.get(&parcel.key))

@@ -3,7 +3,7 @@
 use super::references::{references, remove};
 use super::{Product, Products, Series};
 use crate::job::{AnalyseJob, SeriesFacts, SeriesInput, TableInput};
-use crate::steps::{Split, StepKind};
+use crate::steps::{Split, StepKind, WITHIN_GROUP};
 use crate::study::Study;
 use spinledger_pipeline::{Expansion, Step};
 use spinledger_plan::analysis::{self, InputRef};
@@ -27,6 +27,9 @@ pub struct Parcel {
     pub columns: Vec<(String, String, Value)>,
 }
 
+/// Name, unit and value of constant columns.
+type Columns = Vec<(String, String, Value)>;
+
 /// Plans an analysis step from the products of the steps that it needs; None where one that it needs as a whole is broken.
 pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &Products) -> Option<AnalysisPlan> {
     let mut parameters = Value::Map(step.body.clone());
@@ -43,8 +46,8 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
     let units = &study.pipeline.units;
     let pipeline = Some(ContentHash(*blake3::hash(study.pipeline.text.as_bytes()).as_bytes()));
     let make = |series: Vec<SeriesInput>, tables: Vec<TableInput>, columns: Vec<(String, String, Value)>| {
-        let split = kind.split == Split::Points;
-        let facts = series.iter().map(|s| facts_value(s, !split)).collect();
+        let whole = kind.split == Split::Whole;
+        let facts = series.iter().map(|s| facts_value(s, whole)).collect();
         let facts = Value::map([
             ("energy_unit", Value::text(units.energy_unit())),
             ("series", Value::List(facts)),
@@ -79,6 +82,16 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
             .collect();
         return Some(AnalysisPlan { parcels });
     }
+    if kind.split == Split::Groups {
+        let (role, name) = roles.first()?;
+        let Some(Product::Series(points)) = products.get(name) else { return None };
+        let points: Vec<&Series> = points.iter().map(Option::as_ref).collect::<Option<_>>()?;
+        let parcels = groups(&points).into_iter().map(|(columns, members)| {
+            let series = members.into_iter().map(|series| series_input(study, role, series)).collect();
+            Some(make(series, Vec::new(), columns))
+        });
+        return Some(AnalysisPlan { parcels: parcels.collect() });
+    }
     let (mut series, mut tables) = (Vec::new(), Vec::new());
     for (role, name) in &roles {
         match products.get(name)? {
@@ -94,6 +107,25 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
         }
     }
     Some(AnalysisPlan { parcels: vec![Some(make(series, tables, Vec::new()))] })
+}
+
+/// Constant columns and members of each group, groups in the order of their first points, members by temperature: the order of points is the scan's, on
+/// which no key may depend.
+fn groups<'a>(points: &[&'a Series]) -> Vec<(Columns, Vec<&'a Series>)> {
+    let mut groups: Vec<(Columns, Vec<&Series>)> = Vec::new();
+    for point in points {
+        let own: Columns =
+            point.columns.iter().filter(|(name, _, _)| !WITHIN_GROUP.contains(&name.as_str())).cloned().collect();
+        match groups.iter_mut().find(|(columns, _)| *columns == own) {
+            Some((_, members)) => members.push(point),
+            None => groups.push((own, vec![point])),
+        }
+    }
+    for (_, members) in &mut groups {
+        let place = |series: &Series| series.point.dynamics.inverse_temperature;
+        members.sort_by(|a, b| place(a).total_cmp(&place(b)).then_with(|| a.key.cmp(&b.key)));
+    }
+    groups
 }
 
 fn series_input(study: &Study, role: &str, series: &Series) -> SeriesInput {

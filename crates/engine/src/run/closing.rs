@@ -82,7 +82,7 @@ impl Run<'_> {
             return Ok(());
         }
         let gathered = match kind.split {
-            Split::Points => gather::gather(kind, &parcels, self.ledger, &mut self.index, self.text),
+            Split::Points | Split::Groups => gather::gather(kind, &parcels, self.ledger, &mut self.index, self.text),
             _ => Ok(self
                 .index
                 .get(&parcels[0].key)

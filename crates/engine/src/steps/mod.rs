@@ -19,6 +19,9 @@ use std::collections::BTreeMap;
 /// All kinds.
 pub const KINDS: &[&StepKind] = &[&sample::KIND, &averages::KIND, &crossing::KIND, &compare::KIND];
 
+/// Columns of a point that do not tell one group from another.
+pub(crate) const WITHIN_GROUP: [&str; 2] = ["temperature", "inverse_temperature"];
+
 /// How the work of a step is split into parcels.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Split {
@@ -26,6 +29,8 @@ pub enum Split {
     Chains,
     /// One parcel for each point of the series that it is of.
     Points,
+    /// One parcel for all points that differ in temperature and nothing else. Its tables have a column `temperature` of their own.
+    Groups,
     /// One parcel.
     Whole,
 }
