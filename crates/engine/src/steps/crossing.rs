@@ -1,5 +1,7 @@
 //! `crossing`: where the curves of several sizes cross, and where that tends as sizes grow.
 
+mod reweighted;
+
 use super::settled::{self, Chains};
 use super::{Checked, Split, StepError, StepKind, Task, as_is, flags_text};
 use crate::job::SeriesInput;
@@ -22,7 +24,7 @@ fn spec() -> StepSpec {
             "the ordering temperature from where the curves of several sizes cross, extrapolated with a correction term"
                 .into(),
         fields: vec![
-            Field::new("of", Kind::Step {}, "the sample step").required(),
+            Field::new("of", Kind::Step {}, "the sample step, or curves of a reweight step").required(),
             Field::new("quantity", Kind::words(&["binder"]), "what crosses").default(Value::text("binder")),
             Field::new("one_over_nu", Kind::POSITIVE, "1/nu, if it is known; from the slopes otherwise"),
             Field::new(
@@ -36,7 +38,7 @@ fn spec() -> StepSpec {
 }
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
-    super::must_be_of(step, "of", &["sample"], problems);
+    super::must_be_of(step, "of", &["sample", "reweight"], problems);
 }
 
 /// Columns that the step concludes over.
@@ -46,30 +48,24 @@ const CONCLUDED: [&str; 8] =
 /// Scan columns that tell one set of curves from another.
 type Rest = Vec<(String, Value)>;
 
+/// Curves of one set: by size, with what is doubtful about them.
+#[derive(Default)]
+struct Set {
+    rest: Rest,
+    curves: Vec<Curve>,
+    /// For each curve: places that no histogram covers.
+    uncovered: Vec<Vec<f64>>,
+    flags: Vec<String>,
+}
+
 fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
-    // Series that differ in anything else that is scanned (a field, a coupling) are curves of their own.
-    let mut sets: BTreeMap<String, (Rest, Vec<&SeriesInput>)> = BTreeMap::new();
-    for series in task.series {
-        let rest: Vec<(String, Value)> =
-            series.columns.iter().filter(|(name, _)| !CONCLUDED.contains(&name.as_str())).cloned().collect();
-        let label = Value::Map(rest.iter().cloned().collect()).canonical();
-        sets.entry(label).or_insert_with(|| (rest, Vec::new())).1.push(series);
-    }
+    let (sets, unit) = if task.series.is_empty() {
+        reweighted::sets(task)?
+    } else {
+        (from_series(task)?, task.series[0].facts.temperature_unit.clone())
+    };
     let mut out = Tables::default();
-    for (rest, series) in sets.into_values() {
-        let mut flags = Vec::new();
-        let points = series.len();
-        let mut curves: BTreeMap<u64, Vec<(f64, Vec<f64>, f64)>> = BTreeMap::new();
-        for input in series {
-            let (size, temperature) = place(input)?;
-            let reader = task.read(input);
-            let discarded = settled::discarded(&reader)?;
-            flags.extend(settled::flags(&reader, discarded, points)?);
-            let (value, replicates) = cumulant(&reader, discarded.rows)?;
-            curves.entry(size).or_default().push((temperature, replicates, value));
-            (task.progress)();
-        }
-        let curves: Vec<Curve> = curves.into_iter().map(|(size, points)| curve(size, points)).collect();
+    for mut set in sets {
         let number = |name: &str| task.parameters.get(name).and_then(Value::as_f64);
         let mut params = CrossingParams {
             inverse_nu: number("one_over_nu"),
@@ -80,16 +76,50 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         if let Some(exponent) = number("correction") {
             params.corrections = vec![exponent];
         }
-        let found = crossing(&curves, &params).map_err(|e| StepError(crate::chain_text(&e)))?;
-        flags.extend(found.flags.iter().map(|flag| match flag {
-            CrossingFlag::NoCrossing => "no-crossing",
-            CrossingFlag::BadFit => "bad-fit",
-            _ => "few-sizes",
+        let found = crossing(&set.curves, &params).map_err(|e| StepError(crate::chain_text(&e)))?;
+        set.flags.extend(found.flags.iter().map(|flag| match flag {
+            CrossingFlag::NoCrossing => "no-crossing".to_owned(),
+            CrossingFlag::BadFit => "bad-fit".to_owned(),
+            _ => "few-sizes".to_owned(),
         }));
-        out.add(&rest, &found, &flags_text(&flags));
+        if reweighted::overlap_is_poor(&set, &found) {
+            set.flags.push("poor-overlap".to_owned());
+        }
+        let flags: Vec<&str> = set.flags.iter().map(String::as_str).collect();
+        out.add(&set.rest, &found, &flags_text(&flags));
+        (task.progress)();
     }
-    let unit = task.series.first().map_or("", |s| s.facts.temperature_unit.as_str());
-    Ok(out.tables(unit))
+    Ok(out.tables(&unit))
+}
+
+/// Curves whose points are series.
+fn from_series(task: &Task<'_>) -> Result<Vec<Set>, StepError> {
+    // Series that differ in anything else that is scanned (a field, a coupling) are curves of their own.
+    let mut sets: BTreeMap<String, (Rest, Vec<&SeriesInput>)> = BTreeMap::new();
+    for series in task.series {
+        let rest: Vec<(String, Value)> =
+            series.columns.iter().filter(|(name, _)| !CONCLUDED.contains(&name.as_str())).cloned().collect();
+        let label = Value::Map(rest.iter().cloned().collect()).canonical();
+        sets.entry(label).or_insert_with(|| (rest, Vec::new())).1.push(series);
+    }
+    let mut out = Vec::new();
+    for (rest, series) in sets.into_values() {
+        let mut flags = Vec::new();
+        let points = series.len();
+        let mut curves: BTreeMap<u64, Vec<(f64, Vec<f64>, f64)>> = BTreeMap::new();
+        for input in series {
+            let (size, temperature) = place(input)?;
+            let reader = task.read(input);
+            let discarded = settled::discarded(&reader)?;
+            flags.extend(settled::flags(&reader, discarded, points)?.into_iter().map(str::to_owned));
+            let (value, replicates) = cumulant(&reader, discarded.rows)?;
+            curves.entry(size).or_default().push((temperature, replicates, value));
+            (task.progress)();
+        }
+        let curves = curves.into_iter().map(|(size, points)| curve(size, points)).collect();
+        out.push(Set { rest, curves, flags, uncovered: Vec::new() });
+    }
+    Ok(out)
 }
 
 /// Size and temperature of a series.

@@ -6,6 +6,7 @@
 mod averages;
 mod compare;
 mod crossing;
+mod reweight;
 pub mod sample;
 pub(crate) mod settled;
 
@@ -17,7 +18,7 @@ use spinledger_terms::{Path, Problem, StepSpec, Table, Value, Vocabulary};
 use std::collections::BTreeMap;
 
 /// All kinds.
-pub const KINDS: &[&StepKind] = &[&sample::KIND, &averages::KIND, &crossing::KIND, &compare::KIND];
+pub const KINDS: &[&StepKind] = &[&sample::KIND, &averages::KIND, &reweight::KIND, &crossing::KIND, &compare::KIND];
 
 /// Columns of a point that do not tell one group from another.
 pub(crate) const WITHIN_GROUP: [&str; 2] = ["temperature", "inverse_temperature"];

@@ -166,7 +166,7 @@ fn of_length() -> Vec<Member> {
 }
 
 /// x^n by multiplication, the same bits everywhere.
-fn power(x: f64, n: u32) -> f64 {
+pub(crate) fn power(x: f64, n: u32) -> f64 {
     let square = x * x;
     match n {
         1 => x,
