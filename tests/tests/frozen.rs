@@ -76,6 +76,8 @@ fn pipeline() -> String {
     steps += &step("sizes", square, "ising", "wolff", both, sizes);
     steps += "  crossing: { does: crossing, of: sizes }
   crossing-known: { does: crossing, of: sizes, one_over_nu: 1, correction: 1.75 }
+  curves: { does: reweight, of: sizes, temperature: { from: 2, to: 2.5, count: 11 } }
+  crossing-curves: { does: crossing, of: curves }
   compare:
     does: compare
     items:
