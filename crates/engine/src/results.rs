@@ -62,6 +62,13 @@ impl Results {
             }
         }
         let (folder, writes) = (folder.to_owned(), writes.clone());
+        // A run that was killed may have left files half-written, hidden beside those that they would have become.
+        let files = before.keys().filter(|file| stays_inside(file));
+        let folders: BTreeSet<PathBuf> = files
+            .filter_map(|file| folder.join(file).parent().map(Path::to_owned))
+            .chain([folder.to_owned()])
+            .collect();
+        folders.iter().for_each(|folder| writes.clear_leftovers(folder));
         Results { folder, writes, before, now: BTreeMap::new(), warning }
     }
 
