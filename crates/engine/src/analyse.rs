@@ -2,9 +2,9 @@
 
 use crate::failure::Failure;
 use crate::job::{AnalyseJob, Entry, Report};
+use crate::line::Line;
 use crate::program;
 use crate::steps::{self, Task};
-use crate::worker::Line;
 use spinledger_ledger::{Claim, Draft, Input, Ledger, Payload};
 use spinledger_terms::Key;
 use std::time::Instant;

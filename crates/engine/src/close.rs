@@ -2,8 +2,8 @@
 
 use crate::failure::Failure;
 use crate::job::{CloseJob, Entry, Report, SeriesNote};
+use crate::line::Line;
 use crate::program;
-use crate::worker::Line;
 use spinledger_ledger::{
     Constant, Draft, Input, Ledger, Piece as FilePiece, assemble, combine, content_of_block, content_of_entry,
 };

@@ -14,6 +14,7 @@ mod failure;
 pub mod forecast;
 mod gather;
 pub mod job;
+mod line;
 mod loaded;
 pub mod planning;
 mod pool;

@@ -2,7 +2,7 @@
 
 use crate::failure::Failure;
 use crate::job::Report;
-use crate::worker::Line;
+use crate::line::Line;
 use spinledger_host::{Energy, Graph, Loader, Observer, Sampler, Services};
 use spinledger_numerics::random::StreamKey;
 use spinledger_plan::dynamics::{Dynamics, ItemRef};

@@ -8,9 +8,9 @@ mod course;
 
 use crate::failure::Failure;
 use crate::job::{Entry, Report, SampleJob, SeriesNote};
+use crate::line::Line;
 use crate::loaded::{Loaded, Problem};
 use crate::program;
-use crate::worker::Line;
 use course::Course;
 use spinledger_host::{Observer, measure_all};
 use spinledger_ledger::{BlockData, ChainPlace, Claim, ColumnData, Draft, Ledger, Payload};

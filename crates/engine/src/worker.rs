@@ -7,65 +7,20 @@ use crate::analyse;
 use crate::close;
 use crate::failure::Failure;
 use crate::job::{Job, Report};
+use crate::line::Line;
 use crate::loaded::Loaded;
 use crate::sampling;
 use rustix::fd::OwnedFd;
 use spinledger_ledger::Ledger;
-use std::io::{BufRead, BufReader, Write};
+use std::io::{BufRead, BufReader};
 use std::os::unix::net::UnixStream;
 use std::path::Path;
 use std::sync::atomic::{AtomicBool, Ordering};
-use std::sync::{Arc, Mutex, mpsc};
-use std::time::{Duration, Instant};
+use std::sync::{Arc, mpsc};
+use std::time::Duration;
 
 /// How long a plugin may take to come back after the runner has gone.
 const GRACE: Duration = Duration::from_secs(10);
-/// How often progress is reported.
-const REPORT_EVERY: Duration = Duration::from_millis(200);
-
-/// The way back to the runner.
-#[derive(Clone)]
-pub struct Line {
-    stream: Arc<Mutex<UnixStream>>,
-    last: Arc<Mutex<(Instant, u64)>>,
-    stop: Arc<AtomicBool>,
-}
-
-impl Line {
-    /// Sends a report. Where the runner is gone nothing is left to tell it to.
-    pub fn send(&self, report: &Report) {
-        let Ok(mut text) = serde_json::to_vec(report) else { return };
-        text.push(b'\n');
-        if let Ok(mut stream) = self.stream.lock()
-            && stream.write_all(&text).is_err()
-        {
-            self.stop.store(true, Ordering::Relaxed);
-        }
-    }
-
-    /// Tells that the work goes on; sent at most a few times a second.
-    pub fn progress(&self, updates: u64) {
-        let Ok(mut last) = self.last.lock() else { return };
-        last.1 += updates;
-        if last.0.elapsed() >= REPORT_EVERY {
-            let updates = std::mem::take(&mut last.1);
-            last.0 = Instant::now();
-            drop(last);
-            self.send(&Report::Progress { updates });
-        }
-    }
-
-    /// Updates that no report has told yet.
-    pub fn untold(&self) -> u64 {
-        self.last.lock().map_or(0, |mut last| std::mem::take(&mut last.1))
-    }
-
-    /// Whether to come to an end.
-    pub fn stopping(&self) -> bool {
-        self.stop.load(Ordering::Relaxed)
-    }
-}
-
 /// Takes orders until there are no more.
 ///
 /// # Errors
@@ -76,11 +31,7 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
     rustix::stdio::dup2_stdin(&nothing)?;
     let stream = UnixStream::from(orders);
     let stop = Arc::new(AtomicBool::new(false));
-    let line = Line {
-        stream: Arc::new(Mutex::new(stream.try_clone()?)),
-        last: Arc::new(Mutex::new((Instant::now(), 0))),
-        stop: stop.clone(),
-    };
+    let line = Line::new(stream.try_clone()?, stop.clone());
     let (send, receive) = mpsc::channel();
     let back = line.clone();
     std::thread::spawn(move || listen(stream, &stop, send, &back));

@@ -1,9 +1,9 @@
 //! The course of a group of chains: where it begins or goes on, sweeps, saved states, the clock.
 
 use crate::failure::Failure;
+use crate::line::Line;
 use crate::loaded::Problem;
 use crate::saved;
-use crate::worker::Line;
 use spinledger_host::{Sampler, ordered_start, random_start};
 use spinledger_ledger::{ClaimGuard, Ledger, SavedState};
 use spinledger_numerics::random::StreamKey;
