@@ -1,4 +1,4 @@
-//! One analysis parcel: tables from series and tables.
+//! One analysis parcel: tables and files from series and tables.
 
 use crate::failure::Failure;
 use crate::job::{AnalyseJob, Entry, Report};
@@ -28,7 +28,7 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     let progress = || line.progress(0);
     let task =
         Task { parameters: &job.parameters, series: &job.series, tables: &job.tables, ledger, progress: &progress };
-    let tables = (kind.analyse)(&task)?;
+    let output = (kind.analyse)(&task)?;
     let series = job.series.iter().map(|s| Input { name: s.role.clone(), key: s.key, content: s.content });
     let tables_in = job.tables.iter().map(|t| Input { name: t.role.clone(), key: t.key, content: t.content });
     provenance.inputs = series.chain(tables_in).collect();
@@ -37,8 +37,11 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     provenance.pipeline = job.pipeline;
     let seconds = provenance.seconds;
     let mut draft = Draft::new(&job.preimage, &job.does, provenance);
-    for (name, table) in tables {
+    for (name, table) in output.tables {
         draft = draft.table(&name, Payload::Table(table));
+    }
+    for (name, bytes) in output.files {
+        draft = draft.file(&name, bytes);
     }
     let published = ledger.publish(draft)?;
     let entry = Entry {

@@ -76,6 +76,18 @@ pub enum LedgerError {
         /// What is wrong with it.
         what: String,
     },
+    /// A figure or page has no place for the key of its entry.
+    #[error("`{name}` is not the kind of file that its name says: it cannot carry the key of its entry")]
+    Unfit {
+        /// Its name.
+        name: String,
+    },
+    /// The file is of no kind that carries keys.
+    #[error("{} is no Parquet, SVG, PNG or HTML file", path.display())]
+    Foreign {
+        /// The file.
+        path: PathBuf,
+    },
     /// A file could not be read or written as Parquet.
     #[error("cannot {attempted} {}", path.display())]
     Parquet {

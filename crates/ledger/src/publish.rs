@@ -5,6 +5,7 @@ use crate::error::LedgerError;
 use crate::index::ChainPlace;
 use crate::ledger::Ledger;
 use crate::record::{OtherFile, Provenance, RECORD_FORMAT, Record, TableRecord};
+use crate::stamp::stamped;
 use crate::tables::block::{BlockData, write_block};
 use crate::tables::table::write_table;
 use spinledger_terms::{ContentHash, Key, Table};
@@ -220,7 +221,10 @@ impl Ledger {
         }
         let mut others = Vec::with_capacity(draft.files.len());
         for (name, bytes) in draft.files {
-            others.push(OtherFile { content: content_of_file(&bytes), size: bytes.len() as u64, name: name.clone() });
+            let content = content_of_file(&bytes);
+            let bytes = stamped(&name, bytes, &draft.key)?;
+            let hash = ContentHash(blake3::hash(&bytes).into());
+            others.push(OtherFile { content, bytes: hash, size: bytes.len() as u64, name: name.clone() });
             files.push((name, bytes));
         }
         let Draft { key, preimage, kind, chain, provenance, .. } = draft;

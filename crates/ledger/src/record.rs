@@ -52,8 +52,10 @@ pub struct TableRecord {
 pub struct OtherFile {
     /// Its name, with extension.
     pub name: String,
-    /// BLAKE3 of its bytes: of such a file content and bytes are one.
+    /// BLAKE3 of its bytes without the key of the entry.
     pub content: ContentHash,
+    /// BLAKE3 of the file.
+    pub bytes: ContentHash,
     /// Its length in bytes.
     pub size: u64,
 }

@@ -1,10 +1,11 @@
 //! Whether an entry still is what its record says.
 
-use crate::content::{content_of_entry, content_of_file, content_of_table};
+use crate::content::{content_of_entry, content_of_table};
 use crate::error::LedgerError;
 use crate::ledger::Ledger;
 use crate::record::Record;
-use crate::tables::table::{file_key, read_table};
+use crate::stamp::file_key;
+use crate::tables::table::read_table;
 use spinledger_terms::Key;
 use std::fs;
 use std::io::ErrorKind;
@@ -50,7 +51,7 @@ impl Ledger {
                 Err(error) if error.kind() == ErrorKind::NotFound => return Err(LedgerError::Absent { path }),
                 Err(error) => return Err(LedgerError::read("read", &path)(error)),
             };
-            if bytes.len() as u64 != file.size || content_of_file(&bytes) != file.content {
+            if bytes.len() as u64 != file.size || *blake3::hash(&bytes).as_bytes() != file.bytes.0 {
                 return Err(LedgerError::damaged(&path, "its bytes are not those that were recorded"));
             }
         }

@@ -258,15 +258,18 @@ fn entries_hold_other_files() {
     let ledger = Ledger::open(folder.path()).unwrap();
     let draft =
         |bytes: &str| Draft::new("{\"figure\":1}", "chart", Provenance::default()).file("main.svg", bytes.into());
-    let first = ledger.publish(draft("<svg/>")).unwrap();
-    assert!(first.fresh && !ledger.publish(draft("<svg/>")).unwrap().fresh);
-    assert!(matches!(ledger.publish(draft("<svg></svg>")), Err(LedgerError::Differs { .. })));
+    let first = ledger.publish(draft("<svg></svg>")).unwrap();
+    assert!(first.fresh && !ledger.publish(draft("<svg></svg>")).unwrap().fresh);
+    assert!(matches!(ledger.publish(draft("<svg>1</svg>")), Err(LedgerError::Differs { .. })));
     let key = Key::of("{\"figure\":1}");
     let record = ledger.verify(&key).unwrap();
-    assert_eq!(
-        (record.files[0].name.as_str(), record.files[0].size, record.line().note),
-        ("main.svg", 6, String::new())
-    );
+    let path = ledger.entry(&key).join("main.svg");
+    let written = std::fs::read_to_string(&path).unwrap();
+    assert_eq!(written, format!("<svg>\n<metadata>spinledger.key {key}</metadata></svg>"), "it names its entry");
+    assert_eq!(spinledger_ledger::file_key(&path).unwrap(), Some(key));
+    let file = &record.files[0];
+    assert_eq!((file.name.as_str(), file.size, record.line().note), ("main.svg", written.len() as u64, String::new()));
+    assert_eq!(file.content.0, *blake3::hash(b"<svg></svg>").as_bytes(), "the key is no part of the content");
     std::fs::write(ledger.entry(&key).join("main.svg"), "<svg?>").unwrap();
     assert!(matches!(ledger.verify(&key), Err(LedgerError::Damaged { .. })));
     for name in ["main", "main.parquet", "record.json", "../x.svg", "a.b.svg", ".svg"] {

@@ -3,7 +3,7 @@
 use super::references::{references, remove};
 use super::{Product, Products, Series};
 use crate::job::{AnalyseJob, SeriesFacts, SeriesInput, TableInput};
-use crate::steps::{Split, StepKind, WITHIN_GROUP};
+use crate::steps::{Split, StepKind, Surroundings, WITHIN_GROUP};
 use crate::study::Study;
 use spinledger_pipeline::{Expansion, Step};
 use spinledger_plan::analysis::{self, InputRef};
@@ -38,7 +38,7 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
     {
         parameters = point.body();
     }
-    (kind.complete)(&mut parameters);
+    (kind.complete)(&mut parameters, &Surroundings { pipeline: &study.pipeline });
     let roles = references(&step.spec.fields, &parameters);
     for (role, _) in &roles {
         remove(&mut parameters, role);

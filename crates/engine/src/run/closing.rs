@@ -9,6 +9,7 @@ use crate::steps::Split;
 use crate::{gather, program};
 use spinledger_terms::{ContentHash, Key, Value};
 use std::collections::BTreeSet;
+use std::path::PathBuf;
 
 impl Run<'_> {
     /// Closes the complete points of a sample step: series on record, files in place.
@@ -98,12 +99,13 @@ impl Run<'_> {
             }
             Err(Failure::Disk(message)) => return Err(Stop(message)),
         };
-        let files: Vec<(String, &str)> = record
-            .tables
-            .iter()
-            .map(|table| match table.name.as_str() {
-                "main" => (format!("{}.parquet", step.name), "main"),
-                other => (format!("{}.{other}.parquet", step.name), other),
+        // As it is called in the results, and where it stands.
+        let tables = record.tables.iter().map(|table| format!("{}.parquet", table.name));
+        let files: Vec<(String, PathBuf)> = tables
+            .chain(record.files.iter().map(|file| file.name.clone()))
+            .map(|name| {
+                let path = self.ledger.entry(&key).join(&name);
+                (format!("{}.{}", step.name, name.strip_prefix("main.").unwrap_or(&name)), path)
             })
             .collect();
         let due: Vec<&str> = files
@@ -112,8 +114,8 @@ impl Run<'_> {
             .map(|(file, _)| file.as_str())
             .collect();
         self.results.announce(due.iter().map(|file| (step.name.as_str(), *file, key)))?;
-        for (file, table) in files.iter().filter(|(file, _)| due.contains(&file.as_str())) {
-            self.results.copy(&step.name, file, &key, &content, &self.ledger.table_path(&key, table))?;
+        for (file, path) in files.iter().filter(|(file, _)| due.contains(&file.as_str())) {
+            self.results.copy(&step.name, file, &key, &content, path)?;
         }
         self.outcome.products.insert(step.name.clone(), Product::Tables { key, content });
         self.complete(number, true);

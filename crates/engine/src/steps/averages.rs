@@ -5,11 +5,11 @@ pub(crate) mod family;
 mod table;
 
 use super::settled::{self, Chains};
-use super::{Checked, Split, StepError, StepKind, Task, as_is};
+use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use family::{Facts, Member, Quantity, families};
 use spinledger_stats::autocorrelation::AutocorrelationParams;
 use spinledger_stats::equilibration::{EquilibrationInfo, Verdict};
-use spinledger_terms::{Field, Kind, Problem, StepSpec, Table};
+use spinledger_terms::{Field, Kind, Problem, StepSpec};
 use table::Row;
 
 /// The kind.
@@ -32,7 +32,7 @@ fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     super::must_be_of(step, "of", &["sample"], problems);
 }
 
-fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     let series = task.series.first().ok_or_else(|| StepError("there is no series".into()))?;
     let reader = task.read(series);
     let facts = Facts {
@@ -103,5 +103,6 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         ("main".into(), table::main(&rows)),
         ("wide".into(), table::wide(&rows, &series.facts.energy_unit)),
         ("autocorrelation".into(), correlations.table()),
-    ])
+    ]
+    .into())
 }

@@ -1,6 +1,6 @@
 //! `compare`: results against published values, other results, or brackets.
 
-use super::{Checked, Split, StepError, StepKind, Task, flags_text};
+use super::{Checked, Output, Split, StepError, StepKind, Surroundings, Task, flags_text};
 use spinledger_terms::{Cells, Column, Field, Kind, Problem, StepSpec, Table, Value};
 
 /// The kind.
@@ -80,7 +80,7 @@ fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
 }
 
 /// Names rows after the step and quantity, which do not enter the key otherwise.
-fn complete(parameters: &mut Value) {
+fn complete(parameters: &mut Value, _: &Surroundings<'_>) {
     let count = parameters.get("items").and_then(Value::as_list).map_or(0, <[Value]>::len);
     for item in 0..count {
         let at = |name: &str| parameters.at(&format!("items.{item}.{name}")).and_then(Value::as_str).map(str::to_owned);
@@ -126,7 +126,7 @@ struct Row {
     flags: String,
 }
 
-fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     let items = task.parameters.get("items").and_then(Value::as_list).unwrap_or_default();
     let mut rows = Vec::new();
     for (number, item) in items.iter().enumerate() {
@@ -138,7 +138,7 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         let number = |key: &str| item.get(key).and_then(Value::as_f64);
         rows.push(judge(name.clone(), found, against, number("within").unwrap_or(3.0), number("precision")));
     }
-    Ok(vec![("main".into(), table(&rows))])
+    Ok(vec![("main".into(), table(&rows))].into())
 }
 
 /// The one row that is meant.

@@ -3,7 +3,7 @@
 mod reweighted;
 
 use super::settled::{self, Chains};
-use super::{Checked, Split, StepError, StepKind, Task, as_is, flags_text};
+use super::{Checked, Output, Split, StepError, StepKind, Task, as_is, flags_text};
 use crate::job::SeriesInput;
 use crate::series::SeriesReader;
 use spinledger_numerics::sum::CompensatedSum;
@@ -58,7 +58,7 @@ struct Set {
     flags: Vec<String>,
 }
 
-fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     let (sets, unit) = if task.series.is_empty() {
         reweighted::sets(task)?
     } else {
@@ -89,7 +89,7 @@ fn analyse(task: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
         out.add(&set.rest, &found, &flags_text(&flags));
         (task.progress)();
     }
-    Ok(out.tables(&unit))
+    Ok(out.tables(&unit).into())
 }
 
 /// Curves whose points are series.

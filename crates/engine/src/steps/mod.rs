@@ -14,6 +14,7 @@ use crate::failure::Failure;
 use crate::job::{SeriesInput, TableInput};
 use crate::series::SeriesReader;
 use spinledger_ledger::Ledger;
+use spinledger_pipeline::Pipeline;
 use spinledger_terms::{Path, Problem, StepSpec, Table, Value, Vocabulary};
 use std::collections::BTreeMap;
 
@@ -49,13 +50,34 @@ pub struct StepKind {
     /// Checks a step beyond the types of its parameters.
     pub check: fn(&Checked<'_>, &mut Vec<Problem>),
     /// Completes parameters with what the step's surroundings tell, before they enter a key.
-    pub complete: fn(&mut Value),
-    /// Makes tables, the first of them `main`. Not for sampling.
-    pub analyse: fn(&Task<'_>) -> Result<NamedTables, StepError>,
+    pub complete: fn(&mut Value, &Surroundings<'_>),
+    /// Makes tables, the first of them `main`, and files. Not for sampling.
+    pub analyse: fn(&Task<'_>) -> Result<Output, StepError>,
 }
 
 /// Tables by name, in order.
 pub type NamedTables = Vec<(String, Table)>;
+
+/// What an analysis gives.
+#[derive(Debug, Default)]
+pub struct Output {
+    /// Its tables.
+    pub tables: NamedTables,
+    /// Figures and pages by name with extension, in order: `main.svg` becomes `<step>.svg` in the results.
+    pub files: Vec<(String, Vec<u8>)>,
+}
+
+impl From<NamedTables> for Output {
+    fn from(tables: NamedTables) -> Self {
+        Output { tables, files: Vec::new() }
+    }
+}
+
+/// Where a step stands.
+pub struct Surroundings<'a> {
+    /// The pipeline that it is part of.
+    pub pipeline: &'a Pipeline,
+}
 
 /// The kind of a name.
 pub fn kind(does: &str) -> Option<&'static StepKind> {
@@ -153,7 +175,7 @@ pub(crate) fn must_have_tables(step: &Checked<'_>, parameter: &str, problems: &m
 }
 
 /// Nothing to complete.
-pub(crate) fn as_is(_: &mut Value) {}
+pub(crate) fn as_is(_: &mut Value, _: &Surroundings<'_>) {}
 
 /// Joins flags as tables have them: sorted, without repetition, `;` between.
 pub fn flags_text(flags: &[&str]) -> String {

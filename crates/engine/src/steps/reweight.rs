@@ -2,7 +2,7 @@
 
 use super::averages::family::{Facts, Member, families, power};
 use super::settled::{self, Chains};
-use super::{Checked, NamedTables, Split, StepError, StepKind, Task, as_is, flags_text};
+use super::{Checked, Output, Split, StepError, StepKind, Task, as_is, flags_text};
 use crate::job::SeriesInput;
 use spinledger_stats::autocorrelation::{AutocorrelationParams, autocorrelation};
 use spinledger_stats::jackknife::replicate_error;
@@ -105,7 +105,7 @@ impl Plan {
     }
 }
 
-fn analyse(task: &Task<'_>) -> Result<NamedTables, StepError> {
+fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     let first = task.series.first().ok_or_else(|| StepError("there is no series".into()))?;
     let temperatures: Vec<f64> = task
         .parameters
@@ -150,7 +150,7 @@ fn analyse(task: &Task<'_>) -> Result<NamedTables, StepError> {
     let runs: Vec<(f64, f64)> = task.series.iter().zip(&runs).map(independent).collect();
     let curves =
         Curves { plan: &plan, found: &found, temperatures: &temperatures, inverse: &inverse, runs: &runs, sites, unit };
-    Ok(vec![("main".into(), curves.main(&flags)), ("replicates".into(), curves.replicates(&flags))])
+    Ok(vec![("main".into(), curves.main(&flags)), ("replicates".into(), curves.replicates(&flags))].into())
 }
 
 /// What is known of a series before it is binned.

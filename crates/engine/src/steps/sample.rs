@@ -1,13 +1,11 @@
 //! `sample`: time series from chains.
 
-use super::{Checked, Split, StepError, StepKind, Task, as_is};
+use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use spinledger_pipeline::Point;
 use spinledger_plan::blocks::{block_rows, most_rows};
 use spinledger_plan::dynamics::{nominal_sites, rule_lanes};
 use spinledger_plan::sample::Ask;
-use spinledger_terms::{
-    Field, Item, ItemKind, Kind, Problem, ScanSpec, StepSpec, Table, Trait, Value, Vocabulary, nearest,
-};
+use spinledger_terms::{Field, Item, ItemKind, Kind, Problem, ScanSpec, StepSpec, Trait, Value, Vocabulary, nearest};
 use std::collections::BTreeSet;
 
 /// The kind.
@@ -62,7 +60,7 @@ fn spec() -> StepSpec {
     }
 }
 
-fn analyse(_: &Task<'_>) -> Result<Vec<(String, Table)>, StepError> {
+fn analyse(_: &Task<'_>) -> Result<Output, StepError> {
     Err(StepError("sampling is not an analysis".into()))
 }
 

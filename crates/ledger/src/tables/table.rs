@@ -68,7 +68,7 @@ pub fn read_table(path: &Path) -> Result<Table, LedgerError> {
 ///
 /// # Errors
 /// Where the file is absent or is not a Parquet file.
-pub fn file_key(path: &Path) -> Result<Option<Key>, LedgerError> {
+pub(crate) fn parquet_key(path: &Path) -> Result<Option<Key>, LedgerError> {
     Ok(key_of(open(path)?.metadata().file_metadata()))
 }
 
