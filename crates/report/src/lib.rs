@@ -16,6 +16,7 @@
 //!     y: Axis::new("square", "J").logarithmic(),
 //!     lines: vec![Line { label: "x²".to_owned(), points, style: Style::Joined }],
 //!     marks: vec![],
+//!     notes: vec![],
 //! };
 //! let drawing = chart.draw(Frame::WIDE);
 //! assert!(drawing.svg().starts_with("<svg"));
@@ -45,7 +46,7 @@ mod ticks;
 pub use chart::{Axis, Chart, Frame, Line, Mark, MarkAxis, Point, Scale, Style};
 pub use drawing::Drawing;
 pub use number::{Shown, shown};
-pub use page::{Again, Answer, Content, Figure, Page, Reference, TableView, Verdict, flag_words};
+pub use page::{Again, Answer, Content, Figure, Flagged, Page, Reference, TableView, Verdict, flag_words};
 pub use picture::{Picture, Shades, Sites, Walls};
 
 /// A drawing could not be painted.

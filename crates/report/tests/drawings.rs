@@ -158,7 +158,7 @@ proptest::proptest! {
         let axis = if logarithmic { Axis::new("x", "").logarithmic() } else { Axis::new("x", "") };
         let style = [Style::Points, Style::Joined, Style::Curve, Style::Band][style];
         let lines = vec![Line { label: "any".to_owned(), points, style }];
-        let chart = Chart { title: "any".to_owned(), x: axis.clone(), y: axis, lines, marks: vec![] };
+        let chart = Chart { title: "any".to_owned(), x: axis.clone(), y: axis, lines, marks: vec![], notes: vec![] };
         let drawing = chart.draw(Frame::NARROW);
         let svg = drawing.svg();
         proptest::prop_assert!(roxmltree::Document::parse(&svg).is_ok());

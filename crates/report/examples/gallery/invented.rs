@@ -47,6 +47,7 @@ pub(crate) fn crossing(sizes: &[u32], points: usize, style: Style) -> Chart {
             Mark { on: MarkAxis::X, value: 2.2895, error: 0.0012, label: "found 2.2895 ± 0.0012".to_owned() },
             Mark { on: MarkAxis::X, value: 2.2885, error: 0.0, label: "reference 2.2885".to_owned() },
         ],
+        notes: Vec::new(),
     }
 }
 
@@ -72,6 +73,7 @@ pub(crate) fn powers() -> Chart {
             Line { label: "measured".to_owned(), points: points.to_vec(), style: Style::Points },
         ],
         marks: vec![Mark { on: MarkAxis::Y, value: 100.0, error: 12.0, label: "a level of interest".to_owned() }],
+        notes: Vec::new(),
     }
 }
 
@@ -83,6 +85,7 @@ pub(crate) fn awkward() -> Vec<(&'static str, Chart)> {
         y: Axis::new("y", "J"),
         lines: vec![Line { label: "only".to_owned(), points, style }],
         marks: Vec::new(),
+        notes: Vec::new(),
     };
     let at = |x, y| Point { x, y, error: None };
     let mut list = vec![
@@ -322,7 +325,7 @@ pub(crate) fn page() -> Page {
             answer("quench.critical_temperature", 2.31, Some(0.05), 0.43, Verdict::Undecided, &["not-equilibrated", "poor-overlap"]),
             Answer {
                 unit: String::new(),
-                reference: Reference::Bracket { lower: 0.4, upper: 0.5 },
+                reference: Reference::Bracket { lower: Some(0.4), upper: Some(0.5) },
                 ..answer("bounded.inverse_temperature", 0.436_8, Some(0.000_2), 0.0, Verdict::Agrees, &[])
             },
         ],
@@ -338,7 +341,7 @@ pub(crate) fn page() -> Page {
             table,
             file: "means.parquet".to_owned(),
             key: "0f3a9c1d77e2b4460f3a9c1d77e2b4460f3a9c1d77e2b4460f3a9c1d77e2b446".to_owned(),
-            most_rows: 60,
+            most_rows: 60, flagged: None,
             record: record("means"),
         }],
         again: vec![
@@ -395,6 +398,7 @@ pub(crate) fn nasty() -> Page {
             file: text(),
             key: text(),
             most_rows: 10,
+            flagged: None,
             record: record.clone(),
         }],
         again: vec![Again { words: text(), command: text() }],

@@ -97,6 +97,9 @@ impl Chart {
         for mark in &self.marks {
             words += &format!(" Marked: {} at {}.", mark.label, shown(mark.value, Some(mark.error), 7).text());
         }
+        for note in &self.notes {
+            words += &format!(" {note}.");
+        }
         words
     }
 }

@@ -131,7 +131,7 @@ fn notes(chart: &Chart, x: &Scaled, y: &Scaled) -> Vec<String> {
         }
     }
     let points = |n: usize| if n == 1 { "1 point".to_owned() } else { format!("{n} points") };
-    let mut notes = Vec::new();
+    let mut notes = chart.notes.clone();
     if endless > 0 {
         notes.push(format!("{} left out: not a finite number", points(endless)));
     }
@@ -141,7 +141,7 @@ fn notes(chart: &Chart, x: &Scaled, y: &Scaled) -> Vec<String> {
     if outside > 0 {
         notes.push(format!("{} outside the range shown", points(outside)));
     }
-    if drawn == 0 && notes.is_empty() {
+    if drawn == 0 && endless + not_positive + outside == 0 {
         notes.push("no points".to_owned());
     }
     notes

@@ -22,6 +22,8 @@ pub struct Chart {
     pub lines: Vec<Line>,
     /// Reference lines.
     pub marks: Vec<Mark>,
+    /// What a reader must know about the points, in small letters below; what the chart itself leaves out is added.
+    pub notes: Vec<String>,
 }
 
 /// An axis.

@@ -75,11 +75,14 @@ fn against(answer: &Answer) -> String {
             format!("Held against {}{exact}{source}.", shown(value, Some(error), 12).text())
         }
         Reference::Bracket { lower, upper } => {
-            format!(
-                "Held against the bracket from {} to {}{source}.",
-                shown(lower, None, 10).text(),
-                shown(upper, None, 10).text()
-            )
+            let end = |x: f64| shown(x, None, 10).text();
+            let bracket = match (lower, upper) {
+                (Some(lower), Some(upper)) => format!("the bracket from {} to {}", end(lower), end(upper)),
+                (Some(lower), None) => format!("the lower bound {}", end(lower)),
+                (None, Some(upper)) => format!("the upper bound {}", end(upper)),
+                (None, None) => "a bracket without ends".to_owned(),
+            };
+            format!("Held against {bracket}{source}.")
         }
     };
     match (answer.deviation, answer.reference) {

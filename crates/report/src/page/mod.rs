@@ -96,9 +96,9 @@ pub enum Reference {
     /// Rigorous bounds.
     Bracket {
         /// Not below this.
-        lower: f64,
+        lower: Option<f64>,
         /// Not above this.
-        upper: f64,
+        upper: Option<f64>,
     },
 }
 
@@ -148,8 +148,34 @@ pub struct TableView {
     pub key: String,
     /// At most this many rows are shown; the page says how many there are.
     pub most_rows: usize,
+    /// Where the table is an extract: what the flags of the whole say.
+    pub flagged: Option<Flagged>,
     /// What made it; Null for none.
     pub record: Value,
+}
+
+/// What the flags of a table say.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct Flagged {
+    /// Each flag with the number of rows that have it, most first.
+    pub flags: Vec<(String, usize)>,
+    /// Rows in all.
+    pub rows: usize,
+}
+
+impl Flagged {
+    /// Counts the flags in a table's column `flags`.
+    pub fn of(table: &Table) -> Self {
+        let mut counts = std::collections::BTreeMap::<&str, usize>::new();
+        for row in 0..table.rows() {
+            for flag in table.text("flags", row).unwrap_or("").split(';').filter(|f| !f.is_empty()) {
+                *counts.entry(flag).or_default() += 1;
+            }
+        }
+        let mut flags: Vec<(String, usize)> = counts.into_iter().map(|(f, n)| (f.to_owned(), n)).collect();
+        flags.sort_by(|a, b| b.1.cmp(&a.1).then(a.0.cmp(&b.0)));
+        Flagged { flags, rows: table.rows() }
+    }
 }
 
 /// A step on the way to the same digits.

@@ -36,8 +36,9 @@ pub(super) fn write(out: &mut String, number: usize, view: &TableView) {
         out.push_str("</tr>\n");
     }
     out.push_str("</tbody></table></div>\n<p class=\"below\">");
-    if most < rows {
-        let _ = write!(out, "{most} of {} shown. ", counted(rows, "row", "rows"));
+    let whole = view.flagged.as_ref().map_or(rows, |whole| whole.rows.max(rows));
+    if most < whole {
+        let _ = write!(out, "{most} of {} shown. ", counted(whole, "row", "rows"));
     } else if rows == 0 {
         out.push_str("No rows. ");
     }
@@ -50,19 +51,6 @@ pub(super) fn write(out: &mut String, number: usize, view: &TableView) {
     out.push_str("</p>\n");
     fold(out, "Record of this table", &view.record);
     out.push_str("</section>\n");
-}
-
-/// What flags a table has, with how many rows each, most first.
-pub(super) fn flags(table: &Table) -> Vec<(String, usize)> {
-    let mut counts = std::collections::BTreeMap::<&str, usize>::new();
-    for row in 0..table.rows() {
-        for flag in table.text("flags", row).unwrap_or("").split(';').filter(|f| !f.is_empty()) {
-            *counts.entry(flag).or_default() += 1;
-        }
-    }
-    let mut counts: Vec<(String, usize)> = counts.into_iter().map(|(f, n)| (f.to_owned(), n)).collect();
-    counts.sort_by(|a, b| b.1.cmp(&a.1).then(a.0.cmp(&b.0)));
-    counts
 }
 
 /// How the cells of a column are shown.
@@ -173,6 +161,8 @@ mod tests {
         assert_eq!(cells(&table, "tau"), ["1.2346", "123.46", "0.5"]);
         assert_eq!(cells(&table, "size"), ["8", "\u{2212}3", unknown]);
         assert_eq!(cells(&table, "flags")[0], "bad fit; new thing");
-        assert_eq!(flags(&table), [("bad-fit".to_owned(), 1), ("new-thing".to_owned(), 1)]);
+        let flagged = super::super::Flagged::of(&table);
+        assert_eq!(flagged.flags, [("bad-fit".to_owned(), 1), ("new-thing".to_owned(), 1)]);
+        assert_eq!(flagged.rows, 3);
     }
 }

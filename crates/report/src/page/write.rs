@@ -2,7 +2,7 @@
 
 use super::record::fold;
 use super::words::{counted, flag_text};
-use super::{Page, answer, digest, figure, table};
+use super::{Flagged, Page, answer, digest, figure, table};
 use crate::ink;
 use crate::text::escape;
 use std::fmt::Write as _;
@@ -123,10 +123,11 @@ impl Page {
         }
         for (i, view) in self.tables.iter().enumerate() {
             let n = i + 1;
-            for (flag, count) in table::flags(&view.table) {
+            let flagged = view.flagged.clone().unwrap_or_else(|| Flagged::of(&view.table));
+            for (flag, count) in flagged.flags {
                 items.push(format!(
                     "<a href=\"#table-{n}\">Table {n}</a>, {count} of {}: {}",
-                    counted(view.table.rows(), "row", "rows"),
+                    counted(flagged.rows, "row", "rows"),
                     escape(&flag_text(&flag))
                 ));
             }
