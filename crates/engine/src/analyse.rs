@@ -26,8 +26,14 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     let mut provenance = program::provenance(job.parameters.clone(), 1);
     let started = Instant::now();
     let progress = || line.progress(0);
-    let task =
-        Task { parameters: &job.parameters, series: &job.series, tables: &job.tables, ledger, progress: &progress };
+    let task = Task {
+        parameters: &job.parameters,
+        series: &job.series,
+        tables: &job.tables,
+        units: &job.units,
+        ledger,
+        progress: &progress,
+    };
     let output = (kind.analyse)(&task)?;
     let series = job.series.iter().map(|s| Input { name: s.role.clone(), key: s.key, content: s.content });
     let tables_in = job.tables.iter().map(|t| Input { name: t.role.clone(), key: t.key, content: t.content });

@@ -123,6 +123,15 @@ pub struct TableInput {
     pub content: ContentHash,
 }
 
+/// Names of units; empty in reduced units.
+#[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+pub struct UnitNames {
+    /// Of energies.
+    pub energy: String,
+    /// Of temperatures.
+    pub temperature: String,
+}
+
 /// Compute an analysis parcel.
 #[derive(Clone, Debug, Serialize, Deserialize)]
 pub struct AnalyseJob {
@@ -136,6 +145,8 @@ pub struct AnalyseJob {
     pub series: Vec<SeriesInput>,
     /// Tables to read.
     pub tables: Vec<TableInput>,
+    /// Names of the pipeline's units.
+    pub units: UnitNames,
     /// Hash of the pipeline's text.
     pub pipeline: Option<ContentHash>,
 }

@@ -2,7 +2,7 @@
 
 use super::references::{references, remove};
 use super::{Product, Products, Series};
-use crate::job::{AnalyseJob, SeriesFacts, SeriesInput, TableInput};
+use crate::job::{AnalyseJob, SeriesFacts, SeriesInput, TableInput, UnitNames};
 use crate::steps::{Split, StepKind, Surroundings, WITHIN_GROUP};
 use crate::study::Study;
 use spinledger_pipeline::{Expansion, Step};
@@ -44,6 +44,7 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
         remove(&mut parameters, role);
     }
     let units = &study.pipeline.units;
+    let names = UnitNames { energy: units.energy_unit().into(), temperature: units.temperature_unit().into() };
     let pipeline = Some(ContentHash(*blake3::hash(study.pipeline.text.as_bytes()).as_bytes()));
     let make = |series: Vec<SeriesInput>, tables: Vec<TableInput>, columns: Vec<(String, String, Value)>| {
         let whole = kind.split == Split::Whole;
@@ -66,6 +67,7 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
             parameters: parameters.clone(),
             series,
             tables,
+            units: names.clone(),
             pipeline,
         };
         Parcel { key, job, columns }

@@ -1,7 +1,8 @@
 //! `compare`: results against published values, other results, or brackets.
 
+use super::cell::{self, Found};
 use super::{Checked, Output, Split, StepError, StepKind, Surroundings, Task, flags_text};
-use spinledger_terms::{Cells, Column, Field, Kind, Problem, StepSpec, Table, Value};
+use spinledger_terms::{Column, Field, Kind, Problem, StepSpec, Table, Value};
 
 /// The kind.
 pub(super) const KIND: StepKind =
@@ -11,16 +12,9 @@ pub(super) const KIND: StepKind =
 const ROUNDING: f64 = 1e-12;
 
 fn spec() -> StepSpec {
-    let any = || Kind::Map { of: Box::new(Kind::Any {}) };
-    let take = vec![
-        Field::new("step", Kind::Step {}, "the step").required(),
-        Field::new("quantity", Kind::Text {}, "the row's quantity"),
-        Field::new("where", any(), "columns and values that the row must have"),
-        Field::new("table", Kind::Text {}, "which of the step's tables; the main one by default"),
-        Field::new("column", Kind::Text {}, "the column of the value; `value` by default"),
-    ];
+    let mut take = cell::fields();
     let mut against = take.clone();
-    against[0].required = false;
+    take[0].required = true;
     against.extend([
         Field::new("value", Kind::NUMBER, "a value"),
         Field::new("error", Kind::NOT_NEGATIVE, "its standard error").default(Value::Integer(0)),
@@ -93,13 +87,6 @@ fn complete(parameters: &mut Value, _: &Surroundings<'_>) {
     }
 }
 
-/// A value with its error and flags.
-struct Found {
-    value: Option<f64>,
-    error: Option<f64>,
-    flags: String,
-}
-
 /// What it is held against.
 enum Against {
     /// An error that is not known is not zero.
@@ -133,59 +120,13 @@ fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
         let name = item.get("name").and_then(Value::as_str).unwrap_or_default().to_owned();
         let in_item = |error: StepError| StepError(format!("{name}: {error}"));
         let role = |side: &str| format!("items.{number}.{side}.step");
-        let found = take(task, &role("take"), item.get("take").unwrap_or(&Value::Null)).map_err(in_item)?;
+        let found =
+            cell::take(&task.inputs(), &role("take"), item.get("take").unwrap_or(&Value::Null)).map_err(in_item)?;
         let against = against(task, &role("against"), item.get("against").unwrap_or(&Value::Null)).map_err(in_item)?;
         let number = |key: &str| item.get(key).and_then(Value::as_f64);
         rows.push(judge(name.clone(), found, against, number("within").unwrap_or(3.0), number("precision")));
     }
     Ok(vec![("main".into(), table(&rows))].into())
-}
-
-/// The one row that is meant.
-fn take(task: &Task<'_>, role: &str, which: &Value) -> Result<Found, StepError> {
-    let text = |key: &str| which.get(key).and_then(Value::as_str);
-    let table = task.table(role, text("table").unwrap_or("main"))?;
-    let column = text("column").unwrap_or("value");
-    let values = &table.column(column).ok_or_else(|| no_column(&table, column))?.cells;
-    if !matches!(values, Cells::Number(_) | Cells::Integer(_)) {
-        return Err(StepError(format!("the column `{column}` holds no numbers")));
-    }
-    let mut wanted: Vec<(&str, Value)> = Vec::new();
-    if let Some(quantity) = text("quantity") {
-        wanted.push(("quantity", Value::text(quantity)));
-    }
-    for (name, value) in which.get("where").and_then(Value::as_map).into_iter().flatten() {
-        wanted.push((name, value.clone()));
-    }
-    let mut matching: Vec<usize> = (0..table.rows()).collect();
-    for (name, value) in &wanted {
-        let cells = &table.column(name).ok_or_else(|| no_column(&table, name))?.cells;
-        matching.retain(|row| same(&cells.value(*row), value));
-    }
-    let [row] = matching[..] else {
-        let wanted: Vec<String> =
-            wanted.iter().map(|(name, value)| format!("{name} = {}", value.canonical())).collect();
-        let wanted = if wanted.is_empty() { "no condition".to_owned() } else { wanted.join(", ") };
-        return Err(StepError(format!(
-            "{} rows match ({wanted}) where one must; narrow it with `where`",
-            matching.len()
-        )));
-    };
-    let error = if column == "value" { "error".to_owned() } else { format!("{column}_error") };
-    Ok(Found {
-        value: values.number(row),
-        error: table.column(&error).and_then(|c| c.cells.number(row)),
-        flags: table.text("flags", row).unwrap_or_default().to_owned(),
-    })
-}
-
-fn no_column(table: &Table, name: &str) -> StepError {
-    let known: Vec<&str> = table.columns.iter().map(|c| c.name.as_str()).collect();
-    StepError(format!("the table has no column `{name}`; it has: {}", known.join(", ")))
-}
-
-fn same(a: &Value, b: &Value) -> bool {
-    a == b || (a.as_f64().is_some() && a.as_f64() == b.as_f64())
 }
 
 fn against(task: &Task<'_>, role: &str, which: &Value) -> Result<Against, StepError> {
@@ -215,7 +156,7 @@ fn against(task: &Task<'_>, role: &str, which: &Value) -> Result<Against, StepEr
             return Ok(Against::Bracket { lower, upper, flags });
         }
     }
-    let found = take(task, role, which)?;
+    let found = cell::take(&task.inputs(), role, which)?;
     let value = found.value.ok_or_else(|| StepError("the reference is not known".into()))?;
     Ok(Against::Value { value, error: found.error, flags: found.flags })
 }

@@ -4,22 +4,28 @@
 //! analyses, how tables come from series and tables. Everything else (keys, workers, records, results) is the same for all.
 
 mod averages;
+mod cell;
+mod chart;
 mod compare;
 mod crossing;
+mod drawn;
+mod report;
 mod reweight;
 pub mod sample;
 pub(crate) mod settled;
+mod words;
 
 use crate::failure::Failure;
-use crate::job::{SeriesInput, TableInput};
+use crate::job::{SeriesInput, TableInput, UnitNames};
 use crate::series::SeriesReader;
-use spinledger_ledger::Ledger;
+use spinledger_ledger::{Ledger, Record};
 use spinledger_pipeline::Pipeline;
-use spinledger_terms::{Path, Problem, StepSpec, Table, Value, Vocabulary};
+use spinledger_terms::{Key, Path, Problem, StepSpec, Table, Value, Vocabulary};
 use std::collections::BTreeMap;
 
 /// All kinds.
-pub const KINDS: &[&StepKind] = &[&sample::KIND, &averages::KIND, &reweight::KIND, &crossing::KIND, &compare::KIND];
+pub const KINDS: &[&StepKind] =
+    &[&sample::KIND, &averages::KIND, &reweight::KIND, &crossing::KIND, &compare::KIND, &chart::KIND, &report::KIND];
 
 /// Columns of a point that do not tell one group from another.
 pub(crate) const WITHIN_GROUP: [&str; 2] = ["temperature", "inverse_temperature"];
@@ -104,6 +110,8 @@ pub struct Task<'a> {
     pub series: &'a [SeriesInput],
     /// The tables it takes.
     pub tables: &'a [TableInput],
+    /// Names of the pipeline's units.
+    pub units: &'a UnitNames,
     /// The ledger they are in.
     pub ledger: &'a Ledger,
     /// To be called now and then: the work goes on.
@@ -121,14 +129,44 @@ impl Task<'_> {
     /// # Errors
     /// Where there is no such input or table, or it cannot be read.
     pub fn table(&self, role: &str, name: &str) -> Result<Table, StepError> {
-        let input = self.tables.iter().find(|input| input.role == role);
-        let input = input.ok_or_else(|| StepError(format!("there is no input for `{role}`")))?;
-        let record = self.ledger.read_record(&input.key)?;
+        self.inputs().table(role, name)
+    }
+
+    /// The entries whose tables it takes.
+    pub(crate) fn inputs(&self) -> Inputs<'_> {
+        let keys = self.tables.iter().map(|input| (input.role.clone(), input.key));
+        Inputs { ledger: self.ledger, keys: keys.collect() }
+    }
+}
+
+/// Entries by role: those of a task, or those that a record names.
+pub(crate) struct Inputs<'a> {
+    ledger: &'a Ledger,
+    keys: Vec<(String, Key)>,
+}
+
+impl<'a> Inputs<'a> {
+    /// What an entry on record was made from.
+    pub(crate) fn recorded(ledger: &'a Ledger, record: &Record) -> Self {
+        let keys = record.provenance.inputs.iter().map(|input| (input.name.clone(), input.key));
+        Inputs { ledger, keys: keys.collect() }
+    }
+
+    /// Whether there is one.
+    pub(crate) fn has(&self, role: &str) -> bool {
+        self.keys.iter().any(|(name, _)| name == role)
+    }
+
+    /// Reads a table of the input with a role.
+    pub(crate) fn table(&self, role: &str, name: &str) -> Result<Table, StepError> {
+        let key = self.keys.iter().find(|(known, _)| known == role).map(|(_, key)| key);
+        let key = key.ok_or_else(|| StepError(format!("there is no input for `{role}`")))?;
+        let record = self.ledger.read_record(key)?;
         if record.tables.iter().all(|table| table.name != name) {
             let known: Vec<&str> = record.tables.iter().map(|t| t.name.as_str()).collect();
             return Err(StepError(format!("the step has no table `{name}`; it has: {}", known.join(", "))));
         }
-        Ok(self.ledger.read_table(&input.key, name)?)
+        Ok(self.ledger.read_table(key, name)?)
     }
 }
 

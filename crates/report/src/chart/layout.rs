@@ -61,7 +61,10 @@ impl Layout {
         if !legend.is_empty() {
             top += 6.0 + key::ROW * legend.len() as f64;
         }
-        top += LABEL + 10.0;
+        let y_caption = caption(&chart.y, y_ticks.power);
+        // What stands above as the title is not said twice.
+        let y_caption = if y_caption.to_lowercase() == chart.title.to_lowercase() { String::new() } else { y_caption };
+        top += if y_caption.is_empty() { 2.0 } else { LABEL + 10.0 };
         let y_caption_at = top - 3.0;
         let (mut placed, rows) = marks::place(chart, &x, (left, right), (RIM, width - RIM));
         top += 12.0 + marks::ROW * rows as f64;
@@ -76,7 +79,6 @@ impl Layout {
             None => Key::Above { rows: legend, top: legend_top },
         };
         let x_caption = caption(&chart.x, x_ticks.power);
-        let y_caption = caption(&chart.y, y_ticks.power);
         Layout { area, x, y, x_ticks, y_ticks, x_caption, y_caption, title, y_caption_at, marks: placed, key, notes }
     }
 
