@@ -1,7 +1,7 @@
 //! `chart`: columns of a table as a figure, in SVG and PNG.
 
 use super::cell::{self, conditions, conditions_words, no_column, rows, wanted};
-use super::drawn::{Drawn, Lines, line_columns, place};
+use super::drawn::{Drawn, Lines, line_columns, place, points_on_lines};
 use super::words::{label, title, unit};
 use super::{Checked, Inputs, NamedTables, Output, Split, StepError, StepKind, Task, as_is};
 use crate::job::UnitNames;
@@ -41,6 +41,11 @@ fn spec() -> StepSpec {
             Field::new("table", Kind::Text {}, "which of its tables").default(Value::text("main")),
             Field::new("quantity", Kind::Text {}, "rows of this quantity"),
             Field::new("where", conditions(), "columns and values that rows must have"),
+            Field::new(
+                "points",
+                Kind::Step {},
+                "a step whose rows of the same quantity are drawn as points on the lines",
+            ),
             Field::new("x", Kind::Text {}, "the column along the bottom; the scan column that varies by default"),
             Field::new("y", Kind::Text {}, "the column up the side").default(Value::text("value")),
             Field::new("lines", columns, "columns that tell lines apart; all other scan columns that vary by default"),
@@ -87,6 +92,7 @@ fn spec() -> StepSpec {
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     super::must_have_tables(step, "of", problems);
+    super::must_have_tables(step, "points", problems);
     let Some(point) = step.points.first() else { return };
     for axis in ["x", "y"] {
         let place = format!("range.{axis}");
@@ -156,7 +162,23 @@ pub(super) fn build(parameters: &Value, inputs: &Inputs<'_>, units: &UnitNames) 
         _ => Style::Joined,
     });
     let drawn = Drawn { table: &table, rows, x, y, lines };
-    let Lines { lines, rows, notes } = drawn.lines(style)?;
+    let Lines { mut lines, rows, mut notes } = drawn.lines(style)?;
+    let flags_of = |table: &Table, rows: &[Vec<usize>]| -> Vec<Vec<String>> {
+        let flag = |row: &usize| table.text("flags", *row).unwrap_or_default().to_owned();
+        rows.iter().map(|rows| rows.iter().map(flag).collect()).collect()
+    };
+    let mut flags = flags_of(&table, &rows);
+    if inputs.has("points") {
+        let points = inputs.table("points", "main")?;
+        let rows = cell::rows(&points, &wanted)?;
+        let mut found = points_on_lines(&points, rows, &drawn.x, &drawn.y, &lines)?;
+        if found.lines.is_empty() {
+            return Err(StepError("no line of `points` is one of the lines that are drawn".into()));
+        }
+        flags.append(&mut flags_of(&points, &found.rows));
+        lines.append(&mut found.lines);
+        notes.extend(found.notes.into_iter().map(|note| format!("points: {note}")));
+    }
     let quantity = text("quantity").filter(|_| drawn.y == "value");
     let axis = |name: &str, column: &str, quantity: Option<&str>| -> Result<Axis, StepError> {
         let own = &table.column(column).ok_or_else(|| no_column(&table, column))?.unit;
@@ -180,8 +202,6 @@ pub(super) fn build(parameters: &Value, inputs: &Inputs<'_>, units: &UnitNames) 
         marks: marks(parameters, inputs)?,
         notes,
     };
-    let flag = |row: &usize| table.text("flags", *row).unwrap_or_default().to_owned();
-    let flags = rows.iter().map(|rows| rows.iter().map(flag).collect()).collect();
     Ok(Built { chart, flags })
 }
 

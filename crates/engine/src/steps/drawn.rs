@@ -166,6 +166,21 @@ impl Drawn<'_> {
     }
 }
 
+/// The rows of a table as points on lines that are drawn already: those whose labels are the same.
+pub(super) fn points_on_lines(
+    table: &Table,
+    rows: Vec<usize>,
+    x: &str,
+    y: &str,
+    drawn: &[Line],
+) -> Result<Lines, StepError> {
+    let lines = line_columns(table, &rows, x);
+    let found = Drawn { table, rows, x: x.to_owned(), y: y.to_owned(), lines }.lines(Some(Style::Points))?;
+    let known = |line: &Line| drawn.iter().any(|curve| curve.label == line.label);
+    let (lines, rows) = found.lines.into_iter().zip(found.rows).filter(|(line, _)| known(line)).unzip();
+    Ok(Lines { lines, rows, notes: found.notes })
+}
+
 fn counted(points: usize) -> String {
     if points == 1 { "1 point".to_owned() } else { format!("{points} points") }
 }

@@ -20,8 +20,10 @@ pub(crate) struct Look {
 
 impl Look {
     pub(crate) fn of(chart: &Chart, index: usize) -> Look {
-        let places = places(chart.lines.len());
-        Look { place: index, ink: Ink::Line(places[index % places.len()]) }
+        let named = chart.named();
+        let place = named.iter().position(|first| *first == chart.first(index)).unwrap_or(0);
+        let places = places(named.len());
+        Look { place, ink: Ink::Line(places[place % places.len()]) }
     }
 
     pub(crate) fn curve(&self) -> Stroke {
@@ -45,6 +47,18 @@ impl Look {
 }
 
 impl Chart {
+    /// The first line that has the label of this one, and its look.
+    fn first(&self, index: usize) -> usize {
+        let label = &self.lines[index].label;
+        let same = |line: &Line| !label.is_empty() && line.label == *label;
+        self.lines.iter().position(same).unwrap_or(index)
+    }
+
+    /// Lines that look different: those that are the first of their label.
+    pub(crate) fn named(&self) -> Vec<usize> {
+        (0..self.lines.len()).filter(|index| self.first(*index) == *index).collect()
+    }
+
     /// Draws the chart. Cost: a millisecond for some thousand points. Never fails: what cannot be drawn is left out with a note.
     pub fn draw(&self, frame: Frame) -> Drawing {
         let frame = Frame { width: frame.width.clamp(240.0, 1e4), height: frame.height.clamp(200.0, 1e4) };

@@ -50,7 +50,8 @@ fn end(line: &Line, x: &Scaled, y: &Scaled) -> Option<(f64, f64)> {
 
 /// Room for labels beside the plot, or None where they do not fit and go above.
 pub(crate) fn gutter(chart: &Chart, x: &Scaled, y: &Scaled, width: f64) -> Option<f64> {
-    let named: Vec<&Line> = chart.lines.iter().filter(|l| !l.label.is_empty()).collect();
+    let named = chart.named().into_iter().map(|index| &chart.lines[index]);
+    let named: Vec<&Line> = named.filter(|l| !l.label.is_empty()).collect();
     let widest = named.iter().map(|l| font::width(&l.label, LABEL, Weight::Regular)).fold(0.0, f64::max);
     let room = THREAD + SAMPLE + widest;
     let near = named.iter().all(|l| end(l, x, y).is_some_and(|e| e.0 > 0.7));
@@ -60,9 +61,9 @@ pub(crate) fn gutter(chart: &Chart, x: &Scaled, y: &Scaled, width: f64) -> Optio
 /// Labels beside the plot, each as near to the end of its line as the others allow.
 pub(crate) fn slots(chart: &Chart, x: &Scaled, y: &Scaled, area: &Area) -> Vec<Slot> {
     let mut slots: Vec<Slot> = chart
-        .lines
-        .iter()
-        .enumerate()
+        .named()
+        .into_iter()
+        .map(|index| (index, &chart.lines[index]))
         .filter(|(_, l)| !l.label.is_empty())
         .filter_map(|(index, line)| {
             let (a, b) = end(line, x, y)?;
@@ -100,7 +101,8 @@ fn spread(wanted: &[f64], pitch: f64, top: f64, bottom: f64) -> Vec<f64> {
 pub(crate) fn rows(chart: &Chart, width: f64) -> Vec<Vec<(usize, f64, String)>> {
     let mut rows: Vec<Vec<(usize, f64, String)>> = Vec::new();
     let mut at = f64::INFINITY;
-    for (index, line) in chart.lines.iter().enumerate().filter(|(_, l)| !l.label.is_empty()) {
+    let named = chart.named().into_iter().map(|index| (index, &chart.lines[index]));
+    for (index, line) in named.filter(|(_, l)| !l.label.is_empty()) {
         let text = font::fitted(&line.label, LABEL, Weight::Regular, width - SAMPLE);
         let room = SAMPLE + font::width(&text, LABEL, Weight::Regular);
         if at + room > width {

@@ -18,7 +18,8 @@ pub struct Chart {
     pub x: Axis,
     /// The axis up the side.
     pub y: Axis,
-    /// What is drawn; colours, marker shapes and dashes go by place. Eight can be told apart.
+    /// What is drawn; colours, marker shapes and dashes go by place. Eight can be told apart. Lines with one label look alike and are named once: points
+    /// and the curve through them.
     pub lines: Vec<Line>,
     /// Reference lines.
     pub marks: Vec<Mark>,

@@ -3,7 +3,7 @@
 use super::lineage::Lineage;
 use super::{Part, StepError, Task};
 use crate::steps::chart;
-use crate::steps::drawn::{Drawn, line_columns, place};
+use crate::steps::drawn::{Drawn, line_columns, place, points_on_lines};
 use crate::steps::words::{label, title, unit};
 use crate::steps::{Inputs, cell};
 use spinledger_report::{Axis, Chart, Content, Figure, Line, Mark, MarkAxis, Point, Style, shown};
@@ -36,7 +36,10 @@ pub(super) fn figures(task: &Task<'_>, parts: &[Part], lineage: &Lineage<'_>) ->
             "averages" | "reweight" => {
                 let table = part.table(task, "main")?;
                 for quantity in wanted.iter().filter(|q| !is_drawn_elsewhere(q, part, parts)) {
-                    if let Some((chart, caption)) = of_quantity(task, &table, quantity, &marks)? {
+                    if let Some((mut chart, mut caption)) = of_quantity(task, &table, quantity, &marks)? {
+                        if part.does == "reweight" && measured(task, parts, quantity, &mut chart)? {
+                            caption += " Points are the measured averages, with bars of one standard error.";
+                        }
                         figures.push(Figure { caption, content: Content::Chart(chart), record: record() });
                     }
                 }
@@ -97,6 +100,18 @@ fn of_quantity(
     let errors = if bands { "Bands" } else { "Bars" };
     let caption = format!("{} against {}. {errors} are one standard error.", title(quantity), label(&drawn.x));
     Ok(Some((chart, caption)))
+}
+
+/// Adds the points of averages on the page to the curves of the same label; whether there are any.
+fn measured(task: &Task<'_>, parts: &[Part], quantity: &str, chart: &mut Chart) -> Result<bool, StepError> {
+    let curves = chart.lines.len();
+    for part in parts.iter().filter(|part| part.does == "averages") {
+        let table = part.table(task, "main")?;
+        let rows = cell::rows(&table, &[("quantity".to_owned(), Value::text(quantity))])?;
+        let found = points_on_lines(&table, rows, "temperature", "value", &chart.lines[..curves])?;
+        chart.lines.extend(found.lines);
+    }
+    Ok(chart.lines.len() > curves)
 }
 
 /// The ordering temperature, where the page has one, and what it is held against.
