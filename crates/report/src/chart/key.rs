@@ -48,13 +48,20 @@ fn end(line: &Line, x: &Scaled, y: &Scaled) -> Option<(f64, f64)> {
         .fold(None, |best: Option<(f64, f64)>, p| if best.is_some_and(|b| b.0 >= p.0) { best } else { Some(p) })
 }
 
+/// Where the lines of one label end: the rightmost of their ends.
+fn common_end(chart: &Chart, index: usize, x: &Scaled, y: &Scaled) -> Option<(f64, f64)> {
+    let label = &chart.lines[index].label;
+    let ends = chart.lines.iter().filter(|line| line.label == *label).filter_map(|line| end(line, x, y));
+    ends.fold(None, |best: Option<(f64, f64)>, p| if best.is_some_and(|b| b.0 >= p.0) { best } else { Some(p) })
+}
+
 /// Room for labels beside the plot, or None where they do not fit and go above.
 pub(crate) fn gutter(chart: &Chart, x: &Scaled, y: &Scaled, width: f64) -> Option<f64> {
-    let named = chart.named().into_iter().map(|index| &chart.lines[index]);
-    let named: Vec<&Line> = named.filter(|l| !l.label.is_empty()).collect();
-    let widest = named.iter().map(|l| font::width(&l.label, LABEL, Weight::Regular)).fold(0.0, f64::max);
+    let named: Vec<usize> = chart.named().into_iter().filter(|index| !chart.lines[*index].label.is_empty()).collect();
+    let widest = |width: f64, index: &usize| width.max(font::width(&chart.lines[*index].label, LABEL, Weight::Regular));
+    let widest = named.iter().fold(0.0, widest);
     let room = THREAD + SAMPLE + widest;
-    let near = named.iter().all(|l| end(l, x, y).is_some_and(|e| e.0 > 0.7));
+    let near = named.iter().all(|index| common_end(chart, *index, x, y).is_some_and(|e| e.0 > 0.7));
     (!named.is_empty() && named.len() <= 10 && near && room <= 0.23 * width).then_some(room)
 }
 
@@ -65,8 +72,8 @@ pub(crate) fn slots(chart: &Chart, x: &Scaled, y: &Scaled, area: &Area) -> Vec<S
         .into_iter()
         .map(|index| (index, &chart.lines[index]))
         .filter(|(_, l)| !l.label.is_empty())
-        .filter_map(|(index, line)| {
-            let (a, b) = end(line, x, y)?;
+        .filter_map(|(index, _)| {
+            let (a, b) = common_end(chart, index, x, y)?;
             let end = (area.left + a * area.width(), area.bottom - b * area.height());
             Some(Slot { index, end, y: end.1 })
         })

@@ -14,6 +14,9 @@ const USUAL: [&str; 5] = ["binder", "energy", "heat_capacity", "magnetisation_ab
 /// More lines cannot be told apart in one figure: of more, so many are drawn, evenly chosen.
 const MOST_LINES: usize = 8;
 
+/// Longest name of a source that stands in a figure.
+const LONGEST: usize = 28;
+
 /// The figures, in the order of the parts.
 pub(super) fn figures(task: &Task<'_>, parts: &[Part], lineage: &Lineage<'_>) -> Result<Vec<Figure>, StepError> {
     let wanted = task.parameters.get("figures");
@@ -137,9 +140,13 @@ fn marks(task: &Task<'_>, parts: &[Part]) -> Result<Vec<Mark>, StepError> {
             let temperature = item.at("take.quantity").and_then(Value::as_str) == Some("critical_temperature");
             let number = |name: &str| table.column(name).and_then(|column| column.cells.number(row));
             if let (true, Some(value), Some(_)) = (temperature, number("reference"), item.at("against.value")) {
-                let source = item.at("against.source").and_then(Value::as_str).unwrap_or("reference");
                 let error = number("reference_error").unwrap_or(0.0);
-                marks.push(Mark { on: MarkAxis::X, value, error, label: source.to_owned() });
+                let source = item.at("against.source").and_then(Value::as_str);
+                // What is too long for a figure stands with the answer.
+                let source = source.filter(|source| source.chars().count() <= LONGEST);
+                let label =
+                    source.map_or_else(|| format!("reference {}", shown(value, Some(error), 7).text()), str::to_owned);
+                marks.push(Mark { on: MarkAxis::X, value, error, label });
             }
         }
     }
