@@ -9,7 +9,7 @@ use spinledger_engine::run::Outcome;
 use spinledger_engine::{Study, chain_text};
 use spinledger_ledger::Ledger;
 use spinledger_terms::Table;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};
 
 /// What a run took.
@@ -20,12 +20,12 @@ pub(crate) struct Spent {
     pub(crate) updates: f64,
 }
 
-/// Flagged rows of a step: how many, of how many, and how often each flag stands there.
+/// Flagged rows of a step: how many, of how many, and how often each flag stands there, with the quantities it stands at.
 #[derive(Default)]
 struct Flagged {
     rows: usize,
     of: usize,
-    flags: BTreeMap<String, usize>,
+    flags: BTreeMap<String, (usize, BTreeSet<String>)>,
 }
 
 /// Tells how a run ended; returns the exit status.
@@ -165,11 +165,16 @@ fn flagged_of(table: &Table) -> Option<Flagged> {
         let flags = table.text("flags", row).unwrap_or_default();
         flagged.rows += usize::from(!flags.is_empty());
         for flag in flags.split(';').filter(|flag| !flag.is_empty()) {
-            *flagged.flags.entry(flag.to_owned()).or_default() += 1;
+            let (count, quantities) = flagged.flags.entry(flag.to_owned()).or_default();
+            *count += 1;
+            quantities.extend(table.text("quantity", row).map(str::to_owned));
         }
     }
     (flagged.rows > 0).then_some(flagged)
 }
+
+/// More quantities than this are not named.
+const MOST_NAMED: usize = 3;
 
 /// What is not settled, in words.
 fn tell_flags(flagged: &[(&str, Flagged)], screen: &mut Screen) {
@@ -179,8 +184,14 @@ fn tell_flags(flagged: &[(&str, Flagged)], screen: &mut Screen) {
     for (step, Flagged { rows, of, flags }) in flagged {
         let text = screen.tint(&format!("not settled: {step}: {rows} of {of} rows"), "33");
         screen.line(&text);
-        for (flag, count) in flags {
-            screen.line(&format!("  {count} {}", flag_words(flag)));
+        for (flag, (count, quantities)) in flags {
+            // Which one is worth a word where it is not most of them.
+            let named = if rows < of && (1..=MOST_NAMED).contains(&quantities.len()) {
+                format!(": {}", quantities.iter().map(String::as_str).collect::<Vec<_>>().join(", "))
+            } else {
+                String::new()
+            };
+            screen.line(&format!("  {count} {}{named}", flag_words(flag)));
         }
     }
 }
@@ -190,6 +201,8 @@ fn flag_words(flag: &str) -> &str {
         "not-equilibrated" => "not equilibrated (chains drift or disagree: equilibrate longer)",
         "few-samples" => "with too few independent measurements (measure longer)",
         "bad-fit" => "from a fit that does not fit",
+        "biased" => "from a fit without a correction that is there",
+        "size-dependent" => "moved by leaving out the smallest size",
         "few-sizes" => "from too few sizes to test a correction",
         "no-crossing" => "with sizes that do not cross in the range",
         "poor-overlap" => "where histograms do not overlap",

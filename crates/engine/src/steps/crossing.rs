@@ -1,21 +1,22 @@
 //! `crossing`: where the curves of several sizes cross, and where that tends as sizes grow.
 
 mod reweighted;
+mod rows;
 
 use super::settled::{self, Chains};
-use super::{Checked, Output, Split, StepError, StepKind, Task, as_is, flags_text};
+use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use crate::job::SeriesInput;
 use crate::series::SeriesReader;
 use spinledger_numerics::sum::CompensatedSum;
 use spinledger_stats::autocorrelation::{AutocorrelationParams, autocorrelation};
-use spinledger_stats::crossing::{CrossingFlag, CrossingInfo, CrossingParams, Curve, Replicates, crossing};
+use spinledger_stats::crossing::{CrossingParams, Curve, Replicates, crossing};
 use spinledger_stats::jackknife::{Blocks, blocks_per_chain};
-use spinledger_terms::{Column, Field, Kind, Problem, StepSpec, Table, Value};
+use spinledger_terms::{Field, Kind, Problem, StepSpec, Table, Value};
 use std::collections::BTreeMap;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "crossing", revision: 2, split: Split::Whole, spec, check, complete: as_is, analyse };
+    StepKind { does: "crossing", revision: 3, split: Split::Whole, spec, check, complete: as_is, analyse };
 
 fn spec() -> StepSpec {
     StepSpec {
@@ -64,7 +65,7 @@ fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     } else {
         (from_series(task)?, task.series[0].facts.temperature_unit.clone())
     };
-    let mut out = Tables::default();
+    let mut out = rows::Tables::default();
     for mut set in sets {
         let number = |name: &str| task.parameters.get(name).and_then(Value::as_f64);
         let mut params = CrossingParams {
@@ -77,16 +78,10 @@ fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
             params.corrections = vec![exponent];
         }
         let found = crossing(&set.curves, &params).map_err(|e| StepError(crate::chain_text(&e)))?;
-        set.flags.extend(found.flags.iter().map(|flag| match flag {
-            CrossingFlag::NoCrossing => "no-crossing".to_owned(),
-            CrossingFlag::BadFit => "bad-fit".to_owned(),
-            _ => "few-sizes".to_owned(),
-        }));
         if reweighted::overlap_is_poor(&set, &found) {
             set.flags.push("poor-overlap".to_owned());
         }
-        let flags: Vec<&str> = set.flags.iter().map(String::as_str).collect();
-        out.add(&set.rest, &found, &flags_text(&flags));
+        out.add(&set.rest, &found, &set.flags);
         (task.progress)();
     }
     Ok(out.tables(&unit).into())
@@ -169,126 +164,5 @@ fn curve(size: u64, mut points: Vec<(f64, Vec<f64>, f64)>) -> Curve {
         x: points.iter().map(|p| p.0).collect(),
         y: points.iter().map(|p| p.2).collect(),
         replicates: Replicates::Separate(points.into_iter().map(|p| p.1).collect()),
-    }
-}
-
-/// Rows of the three tables.
-#[derive(Default)]
-struct Tables {
-    rest: Vec<Vec<(String, Value)>>,
-    main: Vec<(usize, &'static str, Option<Line>, String)>,
-    pairs: Vec<(usize, [f64; 6], String)>,
-    covariance: Vec<(usize, [f64; 5], String)>,
-}
-
-struct Line {
-    value: f64,
-    error: f64,
-    chi_squared: Option<f64>,
-    degrees: Option<usize>,
-    p: Option<f64>,
-}
-
-impl Tables {
-    fn add(&mut self, rest: &[(String, Value)], found: &CrossingInfo, flags: &str) {
-        let set = self.rest.len();
-        self.rest.push(rest.to_vec());
-        let whole = |fit: &spinledger_stats::crossing::Extrapolated| Line {
-            value: fit.value,
-            error: fit.error,
-            chi_squared: Some(fit.chi_squared),
-            degrees: Some(fit.degrees),
-            p: Some(fit.p),
-        };
-        let constant = |fit: &spinledger_stats::crossing::Extrapolated| Line {
-            value: fit.constant.value,
-            error: fit.constant.error,
-            chi_squared: Some(fit.constant.chi_squared),
-            degrees: Some(fit.constant.degrees),
-            p: None,
-        };
-        let (nu, nu_error) = found.inverse_nu;
-        let exponent = Line { value: nu, error: nu_error, chi_squared: None, degrees: None, p: None };
-        let lines = [
-            ("critical_temperature", found.place.as_ref().map(whole)),
-            ("crossing_value", found.value.as_ref().map(whole)),
-            // For comparison only: without a correction the error does not tell how far off it is.
-            ("critical_temperature_uncorrected", found.place.as_ref().map(constant)),
-            ("crossing_value_uncorrected", found.value.as_ref().map(constant)),
-            ("one_over_nu_used", Some(exponent).filter(|line| line.value.is_finite())),
-        ];
-        for (name, line) in lines {
-            self.main.push((set, name, line, flags.to_owned()));
-        }
-        for pair in &found.pairs {
-            let row = [pair.size, pair.partner, pair.place, pair.error, pair.value, pair.value_error];
-            self.pairs.push((set, row, flags.to_owned()));
-        }
-        for (i, a) in found.pairs.iter().enumerate() {
-            for (j, b) in found.pairs.iter().enumerate() {
-                let row = [a.size, a.partner, b.size, b.partner, found.covariance[(i, j)]];
-                self.covariance.push((set, row, flags.to_owned()));
-            }
-        }
-    }
-
-    /// Columns that tell the curves of one set from those of another; none where there is one set.
-    fn rest_columns(&self, sets: &[usize]) -> Vec<Column> {
-        let Some(first) = self.rest.first() else { return Vec::new() };
-        let cell = |set: usize, at: usize| self.rest[set][at].1.clone();
-        let column = |at: usize| {
-            let name = &first[at].0;
-            if self.rest.iter().all(|rest| rest[at].1.as_i64().is_some()) {
-                Column::integers(name, "", sets.iter().map(|s| cell(*s, at).as_i64()).collect())
-            } else if self.rest.iter().all(|rest| rest[at].1.as_f64().is_some()) {
-                Column::numbers(name, "", sets.iter().map(|s| cell(*s, at).as_f64()).collect())
-            } else {
-                let text = |value: Value| value.as_str().map_or_else(|| value.canonical(), str::to_owned);
-                Column::texts(name, sets.iter().map(|s| Some(text(cell(*s, at)))).collect())
-            }
-        };
-        (0..first.len()).map(column).collect()
-    }
-
-    fn tables(self, unit: &str) -> Vec<(String, Table)> {
-        let count = |x: f64| Some(x as i64);
-        let sets: Vec<usize> = self.main.iter().map(|row| row.0).collect();
-        let mut main = self.rest_columns(&sets);
-        let numbers = |get: fn(&Line) -> Option<f64>| self.main.iter().map(|r| r.2.as_ref().and_then(get)).collect();
-        main.push(Column::texts("quantity", self.main.iter().map(|r| Some(r.1.to_owned())).collect()));
-        main.push(Column::numbers("value", "", numbers(|l| Some(l.value))));
-        main.push(Column::numbers("error", "", numbers(|l| Some(l.error))));
-        main.push(Column::numbers("chi_squared", "", numbers(|l| l.chi_squared)));
-        let degrees = self.main.iter().map(|r| r.2.as_ref().and_then(|l| l.degrees).map(|d| d as i64)).collect();
-        main.push(Column::integers("degrees", "", degrees));
-        main.push(Column::numbers("p_value", "", numbers(|l| l.p)));
-        main.push(Column::texts("flags", self.main.iter().map(|r| Some(r.3.clone())).collect()));
-
-        let sets: Vec<usize> = self.pairs.iter().map(|row| row.0).collect();
-        let mut pairs = self.rest_columns(&sets);
-        let cells = |at: usize| self.pairs.iter().map(|row| Some(row.1[at])).collect::<Vec<_>>();
-        pairs.push(Column::integers("size", "", self.pairs.iter().map(|row| count(row.1[0])).collect()));
-        pairs.push(Column::integers("partner", "", self.pairs.iter().map(|row| count(row.1[1])).collect()));
-        pairs.push(Column::numbers("temperature", unit, cells(2)));
-        pairs.push(Column::numbers("error", unit, cells(3)));
-        pairs.push(Column::numbers("value", "", cells(4)));
-        pairs.push(Column::numbers("value_error", "", cells(5)));
-        pairs.push(Column::texts("flags", self.pairs.iter().map(|row| Some(row.2.clone())).collect()));
-
-        let sets: Vec<usize> = self.covariance.iter().map(|row| row.0).collect();
-        let mut covariance = self.rest_columns(&sets);
-        for (at, name) in ["size", "partner", "other_size", "other_partner"].into_iter().enumerate() {
-            let cells = self.covariance.iter().map(|row| count(row.1[at])).collect();
-            covariance.push(Column::integers(name, "", cells));
-        }
-        let squared = if unit.is_empty() { String::new() } else { format!("{unit}^2") };
-        let cells = self.covariance.iter().map(|row| Some(row.1[4])).collect();
-        covariance.push(Column::numbers("covariance", &squared, cells));
-        covariance.push(Column::texts("flags", self.covariance.iter().map(|row| Some(row.2.clone())).collect()));
-        vec![
-            ("main".into(), Table { columns: main }),
-            ("pairs".into(), Table { columns: pairs }),
-            ("covariance".into(), Table { columns: covariance }),
-        ]
     }
 }

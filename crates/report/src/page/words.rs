@@ -9,6 +9,8 @@ pub fn flag_words(flag: &str) -> Option<&'static str> {
         "few-samples" => "there are too few independent measurements for an error that can be relied on",
         "poor-overlap" => "the histograms of neighbouring temperatures hardly overlap",
         "bad-fit" => "the fit does not describe the points within their errors",
+        "biased" => "the fit leaves out a correction to scaling that is there",
+        "size-dependent" => "leaving out the smallest size moves the result by more than its errors allow",
         "few-sizes" => "there are too few sizes for an extrapolation",
         "no-crossing" => "the curves of two sizes do not cross in the range",
         "constant" => "the series did not change",

@@ -3,7 +3,8 @@
 use spinledger_numerics::elementary::{exp, pow};
 use spinledger_numerics::special::chi_squared_p;
 
-use crate::fit::{Errors, Fit, linear};
+use super::shift::{Limit, Shift};
+use crate::fit::{Errors, Fit, linear, linear_map};
 use crate::matrix::Matrix;
 
 /// A limit, averaged over exponents of the correction.
@@ -26,6 +27,8 @@ pub struct Extrapolated {
     pub p: f64,
     /// The fit of a constant, for comparison.
     pub constant: Constant,
+    /// How far the constant is from the limit; `None` for one pair.
+    pub bias: Option<Shift>,
     /// The fit for each exponent; empty for one pair, which cannot be extrapolated.
     pub members: Vec<Member>,
 }
@@ -41,6 +44,8 @@ pub struct Constant {
     pub chi_squared: f64,
     /// Pairs minus one.
     pub degrees: usize,
+    /// Probability of a larger chi-squared; 1 for zero degrees.
+    pub p: f64,
 }
 
 /// A fit with one exponent.
@@ -68,25 +73,29 @@ pub(super) fn value_form(small: f64, large: f64, inverse_nu: f64, correction: f6
     pow(small, -correction) + pow(small, inverse_nu) * place_form(small, large, inverse_nu, correction)
 }
 
-/// Fits limit + amplitude * form for each exponent and averages. `None` without data or when no fit is possible.
+/// Fits limit + amplitude * form for each exponent and averages. Gives the maps from data to limit beside it. `None` without data or when no
+/// fit is possible.
 pub(super) fn extrapolate(
     data: &[f64],
     covariance: &Matrix,
     corrections: &[f64],
     form: impl Fn(f64) -> Vec<f64>,
-) -> Option<Extrapolated> {
+) -> Option<(Extrapolated, Limit)> {
     let pairs = data.len();
     let errors = Errors::Covariance(covariance);
-    let constant = linear(&Matrix::from_fn(pairs, 1, |_, _| 1.0), data, errors).ok()?;
+    let ones = Matrix::from_fn(pairs, 1, |_, _| 1.0);
+    let constant = linear(&ones, data, errors).ok()?;
     let constant = Constant {
         value: constant.parameters[0],
         error: constant.error(0),
         chi_squared: constant.chi_squared,
         degrees: constant.degrees,
+        p: chi_squared_p(constant.chi_squared, constant.degrees),
     };
+    let mut maps = Limit { constant: linear_map(&ones, errors).ok()?.row(0).to_vec(), members: Vec::new() };
     if pairs < 2 {
         let Constant { value, error, chi_squared, .. } = constant;
-        return Some(Extrapolated {
+        let only = Extrapolated {
             value,
             error,
             statistical: error,
@@ -95,24 +104,27 @@ pub(super) fn extrapolate(
             degrees: 0,
             p: 1.0,
             constant,
+            bias: None,
             members: Vec::new(),
-        });
+        };
+        return Some((only, maps));
     }
-    let fits: Vec<(f64, Fit)> = corrections
+    let fits: Vec<(f64, Fit, Vec<f64>)> = corrections
         .iter()
         .filter_map(|correction| {
             // Scaled to the shift of the first pair: the flat prior over the amplitude then means the same for each exponent.
             let form = form(*correction);
             let design = Matrix::from_fn(pairs, 2, |pair, k| if k == 0 { 1.0 } else { form[pair] / form[0] });
-            linear(&design, data, errors).ok().map(|fit| (*correction, fit))
+            let map = linear_map(&design, errors).ok()?.row(0).to_vec();
+            linear(&design, data, errors).ok().map(|fit| (*correction, fit, map))
         })
         .collect();
-    let chi_squared = fits.iter().map(|(_, fit)| fit.chi_squared).min_by(f64::total_cmp)?;
+    let chi_squared = fits.iter().map(|(_, fit, _)| fit.chi_squared).min_by(f64::total_cmp)?;
     let weight = |fit: &Fit| exp(-0.5 * (fit.chi_squared - chi_squared));
-    let total: f64 = fits.iter().map(|(_, fit)| weight(fit)).sum();
+    let total: f64 = fits.iter().map(|(_, fit, _)| weight(fit)).sum();
     let members: Vec<Member> = fits
         .iter()
-        .map(|(correction, fit)| Member {
+        .map(|(correction, fit, _)| Member {
             correction: *correction,
             value: fit.parameters[0],
             error: fit.error(0),
@@ -125,7 +137,9 @@ pub(super) fn extrapolate(
     let spread: f64 =
         members.iter().map(|member| member.weight * (member.value - value) * (member.value - value)).sum();
     let degrees = pairs - 2;
-    Some(Extrapolated {
+    maps.members = fits.into_iter().map(|(correction, fit, map)| (correction, weight(&fit) / total, map)).collect();
+    let bias = maps.bias(data, covariance);
+    let averaged = Extrapolated {
         value,
         error: (statistical + spread).sqrt(),
         statistical: statistical.sqrt(),
@@ -134,6 +148,8 @@ pub(super) fn extrapolate(
         degrees,
         p: chi_squared_p(chi_squared, degrees),
         constant,
+        bias,
         members,
-    })
+    };
+    Some((averaged, maps))
 }

@@ -4,18 +4,21 @@
 //! The method is laid out in the `README.md` beside this file.
 
 mod extrapolate;
+mod limits;
 mod pair;
+mod shift;
 mod straighten;
 
 pub use extrapolate::{Constant, Extrapolated, Member};
+pub use limits::WithoutSmallest;
 pub use pair::PairCrossing;
+pub use shift::Shift;
 
 use thiserror::Error;
 
-use crate::fit::{Errors, linear};
 use crate::jackknife::{replicate_error, scaled_deviations};
 use crate::local::LocalParams;
-use crate::matrix::{Matrix, dot};
+use crate::matrix::Matrix;
 
 /// The curve of one size.
 #[derive(Clone, Debug, PartialEq)]
@@ -77,6 +80,10 @@ pub enum CrossingFlag {
     BadFit,
     /// Fewer than three pairs: the fit with a correction has nothing left to test it, and with one pair there is none.
     FewSizes,
+    /// The fit of a constant differs from the limit by more than their difference may: it leaves out a correction that is there.
+    Biased,
+    /// Leaving out the smallest size moves the result by more than the difference may: the form does not hold for that size.
+    SizeDependent,
 }
 
 /// What [`crossing`] found.
@@ -93,8 +100,16 @@ pub struct CrossingInfo {
     pub value: Option<Extrapolated>,
     /// y = 1/nu that was used, from all pairs, with its error (0 if given).
     pub inverse_nu: (f64, f64),
-    /// What is doubtful, in order, each once.
+    /// The same without the smallest size.
+    pub without_smallest: WithoutSmallest,
+    /// What is doubtful about all of it, in order, each once.
     pub flags: Vec<CrossingFlag>,
+    /// What is doubtful about the limit of the places alone: `SizeDependent`.
+    pub place_flags: Vec<CrossingFlag>,
+    /// What is doubtful about the constant fitted to the places: `Biased`, `BadFit`, `SizeDependent`. Nothing that counts against the limits.
+    pub constant_flags: Vec<CrossingFlag>,
+    /// The same of the constant fitted to the values: `Biased`, `BadFit`.
+    pub value_constant_flags: Vec<CrossingFlag>,
 }
 
 /// Why nothing could be done.
@@ -165,71 +180,8 @@ pub fn crossing(curves: &[Curve], params: &CrossingParams) -> Result<CrossingInf
 
 /// [`crossing`] of curves that have been checked.
 fn find(curves: &[Curve], params: &CrossingParams) -> CrossingInfo {
-    let mut flags = Vec::new();
-    let mut found = Vec::new();
-    for two in curves.windows(2) {
-        match pair::find(&two[0], &two[1], &params.local) {
-            Some(pair) => found.push(pair),
-            None => flags.push(CrossingFlag::NoCrossing),
-        }
-    }
-    if found.len() < 3 {
-        flags.push(CrossingFlag::FewSizes);
-    }
-    let inverse_nu = match params.inverse_nu {
-        Some(given) => (given, 0.0),
-        None => mean_inverse_nu(&found),
-    };
-    let covariance = |part: usize| {
-        Matrix::from_fn(found.len(), found.len(), |a, b| {
-            let model = if a == b { found[a].model_variance[part] } else { 0.0 };
-            found[a].deviations.iter().map(|mine| shared(mine, &found[b], part)).sum::<f64>() + model
-        })
-    };
-    let (places, values) = (covariance(pair::PLACE), covariance(pair::VALUE));
-    let sizes: Vec<(f64, f64)> = found.iter().map(|pair| (pair.size, pair.partner)).collect();
-    let limit = |part: usize, covariance: &Matrix| {
-        let data: Vec<f64> = found.iter().map(|pair| pair.centre[part]).collect();
-        let form = if part == pair::PLACE { extrapolate::place_form } else { extrapolate::value_form };
-        extrapolate::extrapolate(&data, covariance, &params.corrections, |w| {
-            sizes.iter().map(|(small, large)| form(*small, *large, inverse_nu.0, w)).collect()
-        })
-    };
-    let (place, value) = (limit(pair::PLACE, &places), limit(pair::VALUE, &values));
-    // A limit that cannot be had from crossings there are: covariances that are not positive definite.
-    let failed = !found.is_empty() && (place.is_none() || value.is_none());
-    let unlikely = |limit: &Option<Extrapolated>| limit.as_ref().is_some_and(|limit| limit.p < params.least_p);
-    if failed || unlikely(&place) || unlikely(&value) || found.iter().any(|pair| pair.local_p < 0.1 * params.least_p) {
-        flags.push(CrossingFlag::BadFit);
-    }
-    flags.sort_unstable();
-    flags.dedup();
-    let pairs = found.iter().map(|pair| pair.report()).collect();
-    CrossingInfo { pairs, covariance: places, place, value, inverse_nu, flags }
-}
-
-/// Covariance that two pairs have through one size.
-fn shared(mine: &pair::Deviations, other: &pair::Found, part: usize) -> f64 {
-    let same = other.deviations.iter().find(|other| other.size == mine.size);
-    same.map_or(0.0, |other| dot(&mine.parts[part], &other.parts[part]))
-}
-
-/// Weighted mean of 1/nu over the pairs whose slopes give one, kept within 0.3 to 4; 1 without any.
-fn mean_inverse_nu(found: &[pair::Found]) -> (f64, f64) {
-    let (mut data, mut errors) = (Vec::new(), Vec::new());
-    for pair in found {
-        let variance: f64 =
-            pair.deviations.iter().map(|part| dot(&part.parts[pair::SLOPES], &part.parts[pair::SLOPES])).sum();
-        if pair.centre[pair::SLOPES].is_finite() && variance.is_finite() && variance > 0.0 {
-            data.push(pair.centre[pair::SLOPES]);
-            errors.push(variance.sqrt());
-        }
-    }
-    let ones = Matrix::from_fn(data.len(), 1, |_, _| 1.0);
-    match linear(&ones, &data, Errors::Independent(&errors)) {
-        Ok(fit) => (fit.parameters[0].clamp(0.3, 4.0), fit.error(0)),
-        Err(_) => (1.0, 0.0),
-    }
+    let found = curves.windows(2).map(|two| pair::find(&two[0], &two[1], &params.local)).collect::<Vec<_>>();
+    limits::limits(&found, params)
 }
 
 impl Curve {

@@ -37,6 +37,12 @@ pub(super) fn undo(found: &mut CrossingInfo, ceiling: f64) {
     if let Some(limit) = &mut found.value {
         bent(&mut limit.value, &mut [&mut limit.error, &mut limit.statistical, &mut limit.spread]);
         bent(&mut limit.constant.value, &mut [&mut limit.constant.error]);
+        if let Some(bias) = &mut limit.bias {
+            // A difference: the distance from the bound at one of its ends, to first order.
+            let distance = ceiling - limit.value;
+            bias.value *= distance;
+            bias.error *= distance;
+        }
         for member in &mut limit.members {
             bent(&mut member.value, &mut [&mut member.error]);
         }
