@@ -8,8 +8,8 @@ use std::time::Instant;
 /// The square-lattice Ising model orders at 2/ln(1 + sqrt 2) (Onsager 1944 Phys. Rev. 65 117).
 const ONSAGER: f64 = 2.269_185_314_213_022;
 
-/// Parcels of the quickstart: chains, points, curves, crossing, comparison.
-const PARCELS: (u64, u64, u64) = (144 + 36 + 4 + 2, 0, 0);
+/// Parcels of the quickstart: chains, points, curves, crossing, comparison, chart, page.
+const PARCELS: (u64, u64, u64) = (144 + 36 + 4 + 4, 0, 0);
 
 fn text_of(file: &str) -> String {
     std::fs::read_to_string(top().join(file)).unwrap_or_else(|error| panic!("{file}: {error}"))
@@ -66,6 +66,18 @@ fn the_quickstart_finds_where_the_square_lattice_orders() {
     nothing_is_computed_again(&desk);
     readme_shows_the_result(&desk);
     readme_reads_the_results(&desk);
+    readme_shows_the_picture(&desk);
+}
+
+/// The picture in README is the one that the pipeline draws, and the page is small enough to be sent to a colleague.
+fn readme_shows_the_picture(desk: &Desk) {
+    let files = desk.files("results/quickstart");
+    assert!(text_of("README.md").contains("(docs/cumulants.svg)"));
+    assert!(
+        text_of("docs/cumulants.svg").as_bytes() == files["cumulants.svg"],
+        "docs/cumulants.svg is another picture"
+    );
+    assert!(files["page.html"].len() < 1_500_000, "the page has {} bytes", files["page.html"].len());
 }
 
 /// Crossings of (12, 16) and (16, 24) share the curve of 16, which moves them in opposite directions; those without a common size are independent.
