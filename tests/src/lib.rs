@@ -5,3 +5,4 @@
 pub mod calibration;
 pub mod plugins;
 pub mod program;
+pub mod terminal;

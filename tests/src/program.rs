@@ -83,7 +83,7 @@ impl Desk {
         path
     }
 
-    fn command(&self, args: &[&str]) -> Command {
+    pub(crate) fn command(&self, args: &[&str]) -> Command {
         let mut command = Command::new(program());
         command.args(args).current_dir(self.folder.path());
         command.env_remove("SPINLEDGER_LEDGER").env_remove("SPINLEDGER_PLUGINS");

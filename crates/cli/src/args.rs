@@ -20,6 +20,8 @@ pub(crate) enum Command {
     Check(CheckArgs),
     /// Tell what would run, what is on record and about how long it takes
     Forecast(ForecastArgs),
+    /// Print a result table, in the terminal or as CSV or JSON lines
+    Print(PrintArgs),
     /// Tell what made a result: the chain of records back to the inputs
     Trace(TraceArgs),
     /// List the plugins that are found, or document one
@@ -87,6 +89,47 @@ pub(crate) struct ForecastArgs {
     /// Print JSON
     #[arg(long)]
     pub(crate) json: bool,
+}
+
+#[derive(Debug, ClapArgs)]
+pub(crate) struct PrintArgs {
+    /// A Parquet file, or a folder of them that is one table (what a sample step wrote)
+    pub(crate) file: PathBuf,
+    /// Print CSV: all rows, all digits
+    #[arg(long, conflicts_with = "json")]
+    pub(crate) csv: bool,
+    /// Print JSON lines: a row each, all rows, all digits
+    #[arg(long)]
+    pub(crate) json: bool,
+    /// Print at most so many rows, or `all` [default: 40 as a table, else all]
+    #[arg(long, value_name = "N")]
+    pub(crate) rows: Option<Rows>,
+    /// Print these columns only, in this order
+    #[arg(long, value_name = "A,B", value_delimiter = ',')]
+    pub(crate) columns: Vec<String>,
+    /// Print rows only in which a column has this value; may be given several times
+    #[arg(long = "where", value_name = "COLUMN=VALUE")]
+    pub(crate) filter: Vec<String>,
+}
+
+/// How many rows to print.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Rows {
+    /// So many at most.
+    First(u64),
+    /// All.
+    All,
+}
+
+impl std::str::FromStr for Rows {
+    type Err = String;
+
+    fn from_str(text: &str) -> Result<Self, String> {
+        match text {
+            "all" => Ok(Rows::All),
+            _ => text.parse().map(Rows::First).map_err(|_| "expected a number of rows, or `all`".into()),
+        }
+    }
 }
 
 #[derive(Debug, ClapArgs)]

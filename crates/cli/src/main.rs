@@ -15,6 +15,7 @@ fn main() -> ExitCode {
         args::Command::Run(args) => commands::run::run(&args),
         args::Command::Check(args) => commands::check::check(&args),
         args::Command::Forecast(args) => commands::forecast::forecast(&args),
+        args::Command::Print(args) => commands::print::print(&args),
         args::Command::Trace(args) => commands::trace::trace(&args),
         args::Command::Plugins(args) => commands::plugins::plugins(&args),
         args::Command::Worker(args) => commands::worker::worker(&args),

@@ -32,9 +32,8 @@ impl Screen {
     /// On standard output.
     pub(crate) fn new(style: Style) -> Self {
         let terminal = std::io::stdout().is_terminal();
-        let plain = std::env::var_os("NO_COLOR").is_some_and(|v| !v.is_empty());
         let last = Instant::now();
-        Screen { style, terminal, colour: terminal && !plain, drawn: 0, last }
+        Screen { style, terminal, colour: colours(), drawn: 0, last }
     }
 
     /// Whether JSON lines are wanted.
@@ -96,7 +95,7 @@ impl Screen {
 
     /// Marks text as good, bad or doubtful, where the terminal has colours; the words say it too.
     pub(crate) fn tint(&self, text: &str, code: &str) -> String {
-        if self.colour { format!("\x1b[{code}m{text}\x1b[0m") } else { text.to_owned() }
+        tinted(text, code, self.colour)
     }
 
     fn clear(&mut self) {
@@ -110,6 +109,41 @@ impl Screen {
 impl Drop for Screen {
     fn drop(&mut self) {
         self.clear();
+    }
+}
+
+/// Whether standard output is a terminal, and colours are not unwanted (`NO_COLOR`).
+pub(crate) fn colours() -> bool {
+    let plain = std::env::var_os("NO_COLOR").is_some_and(|v| !v.is_empty());
+    std::io::stdout().is_terminal() && !plain
+}
+
+/// Text in a colour, where there are any.
+pub(crate) fn tinted(text: &str, code: &str, colour: bool) -> String {
+    if colour { format!("\x1b[{code}m{text}\x1b[0m") } else { text.to_owned() }
+}
+
+/// How much room a line has.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Width {
+    /// So many columns of a terminal.
+    Of(usize),
+    /// Any: what is written to a file or a pipe is not looked at as it is.
+    Any,
+}
+
+impl Width {
+    /// That of standard output.
+    pub(crate) fn now() -> Self {
+        if std::io::stdout().is_terminal() { Width::Of(width()) } else { Width::Any }
+    }
+
+    /// The columns, where they are limited.
+    pub(crate) fn columns(self) -> Option<usize> {
+        match self {
+            Width::Of(columns) => Some(columns),
+            Width::Any => None,
+        }
     }
 }
 

@@ -1,15 +1,63 @@
 //! Numbers and tables as text.
 
+use unicode_width::{UnicodeWidthChar, UnicodeWidthStr};
+
+/// How many columns of a terminal a text takes: wide characters take two, accents that join none.
+pub(crate) fn wide(text: &str) -> usize {
+    text.width()
+}
+
+/// The beginning of a text, so much as fits into a number of columns; what is cut off is told by a last `…`.
+pub(crate) fn fit(text: &str, width: usize) -> String {
+    if wide(text) <= width {
+        return text.to_owned();
+    }
+    let mut out = String::new();
+    let mut taken = 0;
+    for letter in text.chars() {
+        taken += letter.width().unwrap_or(0);
+        if taken >= width {
+            break;
+        }
+        out.push(letter);
+    }
+    if width > 0 {
+        out.push('…');
+    }
+    out
+}
+
+/// A text in lines of at most so many columns, broken at spaces; a longer word stands alone and is cut. Further lines are indented by two.
+pub(crate) fn wrap(text: &str, width: usize) -> Vec<String> {
+    let lead = text.len() - text.trim_start_matches(' ').len();
+    let mut lines: Vec<String> = Vec::new();
+    let mut line = " ".repeat(lead);
+    let mut words = 0;
+    for word in text.split_ascii_whitespace() {
+        if words > 0 && wide(&line) + 1 + wide(word) > width {
+            lines.push(std::mem::replace(&mut line, " ".repeat(lead + 2)));
+            words = 0;
+        }
+        if words > 0 {
+            line.push(' ');
+        }
+        line.push_str(&fit(word, width.saturating_sub(wide(&line)).max(1)));
+        words += 1;
+    }
+    lines.push(line);
+    lines
+}
+
 /// A table of text: columns as wide as they need, numbers to the right, a gap of two.
 pub(crate) fn columns(rows: &[Vec<String>], right: &[usize]) -> Vec<String> {
     let count = rows.iter().map(Vec::len).max().unwrap_or(0);
-    let width = |c: usize| rows.iter().filter_map(|r| r.get(c)).map(|t| t.chars().count()).max().unwrap_or(0);
+    let width = |c: usize| rows.iter().filter_map(|r| r.get(c)).map(|t| wide(t)).max().unwrap_or(0);
     let widths: Vec<usize> = (0..count).map(width).collect();
     rows.iter()
         .map(|row| {
             let mut line = String::new();
             for (c, text) in row.iter().enumerate() {
-                let pad = " ".repeat(widths[c] - text.chars().count());
+                let pad = " ".repeat(widths[c] - wide(text));
                 if right.contains(&c) {
                     line.push_str(&pad);
                     line.push_str(text);
@@ -110,6 +158,18 @@ mod tests {
         let row = |cells: [&str; 3]| cells.map(String::from).to_vec();
         let lines = columns(&[row(["step", "n", ""]), row(["größe", "12", "left"])], &[1]);
         assert_eq!(lines, ["step    n", "größe  12  left"]);
+    }
+
+    #[test]
+    fn texts_fit_by_columns_of_a_terminal() {
+        assert_eq!(
+            (fit("größe", 5), fit("größe", 4), fit("größe", 1), fit("größe", 0)),
+            ("größe".into(), "grö…".into(), "…".into(), String::new())
+        );
+        assert_eq!((wide("自旋"), fit("自旋模型", 6), fit("自旋模型", 5)), (4, "自旋…".into(), "自旋…".into()));
+        assert_eq!(wrap("and 120 more rows", 9), ["and 120", "  more", "  rows"]);
+        assert_eq!(wrap("  a susceptibility", 8), ["  a", "    sus…"]);
+        assert_eq!(wrap("", 8), [""]);
     }
 
     #[test]

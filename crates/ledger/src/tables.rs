@@ -5,4 +5,5 @@ pub(crate) mod assemble;
 pub(crate) mod block;
 mod cells;
 mod format;
+pub(crate) mod rows;
 pub(crate) mod table;

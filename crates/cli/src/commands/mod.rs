@@ -4,6 +4,7 @@ pub(crate) mod check;
 pub(crate) mod closing;
 pub(crate) mod forecast;
 pub(crate) mod plugins;
+pub(crate) mod print;
 pub(crate) mod run;
 pub(crate) mod trace;
 pub(crate) mod worker;

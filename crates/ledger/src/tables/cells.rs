@@ -49,7 +49,12 @@ pub(super) fn write_cells<W: Write + Send>(
 
 /// Reads the first rows of a column of a row group behind what is there.
 pub(super) fn read(group: &dyn RowGroupReader, column: usize, rows: usize, into: &mut Cells) -> Result<()> {
-    match (group.get_column_reader(column)?, into) {
+    go_on(&mut group.get_column_reader(column)?, rows, into)
+}
+
+/// Reads the next rows of a column behind what is there.
+pub(super) fn go_on(reader: &mut ColumnReader, rows: usize, into: &mut Cells) -> Result<()> {
+    match (reader, into) {
         (ColumnReader::Int64ColumnReader(reader), Cells::Integer(cells)) => take(reader, rows, Ok, cells),
         (ColumnReader::DoubleColumnReader(reader), Cells::Number(cells)) => take(reader, rows, Ok, cells),
         (ColumnReader::BoolColumnReader(reader), Cells::Boolean(cells)) => take(reader, rows, Ok, cells),
@@ -61,7 +66,7 @@ pub(super) fn read(group: &dyn RowGroupReader, column: usize, rows: usize, into:
 }
 
 fn take<T: DataType, V>(
-    mut reader: ColumnReaderImpl<T>,
+    reader: &mut ColumnReaderImpl<T>,
     rows: usize,
     convert: impl Fn(T::T) -> Result<V>,
     into: &mut Vec<Option<V>>,
