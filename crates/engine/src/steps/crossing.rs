@@ -11,7 +11,7 @@ use spinledger_numerics::sum::CompensatedSum;
 use spinledger_stats::autocorrelation::{AutocorrelationParams, autocorrelation};
 use spinledger_stats::crossing::{CrossingParams, Curve, Replicates, crossing};
 use spinledger_stats::jackknife::{Blocks, blocks_per_chain};
-use spinledger_terms::{Field, Kind, Problem, StepSpec, Table, Value};
+use spinledger_terms::{Field, Kind, Problem, StepSpec, Value};
 use std::collections::BTreeMap;
 
 /// The kind.
