@@ -1,6 +1,6 @@
 //! Counts, colourings, wraps, rims and faces on small lattices of all boundaries.
 
-use crate::standard::{Chain, Cubic, Square, Triangular};
+use crate::standard::{Bcc, Chain, Cubic, Diamond, Fcc, Honeycomb, Kagome, Square, Triangular};
 use spinledger_sdk::testing::{Bench, params};
 use spinledger_sdk::{Graph, Lattice, Model, ModelBuilder, ModelSpec, Params, Result};
 use std::collections::BTreeSet;
@@ -97,16 +97,17 @@ fn check_all<L: Lattice>(directions: usize, sizes: &[usize], coordination: usize
             };
             assert!(!folded, "{label} must be refused");
             let (graph, energy) = (bench.graph(), bench.energy());
-            let sites: usize = sizes.iter().product();
+            let sites = sizes.iter().product::<usize>() * L::SPEC.sites_per_cell as usize;
             assert_eq!(graph.sites, sites, "{label}");
             check_soundness(&graph, energy.colours(), energy.colour_sites, energy.colour_offsets, &label);
             let closed = |b: &str| b == "periodic" || b == "antiperiodic";
             if boundaries.iter().all(|b| closed(b)) {
                 assert_eq!(graph.bonds.len(), sites * coordination / 2, "{label}");
                 assert!((0..sites).all(|s| graph.neighbours_of(s).len() == coordination), "{label}");
-                if sizes.iter().all(|s| s % 2 == 0) && coordination == 2 * directions {
+                let hypercubic = L::SPEC.sites_per_cell == 1 && coordination == 2 * directions;
+                if sizes.iter().all(|s| s % 2 == 0) && hypercubic {
                     assert_eq!(energy.colours(), 2, "{label}");
-                } else if sizes.iter().all(|s| *s > 1) && coordination == 2 * directions {
+                } else if sizes.iter().all(|s| *s > 1) && hypercubic {
                     assert_eq!(energy.colours(), 3, "{label}");
                 }
             }
@@ -148,6 +149,53 @@ fn cubic_lattices_are_sound() {
         let (graph, energy) = (bench.graph(), bench.energy());
         check_soundness(&graph, energy.colours(), energy.colour_sites, energy.colour_offsets, &format!("{sizes:?}"));
     }
+}
+
+#[test]
+fn lattices_with_several_sites_a_cell_are_sound() {
+    check_all::<Honeycomb>(2, &[1, 2, 3, 4, 5], 3);
+    check_all::<Kagome>(2, &[1, 2, 3, 4, 5], 4);
+    check_all::<Bcc>(3, &[1, 2, 3], 8);
+    check_all::<Fcc>(3, &[1, 2, 3], 12);
+    check_all::<Diamond>(3, &[1, 2, 3], 4);
+    let colours = |bench: Bench| bench.energy().colours();
+    for size in [1, 2, 3] {
+        assert_eq!(colours(bench::<Honeycomb>(&[size; 2], &["periodic"; 2])), 2);
+        assert_eq!(colours(bench::<Kagome>(&[size; 2], &["periodic"; 2])), 3);
+        assert_eq!(colours(bench::<Bcc>(&[size; 3], &["periodic"; 3])), 2);
+        assert_eq!(colours(bench::<Fcc>(&[size; 3], &["periodic"; 3])), 4);
+        assert_eq!(colours(bench::<Diamond>(&[size; 3], &["periodic"; 3])), 2);
+    }
+}
+
+/// Rings of a lattice tell it from others of the same coordination: closed walks of n steps from a site, counted by hand. Honeycomb: 3 of two steps,
+/// 15 of four, none odd. Kagome: each site stands in two triangles. Face-centred: each of twelve neighbours shares four with the site. Diamond: as
+/// the honeycomb, twelve hexagons through a site make 24 more walks of six steps than the tree of four branches has (its 4, 28, 232).
+#[test]
+fn closed_walks_are_those_of_the_lattice() {
+    let walks = |bench: &Bench, steps: usize| {
+        let graph = bench.graph();
+        let mut here = vec![0u64; graph.sites];
+        here[0] = 1;
+        for _ in 0..steps {
+            let mut next = vec![0; graph.sites];
+            for (site, count) in here.iter().enumerate() {
+                graph.neighbours_of(site).iter().for_each(|other| next[*other as usize] += count);
+            }
+            here = next;
+        }
+        here[0]
+    };
+    let honeycomb = bench::<Honeycomb>(&[7, 7], &["periodic"; 2]);
+    assert_eq!([2, 3, 4, 5, 6].map(|n| walks(&honeycomb, n)), [3, 0, 15, 0, 87 + 6]);
+    let kagome = bench::<Kagome>(&[7, 7], &["periodic"; 2]);
+    assert_eq!([2, 3].map(|n| walks(&kagome, n)), [4, 4]);
+    let bcc = bench::<Bcc>(&[5; 3], &["periodic"; 3]);
+    assert_eq!([2, 3, 4].map(|n| walks(&bcc, n)), [8, 0, 216]);
+    let fcc = bench::<Fcc>(&[4; 3], &["periodic"; 3]);
+    assert_eq!([2, 3].map(|n| walks(&fcc, n)), [12, 48]);
+    let diamond = bench::<Diamond>(&[4; 3], &["periodic"; 3]);
+    assert_eq!([2, 3, 4, 6].map(|n| walks(&diamond, n)), [4, 0, 28, 232 + 24]);
 }
 
 #[test]
@@ -207,6 +255,9 @@ fn faces_are_counted() {
     assert_eq!(count(&bench::<Triangular>(&[3, 4], &["free"; 2])), 12);
     assert_eq!(count(&bench::<Cubic>(&[3, 4, 2], &["periodic"; 3])), 72);
     assert_eq!(count(&bench::<Chain>(&[5], &["periodic"])), 0);
+    // Euler's relation on the torus: sites - bonds + faces = 0.
+    assert_eq!(count(&bench::<Honeycomb>(&[3, 4], &["periodic"; 2])), 12);
+    assert_eq!(count(&bench::<Kagome>(&[3, 4], &["periodic"; 2])), 36);
     assert_eq!(count(&bench::<Square>(&[1, 5], &["periodic"; 2])), 0, "a period of one folds every face");
 }
 

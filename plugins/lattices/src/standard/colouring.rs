@@ -7,6 +7,11 @@ pub(crate) fn parity(cell: &[i64], _site: usize, _sides: &[Side]) -> u32 {
     (cell.iter().sum::<i64>() % 2) as u32
 }
 
+/// A colour for each site of the cell; proper where no bond joins sites of one sublattice.
+pub(crate) fn sublattice(_cell: &[i64], site: usize, _sides: &[Side]) -> u32 {
+    site as u32
+}
+
 /// Three colours on hypercubic lattices of any periods from two up: the sum modulo 3 of a proper colouring of each direction's ring by
 /// 0, 1, (0, 1, ...) and, for an odd period, a last 2. A step in one direction changes one term of the sum, by no multiple of 3.
 pub(crate) fn thirds(cell: &[i64], _site: usize, sides: &[Side]) -> u32 {
