@@ -37,6 +37,7 @@ pub(super) fn unit(quantity: &str, units: &UnitNames) -> String {
             "" => String::new(),
             energy => format!("1/{energy}"),
         },
+        "shift_without_smallest" => units.temperature.clone(),
         _ if quantity.starts_with("critical_temperature") => units.temperature.clone(),
         _ => String::new(),
     }

@@ -13,6 +13,9 @@ pub(super) struct Tables {
     covariance: Vec<(usize, [f64; 5], String)>,
 }
 
+/// A conclusion: its name, its numbers, what is doubtful about it.
+type Row<'a> = (&'static str, Option<Line>, Vec<&'a [CrossingFlag]>);
+
 /// Numbers of a conclusion.
 #[derive(Clone, Copy)]
 struct Line {
@@ -82,13 +85,12 @@ impl Tables {
         let tested = less.place.as_ref().is_some_and(|fit| fit.constant.degrees > 0);
         let constant = |flag: &CrossingFlag| !(tested && *flag == CrossingFlag::FewSizes);
         let of_constant: Vec<CrossingFlag> = less.flags.iter().copied().filter(constant).collect();
-        let missing: &[CrossingFlag] = match (&less.shift, found.pairs.len() < 3) {
-            (None, true) => &[CrossingFlag::FewSizes],
-            // The smallest two sizes do not cross.
-            (None, false) => all,
-            (Some(_), _) => &[],
+        // A shift says nothing about the fit; what it is null for stands among the flags of all: sizes that do not cross, or too few of them.
+        let of_shift: Vec<CrossingFlag> = match less.shift {
+            Some(_) => all.iter().copied().filter(|flag| *flag == CrossingFlag::NoCrossing).collect(),
+            None => all.to_vec(),
         };
-        let lines: [(&'static str, Option<Line>, Vec<&[CrossingFlag]>); 8] = [
+        let lines: [Row<'_>; 8] = [
             ("critical_temperature", found.place.as_ref().map(Line::whole), vec![all, &found.place_flags]),
             ("crossing_value", found.value.as_ref().map(Line::whole), vec![all, &found.place_flags]),
             // For comparison only: without a correction the error does not tell how far off it is.
@@ -108,7 +110,7 @@ impl Tables {
                 less.place.as_ref().map(Line::constant),
                 vec![&of_constant, &less.constant_flags],
             ),
-            ("shift_without_smallest", less.shift.as_ref().map(Line::shift), vec![&found.place_flags, missing]),
+            ("shift_without_smallest", less.shift.as_ref().map(Line::shift), vec![&found.place_flags, &of_shift]),
             ("one_over_nu_used", Some(exponent).filter(|line| line.value.is_finite()), vec![all]),
         ];
         for (name, line, own) in lines {
