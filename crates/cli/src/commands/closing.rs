@@ -46,7 +46,9 @@ pub(crate) fn close(
         match ledger.read_table(key, "main") {
             Ok(table) => {
                 verdicts.extend(verdicts_of(&table));
-                flagged.extend(flagged_of(&table).map(|flagged| (step.name.as_str(), flagged)));
+                // A page repeats the flags of the steps that it shows.
+                let own = flagged_of(&table).filter(|_| step.does != "report");
+                flagged.extend(own.map(|flagged| (step.name.as_str(), flagged)));
             }
             Err(error) => {
                 well = false;
