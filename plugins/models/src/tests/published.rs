@@ -1,5 +1,6 @@
 //! Lattices and models together against the counted states of `tests/reference/density_of_states.csv` (sources stand there).
 
+#[allow(dead_code, unused_imports, reason = "the standard lattices as they are; not all are needed here")]
 #[path = "../../../lattices/src/standard/mod.rs"]
 mod lattices;
 
