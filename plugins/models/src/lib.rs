@@ -1,18 +1,18 @@
-//! The standard models: `ising`, `potts`. Each is one file in `standard/`.
+//! The standard models: `ising`, `potts`, `blume-capel`. Each is one file in `standard/`.
 #![deny(unsafe_code)]
 
 mod standard;
 #[cfg(test)]
 mod tests;
 
-use standard::{Ising, Potts};
+use standard::{BlumeCapel, Ising, Potts};
 
 #[allow(unsafe_code)]
 mod export {
-    use super::{Ising, Potts};
+    use super::{BlumeCapel, Ising, Potts};
 
     spinledger_sdk::export! {
         library: "models", version: env!("CARGO_PKG_VERSION"), licence: env!("CARGO_PKG_LICENSE"),
-        models: [Ising, Potts],
+        models: [Ising, Potts, BlumeCapel],
     }
 }

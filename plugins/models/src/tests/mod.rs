@@ -2,7 +2,7 @@
 
 mod published;
 
-use crate::standard::{Ising, Potts};
+use crate::standard::{BlumeCapel, Ising, Potts};
 use spinledger_sdk::testing::{Bench, params};
 use spinledger_sdk::{Lattice, LatticeBuilder, LatticeSpec, Model, Params, Result};
 
@@ -53,6 +53,22 @@ fn potts_energies_follow_the_formula() {
     }
     assert_eq!(bench.energy().pinned_states, [1], "pinned down is colour 2");
     assert!(bench.energy().permutations);
+}
+
+#[test]
+fn blume_capel_energies_follow_the_formula() {
+    let model = r#"{"coupling": {"first.x": 2.0, "first.y": -0.5}, "anisotropy": 0.75, "field": 0.25}"#;
+    let bench = bench::<BlumeCapel>(model);
+    let spin = |s: u8| 1.0 - f64::from(s);
+    for number in 0..9u8 {
+        let states = [number % 3, number / 3, 2];
+        let [a, b, c] = states.map(spin);
+        let expected = -2.0 * a * b + 0.5 * b * c + 0.75 * (a * a + b * b) - 0.25 * (a + b);
+        assert_eq!(bench.total(&states), expected, "{states:?}");
+    }
+    assert_eq!(bench.energy().pinned_states, [2], "pinned down is -1");
+    assert!(bench.energy().involutions.is_empty());
+    assert_eq!(self::bench::<BlumeCapel>("{}").energy().involutions, [&[2, 1, 0]]);
 }
 
 #[test]

@@ -4,7 +4,7 @@
 #[path = "../../../lattices/src/standard/mod.rs"]
 mod lattices;
 
-use crate::standard::{Ising, Potts};
+use crate::standard::{BlumeCapel, Ising, Potts};
 use lattices::{Chain, Cubic, Square, Triangular};
 use spinledger_sdk::testing::{Bench, params};
 use spinledger_sdk::{Lattice, Model};
@@ -59,6 +59,40 @@ fn degeneracies_are_those_counted() {
     ising("triangular_4x4_periodic", counted::<Triangular, Ising>(r#"{"size": 4}"#, "{}"));
     ising("cubic_2x2x3_free", counted::<Cubic, Ising>(r#"{"size": [2, 2, 3], "boundary": "free"}"#, "{}"));
     ising("potts3_3x3_periodic", counted::<Square, Potts>(r#"{"size": 3}"#, r#"{"q": 3}"#));
+}
+
+/// The Blume-Capel model against `tests/reference/density_of_states_blume_capel.csv` (sources stand there): at J = 1 and D = 0 states by exchange energy,
+/// zeros and magnetisation; D adds its share for each spin that is not zero.
+#[test]
+fn blume_capel_degeneracies_are_those_counted() {
+    const REFERENCE: &str = include_str!("../../../../tests/reference/density_of_states_blume_capel.csv");
+    let model = params(r#"{"anisotropy": 0.125}"#);
+    let square = Bench::new::<Square, BlumeCapel>(&params(r#"{"size": [2, 3], "boundary": "free"}"#), &model);
+    let ring = Bench::new::<Chain, BlumeCapel>(&params(r#"{"size": 6}"#), &model);
+    for (system, bench) in [("blume_capel_2x3_free", square), ("blume_capel_1x6_ring", ring)] {
+        let mut expected: BTreeMap<(i64, i64, i64), u64> = BTreeMap::new();
+        for line in REFERENCE.lines().filter(|line| line.split(',').next() == Some(system)) {
+            let cells: Vec<&str> = line.split(',').collect();
+            let number = |column: usize| cells[column].parse::<i64>().expect("a number");
+            expected.insert((number(1), number(2), number(3)), number(4) as u64);
+        }
+        assert!(!expected.is_empty(), "{system} is in the table");
+        let sites = bench.graph().sites;
+        let mut found = BTreeMap::new();
+        let mut states = vec![0u8; sites];
+        for number in 0..3usize.pow(sites as u32) {
+            let mut rest = number;
+            for state in &mut states {
+                *state = (rest % 3) as u8;
+                rest /= 3;
+            }
+            let zeros = states.iter().filter(|s| **s == 1).count();
+            let m: i64 = states.iter().map(|s| 1 - i64::from(*s)).sum();
+            let exchange = bench.total(&states) - 0.125 * (sites - zeros) as f64;
+            *found.entry((exchange as i64, zeros as i64, m)).or_insert(0) += 1;
+        }
+        assert_eq!(found, expected, "{system}");
+    }
 }
 
 /// Going around a ring, spins turn an even number of times, across a seam an odd number: 2 C(n, k) states have k broken bonds.
