@@ -3,6 +3,7 @@
 #[allow(dead_code, unused_imports, reason = "the standard lattices as they are; not all are needed here")]
 #[path = "../../lattices/src/standard/mod.rs"]
 mod lattices;
+#[allow(dead_code, unused_imports, reason = "the standard models as they are; not all are needed here")]
 #[path = "../../models/src/standard/mod.rs"]
 mod models;
 

@@ -7,6 +7,7 @@ mod exact;
 #[path = "../../../lattices/src/standard/mod.rs"]
 pub(crate) mod lattices;
 mod mechanics;
+#[allow(dead_code, unused_imports, reason = "the standard models as they are; not all are needed here")]
 #[path = "../../../models/src/standard/mod.rs"]
 pub(crate) mod models;
 #[path = "../../../local-updates/src/tests/systems.rs"]
