@@ -53,7 +53,10 @@ impl Loaded {
         if let Some((_, _, problem)) = self.problems.iter().find(|(l, m, _)| l == lattice && m == model) {
             return Ok(problem.clone());
         }
-        let graph = self.loader.lattice(&lattice.identity, &lattice.parameters)?.build()?;
+        let graph = match self.problems.iter().find(|(l, _, _)| l == lattice) {
+            Some((_, _, known)) => known.graph.clone(),
+            None => self.loader.lattice(&lattice.identity, &lattice.parameters)?.build()?,
+        };
         let energy = self.loader.model(&model.identity, &model.parameters)?.describe(&graph)?;
         let problem = Problem { graph, energy };
         self.problems.truncate(KEPT - 1);

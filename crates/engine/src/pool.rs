@@ -207,7 +207,7 @@ impl Pool {
             worker.job = None;
         }
         // Foreign code may have left anything behind: its process serves one parcel only.
-        let foreign = matches!(&jobs[job], Job::Sample(job) if job.point.dynamics.is_foreign());
+        let foreign = matches!(&jobs[job], Job::Sample(job) if job.is_foreign());
         if foreign && matches!(meaning, Meaning::Ends(_)) {
             self.places[place] = None;
         }

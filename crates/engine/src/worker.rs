@@ -42,6 +42,7 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
         let work = std::panic::AssertUnwindSafe(|| match job {
             Job::Sample(job) => sampling::sample(&job, &ledger, &mut loaded, &line),
             Job::Close(job) => close::close(&job, &ledger, &line),
+            Job::States(job) => close::close_states(&job, &ledger, &line),
             Job::Analyse(job) => analyse::analyse(&job, &ledger, &line),
         });
         let report = match std::panic::catch_unwind(work) {
