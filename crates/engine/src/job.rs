@@ -1,6 +1,7 @@
 //! What the runner and its workers say to each other: JSON, a line each.
 
 use serde::{Deserialize, Serialize};
+use spinledger_plan::dynamics::ItemRef;
 use spinledger_plan::sample::{Group, Piece, Point};
 use spinledger_plan::states::Kept;
 use spinledger_terms::{ColumnSpec, ContentHash, Key, Value};
@@ -156,6 +157,23 @@ pub struct TableInput {
     pub content: ContentHash,
 }
 
+/// A kept configuration, as an analysis sees it.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct StateInput {
+    /// What it serves as.
+    pub role: String,
+    /// Its entry.
+    pub key: Key,
+    /// Its content.
+    pub content: ContentHash,
+    /// Its lattice.
+    pub lattice: ItemRef,
+    /// Its model.
+    pub model: ItemRef,
+    /// Which it is: the point, chain and sweep in words.
+    pub words: String,
+}
+
 /// Names of units; empty in reduced units.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct UnitNames {
@@ -178,10 +196,21 @@ pub struct AnalyseJob {
     pub series: Vec<SeriesInput>,
     /// Tables to read.
     pub tables: Vec<TableInput>,
+    /// The configuration to read.
+    pub state: Option<StateInput>,
+    /// Why it cannot be done, found out while it was planned: then it is only said.
+    pub refused: Option<String>,
     /// Names of the pipeline's units.
     pub units: UnitNames,
     /// Hash of the pipeline's text.
     pub pipeline: Option<ContentHash>,
+}
+
+impl AnalyseJob {
+    /// Whether code that did not come with the program takes part.
+    pub fn is_foreign(&self) -> bool {
+        self.state.iter().any(|state| !state.lattice.identity.standard || !state.model.identity.standard)
+    }
 }
 
 /// From a worker to the runner.

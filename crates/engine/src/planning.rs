@@ -5,6 +5,7 @@ mod columns;
 mod references;
 mod sample;
 pub(crate) mod starts;
+mod state;
 
 pub use analysis::{AnalysisPlan, Parcel, analysis_parcels};
 pub use columns::point_columns;

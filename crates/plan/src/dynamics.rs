@@ -22,7 +22,8 @@ pub struct ItemRef {
 }
 
 impl ItemRef {
-    fn key_value(&self) -> Value {
+    /// As keys see it: which code with which parameters.
+    pub fn key_value(&self) -> Value {
         Value::map([("item", Value::text(self.identity.canonical())), ("parameters", self.parameters.clone())])
     }
 

@@ -112,28 +112,32 @@ pub(crate) fn choose(start: &StartStep, places: &[Place], own: &Place) -> Result
 
 /// Says in which columns the places that are left differ.
 fn ambiguous(step: &str, shared: &str, places: &[Place], left: &[usize]) -> String {
+    let with = if shared.is_empty() { String::new() } else { format!(" with {shared}") };
+    let count = left.len();
+    let left: Vec<&[(String, Value)]> = left.iter().map(|at| places[*at].columns.as_slice()).collect();
+    let differ = differing(&left);
+    format!("{count} points of `{step}`{with} could be meant; name one with `where`: they differ in {differ}")
+}
+
+/// The columns in which points differ, with their values, the first of them where there are many.
+pub(crate) fn differing(points: &[&[(String, Value)]]) -> String {
     const MOST: usize = 8;
     let mut differ = Vec::new();
-    for (name, first) in &places[left[0]].columns {
+    for (name, _) in points.first().copied().unwrap_or_default() {
         let mut values: Vec<String> = Vec::new();
-        for at in left {
-            let value = places[*at].column(name).map_or_else(String::new, words);
+        for columns in points {
+            let value = columns.iter().find(|(column, _)| column == name).map_or_else(String::new, |(_, v)| words(v));
             if !values.contains(&value) {
                 values.push(value);
             }
         }
-        if values.len() > 1 || values.first() != Some(&words(first)) {
+        if values.len() > 1 {
             let more = if values.len() > MOST { " ..." } else { "" };
             values.truncate(MOST);
             differ.push(format!("`{name}` ({}{more})", values.join(", ")));
         }
     }
-    let with = if shared.is_empty() { String::new() } else { format!(" with {shared}") };
-    let count = left.len();
-    format!(
-        "{count} points of `{step}`{with} could be meant; name one with `where`: they differ in {}",
-        differ.join(", ")
-    )
+    if differ.is_empty() { "nothing".to_owned() } else { differ.join(", ") }
 }
 
 fn words(value: &Value) -> String {
@@ -141,7 +145,7 @@ fn words(value: &Value) -> String {
 }
 
 /// Whether two cells are equal, whole numbers and doubles of one value included.
-pub(super) fn same(a: &Value, b: &Value) -> bool {
+pub(crate) fn same(a: &Value, b: &Value) -> bool {
     a == b || (a.as_f64().is_some() && a.as_f64() == b.as_f64())
 }
 

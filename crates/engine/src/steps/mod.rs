@@ -9,6 +9,7 @@ mod chart;
 mod compare;
 mod crossing;
 mod drawn;
+pub(crate) mod picture;
 mod report;
 mod reweight;
 pub mod sample;
@@ -16,16 +17,25 @@ pub(crate) mod settled;
 mod words;
 
 use crate::failure::Failure;
-use crate::job::{SeriesInput, TableInput, UnitNames};
+use crate::job::{SeriesInput, StateInput, TableInput, UnitNames};
 use crate::series::SeriesReader;
 use spinledger_ledger::{Ledger, Record};
 use spinledger_pipeline::{Pipeline, Point, Step};
+use spinledger_plan::dynamics::ItemRef;
 use spinledger_terms::{Key, Path, Problem, StepSpec, Table, Value, Vocabulary};
 use std::collections::BTreeMap;
 
 /// All kinds.
-pub const KINDS: &[&StepKind] =
-    &[&sample::KIND, &averages::KIND, &reweight::KIND, &crossing::KIND, &compare::KIND, &chart::KIND, &report::KIND];
+pub const KINDS: &[&StepKind] = &[
+    &sample::KIND,
+    &averages::KIND,
+    &reweight::KIND,
+    &crossing::KIND,
+    &compare::KIND,
+    &chart::KIND,
+    &picture::KIND,
+    &report::KIND,
+];
 
 /// Columns of a point that do not tell one group from another.
 pub(crate) const WITHIN_GROUP: [&str; 2] = ["temperature", "inverse_temperature"];
@@ -41,6 +51,8 @@ pub enum Split {
     Groups,
     /// One parcel.
     Whole,
+    /// One parcel, of one kept configuration.
+    State,
 }
 
 /// A kind of step.
@@ -108,6 +120,9 @@ pub struct Checked<'a> {
     pub vocabulary: &'a Vocabulary,
 }
 
+/// Loads a lattice and a Hamiltonian on it.
+type LoadProblem<'a> = dyn Fn(&ItemRef, &ItemRef) -> Result<crate::loaded::Problem, Failure> + 'a;
+
 /// An analysis parcel at work.
 pub struct Task<'a> {
     /// Parameters without names of steps.
@@ -116,6 +131,10 @@ pub struct Task<'a> {
     pub series: &'a [SeriesInput],
     /// The tables it takes.
     pub tables: &'a [TableInput],
+    /// The configuration it takes.
+    pub state: Option<&'a StateInput>,
+    /// Loads a lattice and a Hamiltonian on it; nothing is loaded before.
+    pub(crate) problem: &'a LoadProblem<'a>,
     /// Names of the pipeline's units.
     pub units: &'a UnitNames,
     /// The ledger they are in.
@@ -173,6 +192,13 @@ impl<'a> Inputs<'a> {
             return Err(StepError(format!("the step has no table `{name}`; it has: {}", known.join(", "))));
         }
         Ok(self.ledger.read_table(key, name)?)
+    }
+}
+
+impl From<Failure> for StepError {
+    fn from(failure: Failure) -> Self {
+        let (Failure::Broken(text) | Failure::Disk(text)) = failure;
+        StepError(text)
     }
 }
 

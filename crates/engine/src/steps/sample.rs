@@ -2,7 +2,7 @@
 
 mod course;
 
-pub(crate) use course::{StartStep, start_step};
+pub(crate) use course::{StartStep, must_keep, start_step};
 
 use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use spinledger_pipeline::Point;
@@ -311,6 +311,14 @@ fn refusals(rule: &Item, model: &Item, parameters: Option<&Value>) -> Vec<String
 pub(crate) fn states_of(traits: &ModelTraits, parameters: Option<&Value>) -> Option<u64> {
     let given = || parameters?.at(&traits.states_parameter)?.as_i64().and_then(|q| u64::try_from(q).ok());
     traits.states.or_else(given)
+}
+
+/// How the spins of a model with these parameters are shown: `spins` by their values, `colours`, `angles`, `states` by number.
+pub(crate) fn shown_as(model: &Item, parameters: Option<&Value>) -> &'static str {
+    [("scalar", "spins"), ("colours", "colours"), ("vectors", "angles")]
+        .into_iter()
+        .find(|(offer, _)| offers(model, parameters, offer))
+        .map_or("states", |(_, shown)| shown)
 }
 
 /// In words, why a need is not met: never offered, or spoiled by a parameter.

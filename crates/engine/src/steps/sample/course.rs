@@ -5,7 +5,7 @@ use crate::steps::Checked;
 use crate::steps::cell::conditions;
 use spinledger_pipeline::Point;
 use spinledger_plan::states::Keep;
-use spinledger_terms::{Field, Kind, Problem, Value};
+use spinledger_terms::{Field, Kind, Path, Problem, Value};
 use std::collections::BTreeMap;
 
 /// The kind of `start`.
@@ -108,6 +108,26 @@ fn check_follow(step: &Checked<'_>, point: &Point, body: &Value, problems: &mut 
     }
 }
 
+/// The sample step that a parameter names must keep configurations.
+pub(crate) fn must_keep(step: &Checked<'_>, parameter: &str, problems: &mut Vec<Problem>) {
+    let Some(own) = step.points.first() else { return };
+    let name = own.get(parameter);
+    if let Some(name) = name.as_ref().and_then(Value::as_str) {
+        keeps(step, name, &own.place(parameter), problems);
+    }
+}
+
+/// Whether a sample step keeps configurations at all of its points; said where it does not. Also where its points are not known yet.
+fn keeps(step: &Checked<'_>, name: &str, place: &Path, problems: &mut Vec<Problem>) -> bool {
+    let sampled = step.kinds.get(name).is_some_and(|does| does == "sample");
+    let points = step.earlier.get(name).filter(|_| sampled).map_or(&[][..], Vec::as_slice);
+    let Some(without) = points.iter().find(|point| kept_of(&point.body()).is_none()) else { return true };
+    let problem = Problem::at_value(place, format!("`{name}` keeps no configurations"));
+    let problem = problem.other(without.place("measure"), format!("`{name}` measures here"));
+    problems.push(problem.expected(format!("`keep: {{ states: last }}` in `{name}`")));
+    false
+}
+
 fn check_start(step: &Checked<'_>, point: &Point, start: &StartStep, problems: &mut Vec<Problem>) {
     let place = point.place("start");
     if point.column("start").is_some() {
@@ -127,14 +147,8 @@ fn check_start(step: &Checked<'_>, point: &Point, start: &StartStep, problems: &
     }
     // Empty where its scan waits for a table.
     let Some(points) = step.earlier.get(name).filter(|points| !points.is_empty()) else { return };
-    if points.iter().any(|point| kept_of(&point.body()).is_none()) {
-        let problem = Problem::at_value(&step_place, format!("`{name}` keeps no configurations"));
-        let there = points.first().map(|point| point.place("measure"));
-        let problem = problem.expected(format!("`keep: {{ states: last }}` in `{name}`"));
-        return problems.push(match there {
-            Some(there) => problem.other(there, format!("`{name}` measures here")),
-            None => problem,
-        });
+    if !keeps(step, name, &step_place, problems) {
+        return;
     }
     let of = |point: &Point| Place::of(point, step.pipeline, step.vocabulary);
     let places: Option<Vec<Place>> = points.iter().map(of).collect();
