@@ -1,5 +1,6 @@
 //! `picture`: one kept configuration as a picture, in SVG and PNG, with the walls between its domains.
 
+mod dual;
 mod place;
 
 use super::cell::{conditions, conditions_words};

@@ -1,6 +1,6 @@
 //! Which configuration is meant, and where its sites are in the plane.
 
-use super::*;
+use super::{dual, *};
 use spinledger_host::Graph;
 
 /// A kept configuration, as far as it matters which is meant.
@@ -136,10 +136,8 @@ pub(crate) struct Placed {
     pub(crate) sites: Vec<usize>,
     /// Where they are, in nearest-neighbour distances.
     pub(crate) positions: Vec<[f64; 2]>,
-    /// Neighbours in the plane, by their places among the sites.
-    neighbours: Vec<[usize; 2]>,
-    /// Length of a wall as a share of the distance between neighbours.
-    length: f64,
+    /// Neighbours in the plane, by their places among the sites, and the wall between them: x0, y0, x1, y1.
+    neighbours: Vec<([usize; 2], [f64; 4])>,
 }
 
 impl Placed {
@@ -172,7 +170,7 @@ impl Placed {
         let flat = |p: &[f64]| [dot(p, &first), dot(p, &second)];
         let positions: Vec<[f64; 2]> = sites.iter().map(|site| flat(position(*site))).collect();
         // Bonds around a period join sites that are not neighbours in the plane.
-        let mut bonds: Vec<(f64, [usize; 2])> = Vec::new();
+        let mut bonds: Vec<(f64, usize, [usize; 2])> = Vec::new();
         for (number, bond) in graph.bonds.iter().enumerate() {
             let wraps = graph.wraps.get(number * d..number * d + d).is_some_and(|wraps| wraps.iter().any(|w| *w != 0));
             let (Ok(i), Ok(j)) = (sites.binary_search(&(bond.i as usize)), sites.binary_search(&(bond.j as usize)))
@@ -184,33 +182,35 @@ impl Placed {
             // Bonds that leave the plane are seen from above.
             let length = dot(&step, &step).sqrt();
             if !wraps && (dot(&across, &across).sqrt() - length).abs() < 1e-6 {
-                bonds.push((length, [i, j]));
+                bonds.push((length, number, [i, j]));
             }
         }
         let shortest = bonds.iter().map(|b| b.0).fold(f64::INFINITY, f64::min);
-        let neighbours: Vec<[usize; 2]> =
-            bonds.into_iter().filter(|b| b.0 < shortest * (1.0 + 1e-6)).map(|b| b.1).collect();
+        bonds.retain(|b| b.0 < shortest * (1.0 + 1e-6));
         let mut degree = vec![0usize; sites.len()];
-        neighbours.iter().flatten().for_each(|site| degree[*site] += 1);
+        bonds.iter().flat_map(|b| b.2).for_each(|site| degree[site] += 1);
         let length = wall_length(degree.into_iter().max().unwrap_or(0));
-        Ok(Placed { sites, positions, neighbours, length })
+        let ends = if d == 2 { dual::ends(graph) } else { Vec::new() };
+        let wall = |number: usize, [i, j]: [usize; 2]| {
+            let ([ax, ay], [bx, by]) = (positions[i], positions[j]);
+            let middle = [(ax + bx) / 2.0, (ay + by) / 2.0];
+            let across = [(ay - by) * length / 2.0, (bx - ax) * length / 2.0];
+            let [p, q] = ends.get(number).copied().flatten().unwrap_or([[-across[0], -across[1]], across]);
+            [middle[0] + p[0], middle[1] + p[1], middle[0] + q[0], middle[1] + q[1]]
+        };
+        let neighbours = bonds.iter().map(|(_, number, pair)| (*pair, wall(*number, *pair))).collect();
+        Ok(Placed { sites, positions, neighbours })
     }
 
-    /// Walls across the middle between neighbours of different states: x0, y0, x1, y1. States by site.
+    /// Walls between neighbours of different states: x0, y0, x1, y1. States by site.
     pub(crate) fn walls(&self, states: &[i64]) -> Vec<[f64; 4]> {
         let state = |place: usize| states.get(self.sites[place]);
-        let wall = |[i, j]: &[usize; 2]| {
-            let ([ax, ay], [bx, by]) = (self.positions[*i], self.positions[*j]);
-            let (mx, my) = ((ax + bx) / 2.0, (ay + by) / 2.0);
-            let (nx, ny) = ((ay - by) * self.length / 2.0, (bx - ax) * self.length / 2.0);
-            [mx - nx, my - ny, mx + nx, my + ny]
-        };
-        self.neighbours.iter().filter(|[i, j]| state(*i) != state(*j)).map(wall).collect()
+        self.neighbours.iter().filter(|([i, j], _)| state(*i) != state(*j)).map(|(_, wall)| *wall).collect()
     }
 }
 
-/// Length of a wall between neighbours at distance 1, by the largest number of neighbours: the side of the dual lattice. Exact for the regular tilings,
-/// and near for others.
+/// Length of a wall between neighbours at distance 1 beside no face, by the largest number of neighbours: the side of the dual lattice of the regular
+/// tiling with so many.
 fn wall_length(neighbours: usize) -> f64 {
     match neighbours {
         3 => 3f64.sqrt(),
