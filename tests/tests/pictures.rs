@@ -27,8 +27,11 @@ fn run(text: &str) -> Desk {
     desk
 }
 
+/// Two places.
+type Pair = ([f64; 2], [f64; 2]);
+
 /// The picture's walls, and sites that have neighbours at distance 1 within the picture in another state: pairs of places.
-fn walls(desk: &Desk, step: &str) -> (Table, Vec<[f64; 4]>, Vec<([f64; 2], [f64; 2])>) {
+fn walls(desk: &Desk, step: &str) -> (Table, Vec<[f64; 4]>, Vec<Pair>) {
     let main = desk.table(&format!("results/pictures/{step}.parquet"));
     let walls = desk.table(&format!("results/pictures/{step}.walls.parquet"));
     let ends = ["x0", "y0", "x1", "y1"].map(|name| numbers(&walls, name));
@@ -88,6 +91,39 @@ fn walls_stand_between_unlike_neighbours() {
             assert!(key.is_some() && key == file_key(&desk.path("results/pictures/shot.png")).expect("a figure"));
             assert_eq!(key, file_key(&desk.path("results/pictures/shot.parquet")).expect("a table"));
         }
+    }
+}
+
+/// Around the middle of each face the number of walls of two states is even: walls go on, or around. Beyond the rim is no face.
+#[test]
+fn walls_go_on_from_face_to_face() {
+    let steps = "  shot: { does: picture, of: spins }\n";
+    // How far from its middle a face has how many corners.
+    let faces: [(&str, &[(usize, f64)]); 4] = [
+        ("square", &[(4, 0.5f64.sqrt())]),
+        ("triangular", &[(3, 1.0 / 3f64.sqrt())]),
+        ("honeycomb", &[(6, 1.0)]),
+        ("kagome", &[(3, 1.0 / 3f64.sqrt()), (6, 1.0)]),
+    ];
+    for (lattice, faces) in faces {
+        let text = pipeline(&format!("{{ plugin: {lattice}, size: 7, boundary: free }}"), "ising", "metropolis", steps);
+        let desk = run(&text.replace("2.4", "9.0"));
+        let (main, segments, _) = walls(&desk, "shot");
+        let (x, y) = (numbers(&main, "x"), numbers(&main, "y"));
+        let mut ends: Vec<([f64; 2], usize)> = Vec::new();
+        for end in segments.iter().flat_map(|s| [[s[0], s[1]], [s[2], s[3]]]) {
+            match ends.iter_mut().find(|(known, _)| (known[0] - end[0]).hypot(known[1] - end[1]) < 1e-6) {
+                Some((_, count)) => *count += 1,
+                None => ends.push((end, 1)),
+            }
+        }
+        let corners = |end: &[f64; 2], distance: f64| {
+            x.iter().zip(&y).filter(|(x, y)| ((**x - end[0]).hypot(**y - end[1]) - distance).abs() < 1e-6).count()
+        };
+        let inside: Vec<_> =
+            ends.iter().filter(|(end, _)| faces.iter().any(|(n, distance)| corners(end, *distance) == *n)).collect();
+        assert!(inside.len() > 20, "{lattice}: {} of {}", inside.len(), ends.len());
+        assert!(inside.iter().all(|(_, count)| count % 2 == 0), "{lattice}");
     }
 }
 

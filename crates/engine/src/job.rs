@@ -17,7 +17,7 @@ pub enum Job {
     /// Gather the kept configurations of a step.
     States(StatesJob),
     /// Compute an analysis parcel.
-    Analyse(AnalyseJob),
+    Analyse(Box<AnalyseJob>),
 }
 
 /// Sample the chains of a group up to a number of rows.

@@ -232,7 +232,7 @@ impl Run<'_> {
             let words = words::point(parcel.columns.iter().map(|(name, _, value)| (name, value)));
             let rows = |p: &crate::job::SeriesInput| p.pieces.iter().map(|piece| piece.rows).sum::<u64>();
             let cost = parcel.job.series.iter().map(rows).sum::<u64>() as f64;
-            items.push(Item { step: number, point: at, words, job: Job::Analyse(parcel.job.clone()), cost });
+            items.push(Item { step: number, point: at, words, job: Job::Analyse(Box::new(parcel.job.clone())), cost });
         }
         let counts = self.outcome.steps.entry(step.name.clone()).or_default();
         counts.reused += recorded;

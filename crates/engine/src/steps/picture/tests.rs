@@ -1,15 +1,17 @@
 use super::*;
 
-fn main_table(points: &[(f64, f64, f64, i64)]) -> Table {
-    let numbers = |name: &str, f: &dyn Fn(&(f64, f64, f64, i64)) -> f64| {
-        Column::numbers(name, "", points.iter().map(|p| Some(f(p))).collect())
-    };
+/// Place, value and shade of a site.
+type Site = (f64, f64, f64, i64);
+
+fn main_table(points: &[Site]) -> Table {
+    let numbers =
+        |name: &str, f: fn(&Site) -> f64| Column::numbers(name, "", points.iter().map(|p| Some(f(p))).collect());
     Table {
         columns: vec![
             Column::integers("site", "", (0..points.len() as i64).map(Some).collect()),
-            numbers("x", &|p| p.0),
-            numbers("y", &|p| p.1),
-            numbers("value", &|p| p.2),
+            numbers("x", |p| p.0),
+            numbers("y", |p| p.1),
+            numbers("value", |p| p.2),
             Column::integers("state", "", points.iter().map(|p| Some(p.3)).collect()),
         ],
     }
