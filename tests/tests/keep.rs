@@ -72,11 +72,14 @@ fn run(text: &str) -> Desk {
     desk
 }
 
+/// Energy and order of a configuration, per site.
+type Sums = fn(&[f64]) -> (f64, f64);
+
 /// Energy and magnetisation of each kept configuration, summed here bond by bond, are those that were recorded at its sweep.
 #[test]
 fn kept_configurations_are_those_that_were_measured() {
     let more = "    scan: { temperature: [1.0, 3.0] }\n    measure: 20\n    chains: 2\n    keep: { every: 7 }\n";
-    let cases: [(&str, &str, fn(&[f64]) -> (f64, f64)); 2] = [
+    let cases: [(&str, &str, Sums); 2] = [
         (ISING, "magnetisation", |spins| {
             let energy =
                 bonds(spins, 5, 6, |a, b, x| -a * b * if x { 1.0 } else { 0.5 }) - 0.25 * spins.iter().sum::<f64>();
