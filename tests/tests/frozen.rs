@@ -74,6 +74,19 @@ fn pipeline() -> String {
     let sizes =
         "scan: { lattice.size: [4, 6, 8, 12], temperature: [2.1, 2.25, 2.4] }\n    equilibrate: 100\n    measure: 2000";
     steps += &step("sizes", square, "ising", "wolff", both, sizes);
+    // Configurations that are kept, begun from and followed, and a picture of each kind.
+    let kept = "temperature: 2.2\n    equilibrate: 10\n    measure: 40\n    start: both\n    keep: { every: 16 }";
+    let triangular = "plugin: triangular, size: 6, boundary: [periodic, free]";
+    steps += &step("kept", triangular, "{ plugin: potts, q: 3 }", "heat-bath", colours, kept);
+    let from_kept =
+        "temperature: 1.2\n    equilibrate: 0\n    measure: 20\n    start: { step: kept }\n    keep: { states: last }";
+    steps += &step("from-kept", triangular, "{ plugin: potts, q: 3 }", mixed, colours, from_kept);
+    let path = "temperature: 1.9\n    scan: { model.field: [1, 0, -1, 0] }\n    follow: model.field\n    equilibrate: 2\n    measure: 20\n    \
+                keep: { states: last }";
+    steps += &step("followed", square, ising, "{ plugin: metropolis, lanes: 64 }", both, path);
+    steps += "  picture: { does: picture, of: from-kept, chain: 1 }
+  picture-followed: { does: picture, of: followed, where: { position: 3 } }
+";
     steps += "  crossing: { does: crossing, of: sizes }
   crossing-known: { does: crossing, of: sizes, one_over_nu: 1, correction: 1.75 }
   curves: { does: reweight, of: sizes, temperature: { from: 2, to: 2.5, count: 11 } }

@@ -106,14 +106,134 @@ const CASES: &[Case] = &[
     ("spinledger: 1", "spinledger: 2", "1:13", &["2"]),
 ];
 
+/// Sound steps that begin from others, follow and keep, to be spoilt.
+const SEQUENCES: &str = r#"spinledger: 1
+pipeline: wrong
+seed: 1
+steps:
+  hot:
+    does: sample
+    lattice: { plugin: square, size: 8 }
+    model: { plugin: ising }
+    update: metropolis
+    observe: [energy, magnetisation]
+    measure: 10
+    temperature: 3.0
+    scan: { model.field: [0, 1] }
+    keep: { states: last }
+  cold:
+    does: sample
+    lattice: { plugin: square, size: 8 }
+    model: { plugin: ising }
+    update: metropolis
+    observe: [energy, magnetisation]
+    measure: 10
+    start: { step: hot }
+    follow: temperature
+    scan: { temperature: [3, 2, 3], model.field: [1] }
+  means: { does: averages, of: cold }
+"#;
+
+const SEQUENCE_CASES: &[Case] = &[
+    ("{ states: last }", "{}", "14:11", &["`keep` does not say which", "`states: last`, or `every: n`"]),
+    ("{ states: last }", "{ states: last, every: 2 }", "14:11", &["cannot both be asked for"]),
+    ("{ states: last }", "{ states: first }", "14:21", &["`first` is not known here", "last"]),
+    ("{ states: last }", "{ every: 11 }", "14:20", &["of 10 measurements every 11th is none", "at most 10"]),
+    (
+        "    keep: { states: last }\n",
+        "",
+        "21:20",
+        &["`hot` keeps no configurations", "`keep: { states: last }` in `hot`"],
+    ),
+    ("start: { step: hot }", "start: { step: hut }", "22:20", &["no step `hut`", "nearest: hot"]),
+    ("start: { step: hot }", "start: { step: cold }", "22:20", &["refers to itself"]),
+    ("start: { step: hot }", "start: { step: means }", "22:20", &["circle"]),
+    ("start: { step: hot }", "start: hot", "22:12", &["`hot` is not known here", "random, ordered, both"]),
+    ("start: { step: hot }", "start: { step: hot, where: { sise: 8 } }", "22:20", &["no column `sise`", "size, field"]),
+    (
+        "start: { step: hot }",
+        "start: { step: hot, where: { size: 9 } }",
+        "22:20",
+        &["`hot` has no point with field 1.0, size 9"],
+    ),
+    (", model.field: [1]", "", "22:20", &["2 points of `hot` with size 8 could be meant", "`field` (0.0, 1.0)"]),
+    ("model.field: [1]", "model.field: [2]", "22:20", &["`hot` has no point with size 8, field 2.0"]),
+    (
+        "model.field: [1] }",
+        "lattice.size: [9], model.field: [1] }",
+        "22:20",
+        &["`hot` has no point with size 9, field 1.0"],
+    ),
+    ("model.field: [1] }", "model.field: [1], start: [{ step: hot }] }", "24:63", &["a scan cannot name the step"]),
+    (
+        "follow: temperature",
+        "follow: temprature",
+        "23:13",
+        &["`temprature`, which is not scanned", "nearest: temperature"],
+    ),
+    ("follow: temperature", "follow: 3", "23:13", &["a whole number stands where"]),
+    (
+        "    scan: { temperature: [3, 2, 3], model.field: [1] }",
+        "    temperature: 2.0",
+        "23:13",
+        &["`follow` names `temperature`, which is not scanned"],
+    ),
+    (
+        "follow: temperature\n    scan: { temperature: [3, 2, 3],",
+        "follow: lattice.size\n    temperature: 3.0\n    scan: { lattice.size: [8],",
+        "23:13",
+        &["chains cannot go on where `lattice.size` has changed", "or a parameter of the"],
+    ),
+    ("    measure: 10\n    start", "    measure: 1\n    start", "21:14", &["at no position would the chains be swept"]),
+    (
+        "{ does: averages, of: cold }",
+        "{ does: crossing, of: cold }",
+        "25:32",
+        &["the points of `cold` follow each other: they are not in equilibrium"],
+    ),
+    (
+        "{ does: averages, of: cold }",
+        "{ does: reweight, of: cold, temperature: [2, 3] }",
+        "25:32",
+        &["the points of `cold` follow each other", "a sample step without `follow`"],
+    ),
+    (
+        "model: { plugin: ising }\n    update: metropolis\n    observe: [energy, magnetisation]\n    measure: 10\n    start",
+        "model: { plugin: potts, q: 3 }\n    update: metropolis\n    observe: [energy]\n    measure: 10\n    start",
+        "",
+        &["`potts`"],
+    ),
+];
+
+/// A start from configurations of another lattice or of other spins.
+#[test]
+fn configurations_must_fit() {
+    let desk = Desk::new();
+    let plain = SEQUENCES.replace("    scan: { model.field: [0, 1] }\n", "").replace(", model.field: [1]", "");
+    desk.write("plain.yaml", &plain);
+    assert_eq!(desk.run(&["check", "plain.yaml"]).status, Some(0));
+    let (hot, cold) = plain.split_once("  cold:").expect("two steps");
+    for (from, to, wanted) in [
+        ("{ plugin: ising }", "{ plugin: potts, q: 3 }", "the spins of `hot` have 3 states, and here they have 2"),
+        ("plugin: square", "plugin: triangular", "the lattice of `hot` is triangular, and here it is square"),
+    ] {
+        let hot = hot.replace(from, to).replace(", magnetisation]", "]");
+        desk.write("case.yaml", &format!("{hot}  cold:{cold}"));
+        let ran = desk.run(&["check", "case.yaml"]);
+        assert!(ran.status == Some(2) && ran.err.contains(wanted), "{}", ran.err);
+    }
+}
+
 #[test]
 fn each_mistake_is_found_at_its_place() {
     let desk = Desk::new();
     let mut failures = Vec::new();
-    for (number, (from, to, place, wanted)) in CASES.iter().enumerate() {
-        assert!(SOUND.contains(from), "case {number} replaces what is there");
+    let plain = CASES.iter().map(|case| (SOUND, case));
+    let all = plain.chain(SEQUENCE_CASES.iter().map(|case| (SEQUENCES, case)));
+    for (number, (sound, (from, to, place, wanted))) in all.enumerate() {
+        assert!(sound.contains(from), "case {number} replaces what is there");
         let name = format!("case-{number}.yaml");
-        desk.write(&name, &SOUND.replacen(from, to, 1));
+        desk.write(&name, &sound.replacen(from, to, 1));
         let ran = desk.run(&["check", &name]);
         let start = format!("{name}:{place}");
         let place_found = ran
@@ -136,9 +256,11 @@ fn each_mistake_is_found_at_its_place() {
 #[test]
 fn the_sound_pipeline_is_sound() {
     let desk = Desk::new();
-    desk.write("sound.yaml", SOUND);
-    let ran = desk.run(&["check", "sound.yaml"]);
-    assert_eq!(ran.status, Some(0), "{}", ran.err);
+    for sound in [SOUND, SEQUENCES] {
+        desk.write("sound.yaml", sound);
+        let ran = desk.run(&["check", "sound.yaml"]);
+        assert_eq!(ran.status, Some(0), "{}", ran.err);
+    }
 }
 
 #[test]

@@ -3,17 +3,23 @@
 use crate::failure::Failure;
 use crate::job::{AnalyseJob, Entry, Report};
 use crate::line::Line;
+use crate::loaded::Loaded;
 use crate::program;
 use crate::steps::{self, Task};
 use spinledger_ledger::{Claim, Draft, Input, Ledger, Payload};
+use spinledger_plan::dynamics::ItemRef;
 use spinledger_terms::Key;
+use std::cell::RefCell;
 use std::time::Instant;
 
 /// Does the parcel.
 ///
 /// # Errors
 /// Why it was not done.
-pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<Report, Failure> {
+pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, loaded: &mut Loaded, line: &Line) -> Result<Report, Failure> {
+    if let Some(reason) = &job.refused {
+        return Err(Failure::Broken(reason.clone()));
+    }
     let key = Key::of(&job.preimage);
     let _claim = match ledger.claim(&key, &job.does)? {
         Claim::Mine(guard) => guard,
@@ -26,10 +32,14 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     let mut provenance = program::provenance(job.parameters.clone(), 1);
     let started = Instant::now();
     let progress = || line.progress(0);
+    let loaded = RefCell::new(loaded);
+    let problem = |lattice: &ItemRef, model: &ItemRef| loaded.borrow_mut().problem_of(lattice, model);
     let task = Task {
         parameters: &job.parameters,
         series: &job.series,
         tables: &job.tables,
+        state: job.state.as_ref(),
+        problem: &problem,
         units: &job.units,
         ledger,
         progress: &progress,
@@ -37,7 +47,9 @@ pub(crate) fn analyse(job: &AnalyseJob, ledger: &Ledger, line: &Line) -> Result<
     let output = (kind.analyse)(&task)?;
     let series = job.series.iter().map(|s| Input { name: s.role.clone(), key: s.key, content: s.content });
     let tables_in = job.tables.iter().map(|t| Input { name: t.role.clone(), key: t.key, content: t.content });
-    provenance.inputs = series.chain(tables_in).collect();
+    let state = job.state.iter().map(|s| Input { name: s.role.clone(), key: s.key, content: s.content });
+    provenance.inputs = series.chain(tables_in).chain(state).collect();
+    provenance.plugins = job.state.iter().flat_map(|s| [&s.lattice, &s.model]).map(|i| i.identity.clone()).collect();
     provenance.seconds = started.elapsed().as_secs_f64();
     provenance.finished = spinledger_ledger::now();
     provenance.pipeline = job.pipeline;

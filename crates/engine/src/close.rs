@@ -1,11 +1,12 @@
-//! Closing a point: its blocks are complete, so its series gets an entry (a record without tables of its own), and its file in the folder of results.
+//! Closing a step. A point: its blocks are complete, so its series gets an entry (a record without tables of its own), and its file in the folder of results.
 
 use crate::failure::Failure;
-use crate::job::{CloseJob, Entry, Report, SeriesNote};
+use crate::job::{CloseJob, Entry, Report, SeriesNote, StatesJob};
 use crate::line::Line;
 use crate::program;
 use spinledger_ledger::{
-    Constant, Draft, Input, Ledger, Piece as FilePiece, assemble, combine, content_of_block, content_of_entry,
+    Constant, Draft, Input, Ledger, Part, Piece as FilePiece, assemble, combine, content_of_block, content_of_entry,
+    join,
 };
 use spinledger_plan::sample::Piece;
 use spinledger_terms::{ContentHash, Key, Value};
@@ -62,6 +63,55 @@ pub(crate) fn close(job: &CloseJob, ledger: &Ledger, line: &Line) -> Result<Repo
             }
         });
         assemble(ledger.writes(), &layout.path, &key, &constants, pieces)?;
+    }
+    Ok(Report::Done { computed: false, updates: 0, entries })
+}
+
+/// Publishes the record of a step's kept configurations where it is not there, and writes their table where that is asked for.
+///
+/// # Errors
+/// Where the ledger cannot be read or written.
+pub(crate) fn close_states(job: &StatesJob, ledger: &Ledger, line: &Line) -> Result<Report, Failure> {
+    let key = Key::of(&job.preimage);
+    let mut entries = Vec::new();
+    if job.publish {
+        let all = || job.points.iter().flat_map(|point| point.kept.iter().map(move |kept| (point, kept)));
+        let contents: Vec<ContentHash> = all().map(|(_, kept)| kept.content).collect();
+        let mut provenance = program::provenance(Value::Map(Default::default()), 1);
+        provenance.inputs = all()
+            .map(|(point, kept)| {
+                let start = if job.several { format!("{} ", point.starts[kept.start]) } else { String::new() };
+                let name = format!("{start}chain {} sweep {}", kept.chain, kept.sweep);
+                Input { name, key: kept.key, content: kept.content }
+            })
+            .collect();
+        provenance.finished = spinledger_ledger::now();
+        provenance.pipeline = job.pipeline;
+        let draft = Draft::new(&job.preimage, "states", provenance).content(combine("states", &contents));
+        let content = ledger.publish(draft)?.content;
+        let kind = "states".to_owned();
+        entries.push(Entry { key, kind, chain: None, content, seconds: 0.0, updates: 0, note: String::new() });
+    }
+    if let Some(path) = &job.path {
+        let parts = job.points.iter().flat_map(|point| {
+            point.kept.iter().map(move |kept| {
+                line.progress(0);
+                let constant = |name: &str, unit: &str, value: Value| Constant {
+                    name: name.to_owned(),
+                    unit: unit.to_owned(),
+                    value,
+                };
+                let mut constants: Vec<Constant> =
+                    point.columns.iter().map(|(name, unit, value)| constant(name, unit, value.clone())).collect();
+                if job.several {
+                    constants.push(constant("start", "", Value::text(&point.starts[kept.start])));
+                }
+                constants.push(constant("chain", "", Value::Integer(kept.chain.into())));
+                constants.push(constant("sweep", "sweeps", Value::Integer(kept.sweep as i64)));
+                Part { path: ledger.table_path(&kept.key, "main"), constants }
+            })
+        });
+        join(ledger.writes(), path, &key, parts)?;
     }
     Ok(Report::Done { computed: false, updates: 0, entries })
 }

@@ -7,6 +7,7 @@ use crate::study::Study;
 use spinledger_ledger::{Index, Ledger, LedgerError};
 use spinledger_pipeline::Step;
 use spinledger_plan::sample::State;
+use spinledger_plan::sequence::parcels;
 
 /// The forecast of a pipeline.
 #[derive(Clone, Debug, serde::Serialize)]
@@ -92,18 +93,17 @@ fn sample(
             return;
         }
     };
-    let (mut parcels, mut due) = (0, 0);
-    for point in &points {
-        for group in &point.groups {
-            parcels += 1;
-            match group.state(point.measure) {
-                State::Recorded => forecast.recorded += 1,
-                State::Partial => forecast.partial += 1,
-                State::Due => due += 1,
-            }
+    let mut due = 0;
+    let all = parcels(&points);
+    for parcel in &all {
+        match parcel.state(&points) {
+            State::Recorded => forecast.recorded += 1,
+            State::Partial => forecast.partial += 1,
+            State::Due => due += 1,
         }
-        forecast.updates += point.updates_due();
+        forecast.updates += parcel.updates_due(&points);
     }
+    let parcels = all.len() as u64;
     forecast.parcels = Some(parcels);
     forecast.due = Some(due);
     let series: Vec<_> = points.iter().map(|point| closed_series(study, step, point, index)).collect();

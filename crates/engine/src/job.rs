@@ -1,7 +1,9 @@
 //! What the runner and its workers say to each other: JSON, a line each.
 
 use serde::{Deserialize, Serialize};
+use spinledger_plan::dynamics::ItemRef;
 use spinledger_plan::sample::{Group, Piece, Point};
+use spinledger_plan::states::Kept;
 use spinledger_terms::{ColumnSpec, ContentHash, Key, Value};
 
 /// One piece of work: what the runner tells a worker.
@@ -12,26 +14,30 @@ pub enum Job {
     Sample(Box<SampleJob>),
     /// Close a point whose chains are complete: publish its series.
     Close(CloseJob),
+    /// Gather the kept configurations of a step.
+    States(StatesJob),
     /// Compute an analysis parcel.
-    Analyse(AnalyseJob),
+    Analyse(Box<AnalyseJob>),
 }
 
 /// Sample the chains of a group up to a number of rows.
 #[derive(Clone, Debug, Serialize, Deserialize)]
 pub struct SampleJob {
-    /// The point, with this one group.
-    pub point: Point,
+    /// The point, with this one group; those of a sequence in the order in which they are visited.
+    pub points: Vec<Point>,
     /// Hash of the pipeline's text.
     pub pipeline: Option<ContentHash>,
 }
 
 impl SampleJob {
-    /// The group to be sampled.
-    ///
-    /// # Panics
-    /// Where the point has no group; jobs are made with one.
-    pub fn group(&self) -> &Group {
-        &self.point.groups[0]
+    /// The group to be sampled at each point.
+    pub fn groups(&self) -> impl Iterator<Item = (&Point, &Group)> {
+        self.points.iter().filter_map(|point| Some((point, point.groups.first()?)))
+    }
+
+    /// Whether code that did not come with the program takes part.
+    pub fn is_foreign(&self) -> bool {
+        self.points.iter().any(|point| point.dynamics.is_foreign())
     }
 }
 
@@ -61,6 +67,34 @@ pub struct Layout {
     pub path: std::path::PathBuf,
     /// Constant columns before `sites`: name, unit, value.
     pub columns: Vec<(String, String, Value)>,
+}
+
+/// Publish the record of a step's kept configurations, and write their table.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct StatesJob {
+    /// Preimage of its key.
+    pub preimage: String,
+    /// Whether it is not on record yet.
+    pub publish: bool,
+    /// The points that have any, in order.
+    pub points: Vec<StatesOf>,
+    /// Whether there is a column `start`.
+    pub several: bool,
+    /// Where the table goes, if it is to be written.
+    pub path: Option<std::path::PathBuf>,
+    /// Hash of the pipeline's text.
+    pub pipeline: Option<ContentHash>,
+}
+
+/// The kept configurations of a point.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct StatesOf {
+    /// Constant columns, `sites` last: name, unit, value.
+    pub columns: Vec<(String, String, Value)>,
+    /// Start configurations, in order.
+    pub starts: Vec<String>,
+    /// The configurations.
+    pub kept: Vec<Kept>,
 }
 
 /// A series, as an analysis sees it.
@@ -123,6 +157,23 @@ pub struct TableInput {
     pub content: ContentHash,
 }
 
+/// A kept configuration, as an analysis sees it.
+#[derive(Clone, Debug, Serialize, Deserialize)]
+pub struct StateInput {
+    /// What it serves as.
+    pub role: String,
+    /// Its entry.
+    pub key: Key,
+    /// Its content.
+    pub content: ContentHash,
+    /// Its lattice.
+    pub lattice: ItemRef,
+    /// Its model.
+    pub model: ItemRef,
+    /// Which it is: the point, chain and sweep in words.
+    pub words: String,
+}
+
 /// Names of units; empty in reduced units.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct UnitNames {
@@ -145,10 +196,21 @@ pub struct AnalyseJob {
     pub series: Vec<SeriesInput>,
     /// Tables to read.
     pub tables: Vec<TableInput>,
+    /// The configuration to read.
+    pub state: Option<StateInput>,
+    /// Why it cannot be done, found out while it was planned: then it is only said.
+    pub refused: Option<String>,
     /// Names of the pipeline's units.
     pub units: UnitNames,
     /// Hash of the pipeline's text.
     pub pipeline: Option<ContentHash>,
+}
+
+impl AnalyseJob {
+    /// Whether code that did not come with the program takes part.
+    pub fn is_foreign(&self) -> bool {
+        self.state.iter().any(|state| !state.lattice.identity.standard || !state.model.identity.standard)
+    }
 }
 
 /// From a worker to the runner.

@@ -14,6 +14,7 @@ mod failure;
 pub mod forecast;
 mod gather;
 pub mod job;
+mod kept;
 mod line;
 mod loaded;
 pub mod planning;

@@ -49,11 +49,21 @@ impl Loaded {
     /// # Errors
     /// In words, where a plugin cannot be loaded or refuses.
     pub(crate) fn problem(&mut self, dynamics: &Dynamics) -> Result<Problem, Failure> {
-        let (lattice, model) = (&dynamics.lattice, &dynamics.model);
+        self.problem_of(&dynamics.lattice, &dynamics.model)
+    }
+
+    /// A lattice and a Hamiltonian on it.
+    ///
+    /// # Errors
+    /// As of [`Loaded::problem`].
+    pub(crate) fn problem_of(&mut self, lattice: &ItemRef, model: &ItemRef) -> Result<Problem, Failure> {
         if let Some((_, _, problem)) = self.problems.iter().find(|(l, m, _)| l == lattice && m == model) {
             return Ok(problem.clone());
         }
-        let graph = self.loader.lattice(&lattice.identity, &lattice.parameters)?.build()?;
+        let graph = match self.problems.iter().find(|(l, _, _)| l == lattice) {
+            Some((_, _, known)) => known.graph.clone(),
+            None => self.loader.lattice(&lattice.identity, &lattice.parameters)?.build()?,
+        };
         let energy = self.loader.model(&model.identity, &model.parameters)?.describe(&graph)?;
         let problem = Problem { graph, energy };
         self.problems.truncate(KEPT - 1);

@@ -3,18 +3,21 @@
 mod analysis;
 mod columns;
 mod references;
+mod sample;
+pub(crate) mod starts;
+mod state;
 
 pub use analysis::{AnalysisPlan, Parcel, analysis_parcels};
 pub use columns::point_columns;
+pub use sample::{closed_series, sample_points};
 
 use crate::job::SeriesNote;
-use crate::steps::{self, StepKind, sample};
+use crate::steps::{self, StepKind};
 use crate::study::Study;
-use spinledger_ledger::{Index, Ledger};
-use spinledger_pipeline::{Expansion, FromStep, Step};
-use spinledger_plan::dynamics::Dynamics;
-use spinledger_plan::sample::{Piece, Point, plan_point};
-use spinledger_terms::{ContentHash, Key, Kind, Problem, Table, Value};
+use spinledger_pipeline::Step;
+use spinledger_plan::sample::{Piece, Point};
+use spinledger_plan::states::Kept;
+use spinledger_terms::{ContentHash, Key, Kind, Problem, Value};
 use std::collections::BTreeMap;
 
 /// What a step has given.
@@ -44,6 +47,8 @@ pub struct Series {
     pub point: Point,
     /// Its blocks.
     pub pieces: Vec<Piece>,
+    /// Its kept configurations.
+    pub kept: Vec<Kept>,
     /// What only loaded plugins know.
     pub note: SeriesNote,
     /// Constant columns of the point in tables, with units, `sites` last.
@@ -60,88 +65,13 @@ pub enum Unplanned {
     Waits(Vec<String>),
     /// The values it takes from an earlier step's table are wrong.
     Problems(Vec<Problem>),
-    /// A table cannot be read.
+    /// A table cannot be read, or configurations to begin from do not fit.
     Failed(String),
-}
-
-/// The points of a sample step, planned against the index.
-///
-/// # Errors
-/// Where the scan waits for an earlier step, or takes values from it that the parameters cannot have.
-pub fn sample_points(
-    study: &Study,
-    step: &Step,
-    products: &Products,
-    ledger: Option<&Ledger>,
-    index: &Index,
-) -> Result<Vec<Point>, Unplanned> {
-    let failed = std::cell::RefCell::new(None);
-    let lookup = |from: &FromStep| -> Option<Vec<Value>> {
-        let Some(Product::Tables { key, .. }) = products.get(&from.step) else { return None };
-        match ledger?.read_table(key, from.table.as_deref().unwrap_or("main")) {
-            Ok(table) => Some(values_from(&table, from)),
-            Err(error) => {
-                *failed.borrow_mut() = Some(crate::chain_text(&error));
-                None
-            }
-        }
-    };
-    let expansion = step.expand(&lookup, &study.vocabulary).map_err(Unplanned::Problems)?;
-    if let Some(error) = failed.borrow_mut().take() {
-        return Err(Unplanned::Failed(error));
-    }
-    let points = match expansion {
-        Expansion::Points(points) => points,
-        Expansion::Waits(steps) => return Err(Unplanned::Waits(steps)),
-    };
-    let mut planned = Vec::with_capacity(points.len());
-    for point in points {
-        let body = point.body();
-        let dynamics = Dynamics::of(&body, study.pipeline.seed, &study.pipeline.units, &study.vocabulary)
-            .ok_or_else(|| Unplanned::Failed("a point has parameters that are not those of a sample step".into()))?;
-        let mut columns = point.columns.clone();
-        columns::add_size(&mut columns, &body, study);
-        planned.push(plan_point(columns, dynamics, &sample::ask(&body), index));
-    }
-    Ok(planned)
-}
-
-/// The values of a column, in the rows asked for.
-fn values_from(table: &Table, from: &FromStep) -> Vec<Value> {
-    let Some(column) = table.column(&from.column) else { return Vec::new() };
-    let same = |a: &Value, b: &Value| a == b || (a.as_f64().is_some() && a.as_f64() == b.as_f64());
-    let fits = |row: usize| {
-        let filter = from
-            .filter
-            .iter()
-            .all(|(name, value)| table.column(name).is_some_and(|column| same(&column.cells.value(row), value)));
-        filter
-            && from
-                .beside
-                .iter()
-                .all(|(name, value)| table.column(name).is_none_or(|column| same(&column.cells.value(row), value)))
-    };
-    (0..table.rows())
-        .filter(|row| fits(*row))
-        .map(|row| column.cells.value(row))
-        .filter(|v| *v != Value::Null)
-        .collect()
-}
-
-/// The series of a point, where it is complete and closed.
-pub fn closed_series(study: &Study, step: &Step, point: &Point, index: &Index) -> Option<Series> {
-    let mut columns = point_columns(study, step, point);
-    let preimage = point.series_preimage(&columns);
-    let line = index.get(&Key::of(&preimage))?;
-    let note = SeriesNote::from_text(&line.note)?;
-    columns.push(("sites".into(), String::new(), Value::Integer(note.sites as i64)));
-    let pieces = point.pieces(index)?;
-    Some(Series { key: line.key, content: line.content, point: point.clone(), pieces, note, columns })
 }
 
 /// The kind of a step; every step of a checked pipeline has one.
 pub fn kind_of(step: &Step) -> &'static StepKind {
-    steps::kind(&step.does).unwrap_or(&sample::KIND)
+    steps::kind(&step.does).unwrap_or(&steps::sample::KIND)
 }
 
 /// Files of plugins that did not come with the program, as far as a step uses them.

@@ -207,7 +207,11 @@ impl Pool {
             worker.job = None;
         }
         // Foreign code may have left anything behind: its process serves one parcel only.
-        let foreign = matches!(&jobs[job], Job::Sample(job) if job.point.dynamics.is_foreign());
+        let foreign = match &jobs[job] {
+            Job::Sample(job) => job.is_foreign(),
+            Job::Analyse(job) => job.is_foreign(),
+            Job::Close(_) | Job::States(_) => false,
+        };
         if foreign && matches!(meaning, Meaning::Ends(_)) {
             self.places[place] = None;
         }

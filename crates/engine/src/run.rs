@@ -16,6 +16,7 @@ use crate::study::Study;
 use spinledger_ledger::{Index, Ledger, LedgerError, Line};
 use spinledger_pipeline::Step;
 use spinledger_plan::sample::{Point, State};
+use spinledger_plan::sequence::parcels;
 use spinledger_terms::ContentHash;
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::PathBuf;
@@ -186,25 +187,26 @@ impl Run<'_> {
             Err(Unplanned::Waits(_)) => return self.leave(number),
             Err(Unplanned::Failed(message)) => return self.break_step(number, &message),
         };
-        let mut parcels = 0;
         let mut recorded = 0;
         let mut due = 0.0;
-        for (at, point) in points.iter().enumerate() {
-            for group in &point.groups {
-                parcels += 1;
-                if group.state(point.measure) == State::Recorded {
-                    recorded += 1;
-                    continue;
-                }
-                let mut one = point.clone();
-                one.groups = vec![group.clone()];
-                let cost = one.updates_due();
-                due += cost;
-                let job = Job::Sample(Box::new(SampleJob { point: one, pipeline: None }));
-                let words = words::group(point, group);
-                items.push(Item { step: number, point: at, words, job, cost });
+        let parcels = parcels(&points);
+        for parcel in &parcels {
+            if parcel.state(&points) == State::Recorded {
+                recorded += 1;
+                continue;
             }
+            let along: Vec<Point> = parcel
+                .groups(&points)
+                .map(|(point, group)| Point { groups: vec![group.clone()], ..point.clone() })
+                .collect();
+            let cost = parcel.updates_due(&points);
+            due += cost;
+            let Some((point, _)) = parcel.parts.first() else { continue };
+            let words = words::parcel(parcel.groups(&points), &step.followed());
+            let job = Job::Sample(Box::new(SampleJob { points: along, pipeline: None }));
+            items.push(Item { step: number, point: *point, words, job, cost });
         }
+        let parcels = parcels.len() as u64;
         let counts = self.outcome.steps.entry(step.name.clone()).or_default();
         counts.reused += recorded;
         self.outcome.counts.reused += recorded;
@@ -230,7 +232,7 @@ impl Run<'_> {
             let words = words::point(parcel.columns.iter().map(|(name, _, value)| (name, value)));
             let rows = |p: &crate::job::SeriesInput| p.pieces.iter().map(|piece| piece.rows).sum::<u64>();
             let cost = parcel.job.series.iter().map(rows).sum::<u64>() as f64;
-            items.push(Item { step: number, point: at, words, job: Job::Analyse(parcel.job.clone()), cost });
+            items.push(Item { step: number, point: at, words, job: Job::Analyse(Box::new(parcel.job.clone())), cost });
         }
         let counts = self.outcome.steps.entry(step.name.clone()).or_default();
         counts.reused += recorded;
@@ -246,6 +248,7 @@ impl Run<'_> {
             match job {
                 Job::Sample(job) => job.pipeline = self.text,
                 Job::Close(job) => job.pipeline = self.text,
+                Job::States(job) => job.pipeline = self.text,
                 Job::Analyse(job) => job.pipeline = self.text,
             }
         }

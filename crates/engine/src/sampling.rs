@@ -2,22 +2,28 @@
 //!
 //! Row r is measured when `settle + equilibrate + r every` sweeps are done. The state of the group is saved, by the clock, with the number of
 //! sweeps done; a later run goes on from it and skips what is on record. Where the state was saved cannot be seen in the results.
+//!
+//! Configurations that are to be kept are put on record while their row is passed. Where the blocks are on record and a configuration is not, the
+//! chains are run again from the latest place before it that there is. In a sequence each position begins from the last configurations of the one
+//! before, read from the ledger.
 
 mod check;
 mod course;
 
 use crate::failure::Failure;
 use crate::job::{Entry, Report, SampleJob, SeriesNote};
+use crate::kept;
 use crate::line::Line;
 use crate::loaded::{Loaded, Problem};
 use crate::program;
 use course::Course;
 use spinledger_host::{Observer, measure_all};
-use spinledger_ledger::{BlockData, ChainPlace, Claim, ColumnData, Draft, Ledger, Payload};
+use spinledger_ledger::{BlockData, ChainPlace, Claim, ColumnData, Draft, Input, Ledger, Payload, Provenance};
 use spinledger_numerics::random::StreamKey;
 use spinledger_plan::blocks::{Block, blocks};
 use spinledger_plan::sample::{Group, Point};
-use spinledger_terms::{ColumnSpec, Key, Value};
+use spinledger_plan::states::Begin;
+use spinledger_terms::{ColumnSpec, ContentHash, Key, Value};
 use std::time::Instant;
 
 /// Does the parcel.
@@ -25,35 +31,92 @@ use std::time::Instant;
 /// # Errors
 /// Why it was not done.
 pub(crate) fn sample(job: &SampleJob, ledger: &Ledger, loaded: &mut Loaded, line: &Line) -> Result<Report, Failure> {
-    let group = job.group();
-    let claim = match ledger.claim(&group.key, "sample")? {
-        Claim::Mine(guard) => guard,
-        Claim::Theirs { host, pid, .. } => return Ok(Report::Held { by: format!("process {pid} on {host}") }),
-    };
     let mut entries = Vec::new();
-    let covered = refresh(ledger, &job.point, group, &mut entries)?;
-    if covered.iter().all(|rows| *rows >= job.point.measure) {
-        return Ok(Report::Done { computed: false, updates: 0, entries });
+    let mut computed = false;
+    // Each position of a sequence begins from what the one before has put on record, whoever did that.
+    for (point, group) in job.groups() {
+        let work = Work { point, group, pipeline: job.pipeline, ledger, line };
+        match work.run(loaded, &mut entries)? {
+            Done::Held(by) => return Ok(Report::Held { by }),
+            Done::Found => {}
+            Done::Computed => computed = true,
+        }
     }
-    let dynamics = &job.point.dynamics;
-    let problem = loaded.problem(dynamics)?;
-    let (observers, columns) = loaded.observers(dynamics, &problem)?;
-    let stream = StreamKey::from_text(&group.stream);
-    let rules = loaded.rules(dynamics, &problem, &stream)?;
-    let mut course = Course::new(&job.point, group, problem.clone(), rules, ledger, claim, line);
-    let first = course.sweeps_at(covered.iter().copied().min().unwrap_or(0));
-    if let Err(reason) = course.take_up(first, &stream)? {
-        course.note(format!("{reason}: started anew"));
-        // What a state has half changed is of no use: a rule that goes on must be as if nothing had happened.
-        course.begin_with(loaded.rules(dynamics, &problem, &stream)?, &stream)?;
+    Ok(Report::Done { computed, updates: line.untold(), entries })
+}
+
+/// What came of a group at a point.
+enum Done {
+    /// All was on record.
+    Found,
+    /// Something was computed.
+    Computed,
+    /// Another process is at it.
+    Held(String),
+}
+
+/// A group of chains at a point.
+struct Work<'a> {
+    point: &'a Point,
+    group: &'a Group,
+    pipeline: Option<ContentHash>,
+    ledger: &'a Ledger,
+    line: &'a Line,
+}
+
+impl Work<'_> {
+    fn run(&self, loaded: &mut Loaded, entries: &mut Vec<Entry>) -> Result<Done, Failure> {
+        let Work { point, group, ledger, .. } = *self;
+        let on_record = |covered: &[u64], owed: &[u64]| owed.is_empty() && covered.iter().all(|n| *n >= point.measure);
+        if on_record(&group.covered, &group.owed) {
+            return Ok(Done::Found);
+        }
+        let claim = match ledger.claim(&group.key, "sample")? {
+            Claim::Mine(guard) => guard,
+            Claim::Theirs { host, pid, .. } => return Ok(Done::Held(format!("process {pid} on {host}"))),
+        };
+        let covered = refresh(ledger, point, group, entries)?;
+        let owed = still_owed(ledger, point, group, entries)?;
+        if on_record(&covered, &owed) {
+            return Ok(Done::Found);
+        }
+        let dynamics = &point.dynamics;
+        let problem = loaded.problem(dynamics)?;
+        let (observers, columns) = loaded.observers(dynamics, &problem)?;
+        let stream = StreamKey::from_text(&group.stream);
+        let rules = loaded.rules(dynamics, &problem, &stream)?;
+        let mut course = Course::new(point, group, problem.clone(), rules, ledger, claim, self.line);
+        let rows = covered.iter().copied().min().unwrap_or(0);
+        let first = owed.first().map_or(rows, |row| rows.min(*row));
+        let end = if rows < point.measure { point.measure } else { owed.last().map_or(0, |row| row + 1) };
+        let (first, last) = (course.sweeps_at(first), course.sweeps_at(end.saturating_sub(1)));
+        if let Err(reason) = course.take_up(first, last, &stream)? {
+            course.note(format!("{reason}: started anew"));
+            // What a state has half changed is of no use: a rule that goes on must be as if nothing had happened.
+            course.begin_with(loaded.rules(dynamics, &problem, &stream)?, &stream)?;
+        }
+        let threads = loaded.threads();
+        let recorder = Recorder { work: self, problem: &problem, columns, threads, inputs: self.begins_from() };
+        let finished = recorder.record(&mut course, observers, (&covered, &owed), entries)?;
+        if !finished {
+            return Err("stopped, since the runner is gone".into());
+        }
+        course.save()?;
+        Ok(Done::Computed)
     }
-    let recorder = Recorder { job, group, ledger, problem: &problem, columns, threads: loaded.threads() };
-    let finished = recorder.record(&mut course, observers, &covered, &mut entries)?;
-    if !finished {
-        return Err("stopped, since the runner is gone".into());
+
+    /// The configurations that the chains began from, for records.
+    fn begins_from(&self) -> Vec<Input> {
+        let Begin::States(keys) = &self.group.begin else { return Vec::new() };
+        // Read where it was taken up; where that was long ago, it may be gone.
+        let content = |key: &Key| self.ledger.read_record(key).map(|record| record.content).ok();
+        keys.iter()
+            .enumerate()
+            .filter_map(|(lane, key)| {
+                Some(Input { name: format!("start of lane {lane}"), key: *key, content: content(key)? })
+            })
+            .collect()
     }
-    course.save()?;
-    Ok(Report::Done { computed: true, updates: line.untold(), entries })
 }
 
 /// What is on record by now: another run may have gone on since the plan was made.
@@ -75,6 +138,24 @@ fn refresh(ledger: &Ledger, point: &Point, group: &Group, entries: &mut Vec<Entr
     Ok(covered)
 }
 
+/// Rows whose configurations are not on record by now.
+fn still_owed(ledger: &Ledger, point: &Point, group: &Group, entries: &mut Vec<Entry>) -> Result<Vec<u64>, Failure> {
+    let mut owed = Vec::new();
+    for &row in &group.owed {
+        let mut missing = false;
+        for lane in 0..point.chains_kept(group, row) {
+            match ledger.lookup(&Key::of(&group.state_preimage(lane, row)))? {
+                Some(found) => entries.push(Entry::of(&found)),
+                None => missing = true,
+            }
+        }
+        if missing {
+            owed.push(row);
+        }
+    }
+    Ok(owed)
+}
+
 /// When a block was begun, for its record.
 struct Begun {
     clock: Instant,
@@ -84,30 +165,30 @@ struct Begun {
 
 /// Measures along the course of the chains, and publishes blocks.
 struct Recorder<'a> {
-    job: &'a SampleJob,
-    group: &'a Group,
-    ledger: &'a Ledger,
+    work: &'a Work<'a>,
     problem: &'a Problem,
     columns: Vec<ColumnSpec>,
     /// Threads lent.
     threads: usize,
+    /// What the chains began from, for records.
+    inputs: Vec<Input>,
 }
 
 impl Recorder<'_> {
     fn point(&self) -> &Point {
-        &self.job.point
+        self.work.point
     }
 
-    /// Measures and publishes all blocks that are due; false where it was stopped.
+    /// Measures and publishes all blocks that are due, and the configurations that are owed; false where it was stopped.
     fn record(
         &self,
         course: &mut Course<'_>,
         mut observers: Vec<Observer>,
-        covered: &[u64],
+        (covered, owed): (&[u64], &[u64]),
         entries: &mut Vec<Entry>,
     ) -> Result<bool, Failure> {
         let point = self.point();
-        let first = covered.iter().copied().min().unwrap_or(0) / point.block_rows;
+        let first = covered.iter().chain(owed.first()).copied().min().unwrap_or(0) / point.block_rows;
         let due = blocks(point.measure, point.block_rows).skip(usize::try_from(first).unwrap_or(usize::MAX));
         let mut values = vec![0.0; self.columns.len()];
         let mut looked = false;
@@ -120,8 +201,11 @@ impl Recorder<'_> {
                 lanes.push((lane, self.begin_block(lane, block, *rows)?));
             }
             let next = |data: &BlockData| block.first + data.rows() as u64;
-            let start = lanes.iter().map(|(_, data)| next(data)).min().unwrap_or(end);
-            for row in start..end {
+            let owed = &owed[owed.partition_point(|row| *row < block.first)..owed.partition_point(|row| *row < end)];
+            let start = lanes.iter().map(|(_, data)| next(data)).chain(owed.first().copied()).min().unwrap_or(end);
+            // Where blocks are on record, the chains are run no further than to what is owed.
+            let stop = if lanes.is_empty() { owed.last().map_or(start, |row| row + 1) } else { end };
+            for row in start..stop {
                 if !course.sweep_to(course.sweeps_at(row))? {
                     return Ok(false);
                 }
@@ -136,6 +220,9 @@ impl Recorder<'_> {
                     for (column, value) in data.columns.iter_mut().zip(&values) {
                         column.values.push(*value);
                     }
+                }
+                if owed.binary_search(&row).is_ok() {
+                    self.keep(course, row, entries)?;
                 }
                 course.look()?;
             }
@@ -153,8 +240,8 @@ impl Recorder<'_> {
     fn begin_block(&self, lane: usize, block: Block, covered: u64) -> Result<BlockData, Failure> {
         if covered > block.first {
             let partial = Block { rows: covered - block.first, ..block };
-            let key = Key::of(&self.group.block_preimage(lane as u32, partial));
-            return Ok(self.ledger.read_block(&key, "main", None, None)?);
+            let key = Key::of(&self.work.group.block_preimage(lane as u32, partial));
+            return Ok(self.work.ledger.read_block(&key, "main", None, None)?);
         }
         let rows = block.rows as usize;
         let energy_unit = &self.point().dynamics.energy_unit;
@@ -176,31 +263,20 @@ impl Recorder<'_> {
     ) -> Result<Entry, Failure> {
         let point = self.point();
         let dynamics = &point.dynamics;
-        let preimage = self.group.block_preimage(lane, block);
+        let preimage = self.work.group.block_preimage(lane, block);
         // The time of a block is shared by the chains that were advanced together.
         let seconds = begun.clock.elapsed().as_secs_f64() / f64::from(dynamics.lanes);
         let updates = (course.swept() - begun.swept).saturating_mul(course.updates_per_chain());
-        let parameters = Value::map([
-            ("chains", self.group.value.clone()),
-            ("temperature", Value::Number(dynamics.temperature)),
-            ("measure", Value::Integer(point.measure as i64)),
-        ]);
-        let mut provenance = program::provenance(parameters, self.threads);
-        provenance.seed = Some(dynamics.seed);
-        provenance.streams = Some(program::streams());
-        provenance.plugins = dynamics.identities();
-        provenance.started = begun.time.clone();
-        provenance.finished = spinledger_ledger::now();
+        let mut provenance = self.provenance(&begun.time);
         provenance.seconds = seconds;
         provenance.updates = updates;
-        provenance.pipeline = self.job.pipeline;
         provenance.notes = course.take_notes();
         let facts = SeriesNote { sites: self.problem.graph.sites as u64, observed: self.columns.clone() };
         provenance.facts = facts.to_value();
-        let place = ChainPlace { chain: self.group.key, block: block.number, number: lane, rows: block.rows };
+        let place = ChainPlace { chain: self.work.group.key, block: block.number, number: lane, rows: block.rows };
         let draft = Draft::new(&preimage, "block", provenance).table("main", Payload::Block(data)).chain(place);
         let key = draft.key;
-        let published = self.ledger.publish(draft)?;
+        let published = self.work.ledger.publish(draft)?;
         Ok(Entry {
             key,
             kind: "block".into(),
@@ -210,5 +286,45 @@ impl Recorder<'_> {
             updates,
             note: String::new(),
         })
+    }
+
+    /// Publishes the configurations at a row.
+    fn keep(&self, course: &mut Course<'_>, row: u64, entries: &mut Vec<Entry>) -> Result<(), Failure> {
+        let (point, group) = (self.point(), self.work.group);
+        for lane in 0..point.chains_kept(group, row) {
+            let configuration = course.holder().export(lane as usize)?;
+            let mut provenance = self.provenance(&spinledger_ledger::now());
+            provenance.facts = Value::map([
+                ("lane", Value::Integer(lane.into())),
+                ("sites", Value::Integer(self.problem.graph.sites as i64)),
+                ("sweep", Value::Integer(point.sweep_of(row) as i64)),
+            ]);
+            let table = Payload::Table(kept::table(&configuration, self.problem));
+            let draft = Draft::new(&group.state_preimage(lane, row), "state", provenance).table("main", table);
+            let key = draft.key;
+            let content = self.work.ledger.publish(draft)?.content;
+            let kind = "state".to_owned();
+            entries.push(Entry { key, kind, chain: None, content, seconds: 0.0, updates: 0, note: String::new() });
+        }
+        Ok(())
+    }
+
+    /// How what is published now was made.
+    fn provenance(&self, started: &str) -> Provenance {
+        let (point, dynamics) = (self.point(), &self.point().dynamics);
+        let parameters = Value::map([
+            ("chains", self.work.group.value.clone()),
+            ("temperature", Value::Number(dynamics.temperature)),
+            ("measure", Value::Integer(point.measure as i64)),
+        ]);
+        let mut provenance = program::provenance(parameters, self.threads);
+        provenance.seed = Some(dynamics.seed);
+        provenance.streams = Some(program::streams());
+        provenance.plugins = dynamics.identities();
+        provenance.inputs.clone_from(&self.inputs);
+        provenance.started = started.to_owned();
+        provenance.finished = spinledger_ledger::now();
+        provenance.pipeline = self.work.pipeline;
+        provenance
     }
 }

@@ -2,7 +2,7 @@
 
 use crate::steps::{self, Checked};
 use spinledger_host::{Catalogue, Search};
-use spinledger_pipeline::{Expansion, Pipeline, Source};
+use spinledger_pipeline::{Expansion, Pipeline, Point, Source};
 use spinledger_terms::{Path as Place, Problem, Vocabulary};
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
@@ -72,6 +72,7 @@ fn plugin_problems(source: &Source, catalogue: &Catalogue) -> Vec<Problem> {
 /// What step kinds find wrong beyond types.
 fn check(pipeline: &Pipeline, vocabulary: &Vocabulary, problems: &mut Vec<Problem>) {
     let kinds: BTreeMap<String, String> = pipeline.steps.iter().map(|s| (s.name.clone(), s.does.clone())).collect();
+    let mut earlier: BTreeMap<String, Vec<Point>> = BTreeMap::new();
     for step in &pipeline.steps {
         let Some(kind) = steps::kind(&step.does) else { continue };
         let points = match step.expand(&|_| None, vocabulary) {
@@ -82,7 +83,10 @@ fn check(pipeline: &Pipeline, vocabulary: &Vocabulary, problems: &mut Vec<Proble
                 continue;
             }
         };
-        let checked = Checked { path: &step.path, points: &points, kinds: &kinds, vocabulary };
+        let (path, points_here) = (&step.path, points.as_slice());
+        let checked =
+            Checked { path, step, points: points_here, kinds: &kinds, earlier: &earlier, pipeline, vocabulary };
         (kind.check)(&checked, problems);
+        earlier.insert(step.name.clone(), points);
     }
 }

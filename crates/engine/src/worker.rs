@@ -42,7 +42,8 @@ pub fn serve(ledger: &Path, threads: usize) -> Result<(), Box<dyn std::error::Er
         let work = std::panic::AssertUnwindSafe(|| match job {
             Job::Sample(job) => sampling::sample(&job, &ledger, &mut loaded, &line),
             Job::Close(job) => close::close(&job, &ledger, &line),
-            Job::Analyse(job) => analyse::analyse(&job, &ledger, &line),
+            Job::States(job) => close::close_states(&job, &ledger, &line),
+            Job::Analyse(job) => analyse::analyse(&job, &ledger, &mut loaded, &line),
         });
         let report = match std::panic::catch_unwind(work) {
             Ok(Ok(report)) => report,

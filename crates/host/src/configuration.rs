@@ -87,8 +87,8 @@ impl Configuration {
         }
     }
 
-    /// Free spins followed by the model's pinned ones.
-    fn with_rim(free: Configuration, energy: &Energy) -> Self {
+    /// Free spins followed by the model's pinned ones. Whether the free ones fit is found out where the configuration is imported.
+    pub fn with_rim(free: Configuration, energy: &Energy) -> Self {
         match free {
             Configuration::States(mut states) => {
                 states.extend_from_slice(&energy.pinned_states);

@@ -6,6 +6,7 @@
 //! - [`Record`] is the provenance of an entry.
 //! - [`BlockData`] is a piece of a time series; [`assemble`] joins recorded pieces to one file without decoding them.
 //! - [`TableRows`] reads a table of any length, or a folder of them, a batch of rows at a time.
+//! - [`join`] puts many tables one below the other into one file.
 //! - [`Writes`] is the one way to the disk, also for the files of results, and can be told to fail.
 //!
 //! What each file is, who touches it, what protects it and how a torn ledger recovers stands in this crate's README.
@@ -56,6 +57,7 @@ pub use stamp::file_key;
 pub use state::SavedState;
 pub use tables::assemble::{Assembled, Constant, Piece, assemble};
 pub use tables::block::{BLOCK_ROWS, BlockData, ColumnData, block_columns, read_block, write_block};
+pub use tables::join::{Part, join};
 pub use tables::rows::{TableRows, What};
 pub use tables::table::{read_table, write_table};
 pub use writes::faults::{FailAt, Faults, Mishap, Operation};

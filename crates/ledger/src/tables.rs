@@ -5,5 +5,6 @@ pub(crate) mod assemble;
 pub(crate) mod block;
 mod cells;
 mod format;
+pub(crate) mod join;
 pub(crate) mod rows;
 pub(crate) mod table;

@@ -7,10 +7,13 @@ use crate::point::Point;
 use crate::scan::{Axis, FromStep, named, nearest_axis};
 use crate::step::Step;
 use spinledger_terms::{ItemKind, Problem, Value, Vocabulary};
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// Most points of a step.
 pub const MOST_POINTS: usize = 1_000_000;
+
+/// The column that numbers the points of a sequence.
+const POSITION: &str = "position";
 
 /// The points of a step, or what they wait for.
 #[derive(Clone, Debug)]
@@ -27,14 +30,19 @@ pub(crate) struct Column {
     pub(crate) name: String,
     /// Whether it is a size, which may be a list.
     pub(crate) size: bool,
+    /// Whether points are visited along it.
+    pub(crate) followed: bool,
 }
 
 impl Step {
     /// The points of the step: every combination of each block once, with complete canonical parameters.
     ///
     /// `lookup` gives the values that an axis takes from a step's table, None where the table is not there yet. Columns are ordered: `size`
-    /// and its parts, then by name, then `temperature` or `inverse_temperature`; points by their columns, ascending. Points with
-    /// equal columns are one, whose lengths (`larger` in the step's specification) are the largest named.
+    /// and its parts, then by name, then `temperature` or `inverse_temperature`, then `position` and what is followed; points by their columns,
+    /// ascending. Points with equal columns are one, whose lengths (`larger` in the step's specification) are the largest named.
+    ///
+    /// Where the step follows a parameter, points that agree in all other columns are a sequence, numbered by `position`: in the order of
+    /// the values, block after block.
     ///
     /// # Errors
     /// More than [`MOST_POINTS`] points; a table without values, or with values that the parameter cannot have; two namings of one
@@ -76,7 +84,11 @@ impl Step {
             }
         }
         let mut order: Vec<usize> = (0..columns.len()).collect();
-        order.sort_by_key(|c| columns::rank(&columns[*c].name));
+        order.sort_by_key(|c| match &columns[*c] {
+            Column { followed: true, name, .. } => (4, 0, name.as_str()),
+            Column { name, .. } if self.follow().is_some() && name == POSITION => (3, 0, ""),
+            Column { name, .. } => columns::rank(name),
+        });
         let by_columns = |a: &Draft, b: &Draft| {
             order
                 .iter()
@@ -104,16 +116,41 @@ impl Step {
         let addresses: Vec<Vec<String>> = addresses.into_iter().cloned().collect();
         let names = columns::names(&addresses);
         let size = |address: &[String]| address.last().is_some_and(|word| word == "size");
-        addresses.into_iter().zip(names).map(|(address, name)| Column { size: size(&address), address, name }).collect()
+        let followed = |address: &Vec<String>| {
+            let axes = self.scan.iter().filter_map(|block| Some((block, block.base.at(self.follow()?)?.as_str()?)));
+            axes.filter_map(|(block, word)| named(&block.axes, word)).any(|(_, axis)| axis.address == *address)
+        };
+        let column = |(address, name): (Vec<String>, String)| Column {
+            size: size(&address),
+            followed: followed(&address),
+            address,
+            name,
+        };
+        addresses.into_iter().zip(names).map(column).collect()
+    }
+
+    /// The parameter that names what is followed, where the kind of step has one.
+    fn follow(&self) -> Option<&str> {
+        self.spec.scan.as_ref().map(|scan| scan.follow.as_str()).filter(|follow| !follow.is_empty())
+    }
+
+    /// The columns along which points are visited: points that agree in all others, but for `position`, are a sequence. Empty where none is
+    /// followed.
+    pub fn followed(&self) -> Vec<String> {
+        self.columns().into_iter().filter(|column| column.followed).map(|column| column.name).collect()
+    }
+
+    /// The paths of the parameters along which points are visited.
+    pub fn followed_paths(&self) -> Vec<String> {
+        self.columns().into_iter().filter(|column| column.followed).map(|column| column.address.join(".")).collect()
     }
 
     /// The column `position`, where a scanned parameter is followed: repeated values are then points of their own.
     fn positions(&self, columns: &mut Vec<Column>, drafts: &mut [Draft]) -> Result<(), Vec<Problem>> {
-        let Some(follow) = self.spec.scan.as_ref().map(|scan| scan.follow.as_str()).filter(|f| !f.is_empty()) else {
-            return Ok(());
-        };
-        let mut offset = 0;
+        let Some(follow) = self.follow() else { return Ok(()) };
         let mut any = false;
+        // Where each sequence, by its other cells, has got to in the blocks before.
+        let mut reached: BTreeMap<String, usize> = BTreeMap::new();
         for (index, block) in self.scan.iter().enumerate() {
             let word = block.base.at(follow).and_then(Value::as_str);
             let Some(word) = word else { continue };
@@ -125,18 +162,22 @@ impl Step {
                 return Err(vec![problem.nearest(nearest_axis(&self.scan, word))]);
             };
             any = true;
-            let mut length = 0;
+            let mut now: BTreeMap<String, usize> = BTreeMap::new();
             for draft in drafts.iter_mut().filter(|d| d.block == index) {
-                let position = draft.values[axis].1;
-                length = length.max(position + 1);
-                draft.cells.push(Value::Integer((offset + position) as i64));
+                let others = columns.iter().zip(&draft.cells).filter(|(column, _)| !column.followed);
+                let sequence: Vec<String> = others.map(|(_, cell)| cell.canonical()).collect();
+                let sequence = sequence.join(" ");
+                let position = reached.get(&sequence).copied().unwrap_or(0) + draft.values[axis].1;
+                draft.cells.push(Value::Integer(position as i64));
+                let next = now.entry(sequence).or_default();
+                *next = (*next).max(position + 1);
             }
-            offset += length;
+            reached.append(&mut now);
         }
         if any {
             let width = columns.len() + 1;
             drafts.iter_mut().for_each(|draft| draft.cells.resize(width, Value::Null));
-            columns.push(Column { address: Vec::new(), name: "position".to_owned(), size: false });
+            columns.push(Column { address: Vec::new(), name: POSITION.to_owned(), size: false, followed: false });
         }
         Ok(())
     }
@@ -162,7 +203,7 @@ impl Step {
             }
             for direction in 0..most {
                 let name = format!("{}_{}", columns[c].name, part(direction));
-                columns.push(Column { address: Vec::new(), name, size: false });
+                columns.push(Column { address: Vec::new(), name, size: false, followed: false });
             }
         }
     }

@@ -263,7 +263,34 @@ fn a_followed_parameter_keeps_its_order_and_repetitions() {
     ];
     assert_eq!(points(&text).iter().map(row).collect::<Vec<_>>(), expected);
     let by_last_word = text.replace("follow: temperature", "follow: field");
-    assert_eq!(row(&points(&by_last_word)[0]), "field=0.0 position=1 temperature=1.0");
+    let expected = [
+        "temperature=1.0 position=0 field=0.5",
+        "temperature=1.0 position=1 field=0.0",
+        "temperature=2.0 position=0 field=0.5",
+        "temperature=2.0 position=1 field=0.0",
+    ];
+    let followed: Vec<String> = points(&by_last_word).iter().map(row).collect();
+    assert_eq!(followed, expected, "temperature is named twice here, where it is not followed");
+}
+
+/// A sequence goes on in a later block; one that only begins there begins at 0.
+#[test]
+fn sequences_go_on_from_block_to_block() {
+    let text = with_scan(
+        "[{ temperature: [3, 1], measure: 5 }, { temperature: [2, 3], measure: 7 }, { temperature: [4], lattice.size: [16] }]",
+    )
+    .replace("    measure", "    follow: temperature\n    measure");
+    let expected = [
+        "size=8 position=0 temperature=3.0",
+        "size=8 position=1 temperature=1.0",
+        "size=8 position=2 temperature=2.0",
+        "size=8 position=3 temperature=3.0",
+        "size=16 position=0 temperature=4.0",
+    ];
+    let points = points(&text);
+    assert_eq!(points.iter().map(row).collect::<Vec<_>>(), expected);
+    let measures: Vec<_> = points.iter().map(|p| p.get("measure").and_then(|m| m.as_i64())).collect();
+    assert_eq!(measures, [5, 5, 7, 7, 100].map(Some));
 }
 
 #[test]

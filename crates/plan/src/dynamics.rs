@@ -1,6 +1,8 @@
 //! What moves the spins: the part of a sample point that decides a chain's course, in the form that keys and streams are made of.
 
 use crate::blocks::block_rows;
+use crate::sequence::Follows;
+use crate::states::Start;
 use serde::{Deserialize, Serialize};
 use spinledger_pipeline::Units;
 use spinledger_terms::{Identity, Item, ItemKind, Value, Vocabulary};
@@ -20,7 +22,8 @@ pub struct ItemRef {
 }
 
 impl ItemRef {
-    fn key_value(&self) -> Value {
+    /// As keys see it: which code with which parameters.
+    pub fn key_value(&self) -> Value {
         Value::map([("item", Value::text(self.identity.canonical())), ("parameters", self.parameters.clone())])
     }
 
@@ -112,26 +115,30 @@ impl Dynamics {
     }
 
     /// The preimage of the stream key of a group of chains: seed and physical identity, and nothing that could change while the physics
-    /// stays: no revision, no fingerprint, no length, no observables.
-    pub fn stream_preimage(&self, start: &str, group: u32) -> String {
+    /// stays: no revision, no fingerprint, no length, no observables. In a sequence also the position.
+    pub fn stream_preimage(&self, start: &Start, group: u32, follows: Option<&Follows>) -> String {
         let update = self.update.iter().map(|(rule, times)| with_times(rule.stream_value(), *times)).collect();
-        Value::map([
+        let mut value = Value::map([
             ("group", Value::Integer(group.into())),
             ("inverse_temperature", Value::Number(self.inverse_temperature)),
             ("lanes", Value::Integer(self.lanes.into())),
             ("lattice", self.lattice.stream_value()),
             ("model", self.model.stream_value()),
             ("seed", Value::Integer(self.seed as i64)),
-            ("start", Value::text(start)),
+            ("start", start.value(group, self.lanes)),
             ("update", Value::List(update)),
-        ])
-        .canonical()
+        ]);
+        if let Some(follows) = follows {
+            value.set("position", Value::Integer(follows.position as i64));
+        }
+        value.canonical()
     }
 
-    /// What the data of a group of chains depend on, without length: the preimage of its key, and part of the preimages of its blocks.
-    pub fn group_value(&self, start: &str, group: u32) -> Value {
+    /// What the data of a group of chains depend on, without length: the preimage of its key, and part of the preimages of its blocks. In a
+    /// sequence also the position, and the group before with the length at which it was left.
+    pub fn group_value(&self, start: &Start, group: u32, follows: Option<&Follows>) -> Value {
         let update = self.update.iter().map(|(rule, times)| with_times(rule.key_value(), *times)).collect();
-        Value::map([
+        let mut value = Value::map([
             ("block_rows", Value::Integer(self.block_rows() as i64)),
             ("energy_unit", Value::text(&self.energy_unit)),
             ("equilibrate", Value::Integer(self.equilibrate as i64)),
@@ -146,9 +153,16 @@ impl Dynamics {
             ("revision", Value::Integer(REVISION)),
             ("seed", Value::Integer(self.seed as i64)),
             ("settle", Value::Integer(self.settle as i64)),
-            ("start", Value::text(start)),
+            ("start", start.value(group, self.lanes)),
             ("update", Value::List(update)),
-        ])
+        ]);
+        if let Some(follows) = follows {
+            value.set("position", Value::Integer(follows.position as i64));
+            if let Some(before) = follows.before_value() {
+                value.set("follows", before);
+            }
+        }
+        value
     }
 
     /// Rows of a block. Part of the key of a group, since the order of rows follows from it.

@@ -5,6 +5,7 @@
 //! needs are complete.
 //!
 //! - [`sample`] plans a `sample` step: its points, the groups of chains of each, how many rows are on record.
+//! - [`states`] says what chains begin from and which configurations are kept, [`sequence`] which points follow each other.
 //! - [`analysis`] makes the keys of everything else.
 //! - [`blocks`] cuts chains into blocks.
 //!
@@ -15,3 +16,5 @@ pub mod analysis;
 pub mod blocks;
 pub mod dynamics;
 pub mod sample;
+pub mod sequence;
+pub mod states;

@@ -125,7 +125,7 @@ fn a_large_configuration_is_small_and_fast() {
 fn senseless_input_is_drawn_all_the_same() {
     let grid = |columns, rows, states| Picture {
         title: String::new(),
-        sites: Sites::Grid { columns, rows },
+        sites: Sites::Grid { columns, rows, walls: true },
         states,
         names: Vec::new(),
         shades: Shades::Apart,

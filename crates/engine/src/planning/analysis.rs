@@ -1,7 +1,7 @@
 //! Parcels of analysis steps.
 
 use super::references::{references, remove};
-use super::{Product, Products, Series};
+use super::{Product, Products, Series, state};
 use crate::job::{AnalyseJob, SeriesFacts, SeriesInput, TableInput, UnitNames};
 use crate::steps::{Split, StepKind, Surroundings, WITHIN_GROUP};
 use crate::study::Study;
@@ -67,6 +67,8 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
             parameters: parameters.clone(),
             series,
             tables,
+            state: None,
+            refused: None,
             units: names.clone(),
             pipeline,
         };
@@ -83,6 +85,20 @@ pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &
             })
             .collect();
         return Some(AnalysisPlan { parcels });
+    }
+    if kind.split == Split::State {
+        let (role, name) = roles.first()?;
+        let Some(Product::Series(points)) = products.get(name) else { return None };
+        let points: Vec<&Series> = points.iter().map(Option::as_ref).collect::<Option<_>>()?;
+        let mut parcel = make(Vec::new(), Vec::new(), Vec::new());
+        match state::of_state(study, kind, role, parameters, &points) {
+            Ok(found) => {
+                (parcel.job.preimage, parcel.job.parameters, parcel.job.state) = found;
+                parcel.key = Key::of(&parcel.job.preimage);
+            }
+            Err(reason) => parcel.job.refused = Some(reason),
+        }
+        return Some(AnalysisPlan { parcels: vec![Some(parcel)] });
     }
     if kind.split == Split::Groups {
         let (role, name) = roles.first()?;

@@ -3,16 +3,16 @@
 use crate::study::Study;
 use spinledger_pipeline::Step;
 use spinledger_plan::sample::Point;
-use spinledger_terms::{Field, ItemKind, Kind, Value};
+use spinledger_terms::{Field, ItemKind, Kind, Value, Vocabulary};
 
 /// `size` stands in tables even when it is not scanned.
-pub(super) fn add_size(columns: &mut Vec<(String, Value)>, body: &Value, study: &Study) {
+pub(super) fn add_size(columns: &mut Vec<(String, Value)>, body: &Value, vocabulary: &Vocabulary) {
     if columns.iter().any(|(name, _)| name == "size") {
         return;
     }
     let Some(lattice) = body.get("lattice") else { return };
     let name = lattice.get("plugin").and_then(Value::as_str).unwrap_or_default();
-    let traits = study.vocabulary.item(ItemKind::Lattice, name).and_then(|(_, item)| item.lattice.as_ref());
+    let traits = vocabulary.item(ItemKind::Lattice, name).and_then(|(_, item)| item.lattice.as_ref());
     let Some(traits) = traits.filter(|t| !t.size.is_empty()) else { return };
     let Some(size) = lattice.at(&traits.size) else { return };
     if let Some(size) = size.as_i64() {

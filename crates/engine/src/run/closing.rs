@@ -2,11 +2,12 @@
 
 use super::{Item, Run, RunOptions, Stop, words};
 use crate::failure::Failure;
-use crate::job::{CloseJob, Job, Layout};
+use crate::job::{CloseJob, Job, Layout, StatesJob, StatesOf};
 use crate::planning::{AnalysisPlan, Parcel, Product, Series, closed_series, kind_of, point_columns};
 use crate::results::series_file;
 use crate::steps::Split;
 use crate::{gather, program};
+use spinledger_plan::sample::states_preimage;
 use spinledger_terms::{ContentHash, Key, Value};
 use std::collections::BTreeSet;
 use std::path::PathBuf;
@@ -60,10 +61,44 @@ impl Run<'_> {
             }
             series.push(closed);
         }
-        let complete = series.iter().all(Option::is_some);
+        let complete = series.iter().all(Option::is_some) && self.close_states(number, &series)?;
         self.outcome.products.insert(step.name.clone(), Product::Series(series));
         self.complete(number, complete);
         Ok(())
+    }
+
+    /// Gathers the kept configurations of the complete points: on record, and as a table. False where that broke.
+    fn close_states(&mut self, number: usize, series: &[Option<Series>]) -> Result<bool, Stop> {
+        let step = &self.study.pipeline.steps[number];
+        let (mut values, mut points) = (Vec::new(), Vec::new());
+        for series in series.iter().flatten().filter(|series| !series.kept.is_empty()) {
+            values.extend(series.point.states_value(&series.columns));
+            let (columns, kept) = (series.columns.clone(), series.kept.clone());
+            points.push(StatesOf { columns, starts: series.point.starts(), kept });
+        }
+        if points.is_empty() {
+            return Ok(true);
+        }
+        let preimage = states_preimage(values);
+        let key = Key::of(&preimage);
+        let file = format!("{}.states.parquet", step.name);
+        let known = self.index.get(&key).map(|line| line.content);
+        if known.is_some_and(|content| self.results.keep(&step.name, &file, &key, &content)) {
+            return Ok(true);
+        }
+        let several = points.iter().any(|point| point.starts.len() > 1);
+        let path = Some(self.results.path(&file));
+        let job = StatesJob { preimage, publish: known.is_none(), points, several, path, pipeline: None };
+        let words = "kept configurations".to_owned();
+        let item = Item { step: number, point: 0, words, job: Job::States(job), cost: 0.0 };
+        self.results.announce([(step.name.as_str(), file.as_str(), key)].into_iter())?;
+        if !self.execute(&[item], false)?.is_empty() {
+            return Ok(false);
+        }
+        if let Some(line) = self.index.get(&key) {
+            self.results.wrote(&step.name, &file, &key, &line.content);
+        }
+        Ok(true)
     }
 
     pub(super) fn close_analysis(

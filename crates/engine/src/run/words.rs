@@ -17,9 +17,12 @@ pub(super) fn point<'a>(columns: impl IntoIterator<Item = (&'a String, &'a Value
     words.join(", ")
 }
 
-/// A group of chains of a point: `size 32, temperature 2.26, random chain 0`.
-pub(super) fn group(point: &Point, group: &Group) -> String {
-    let mut text = self::point(point.columns.iter().map(|(name, value)| (name, value)));
+/// A group of chains of a point: `size 32, temperature 2.26, random chain 0`; along a sequence without what is different from position to position.
+pub(super) fn parcel<'a>(mut groups: impl Iterator<Item = (&'a Point, &'a Group)>, followed: &[String]) -> String {
+    let Some((point, group)) = groups.next() else { return String::new() };
+    let differs = |name: &String| !followed.is_empty() && (name == "position" || followed.contains(name));
+    let columns = point.columns.iter().filter(|(name, _)| !differs(name));
+    let mut text = self::point(columns.map(|(name, value)| (name, value)));
     if !text.is_empty() {
         text.push_str(", ");
     }

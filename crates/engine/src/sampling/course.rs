@@ -1,13 +1,16 @@
 //! The course of a group of chains: where it begins or goes on, sweeps, saved states, the clock.
 
 use crate::failure::Failure;
+use crate::kept;
 use crate::line::Line;
 use crate::loaded::Problem;
 use crate::saved;
-use spinledger_host::{Sampler, ordered_start, random_start};
+use spinledger_host::{Configuration, Sampler, ordered_start, random_start};
 use spinledger_ledger::{ClaimGuard, Ledger, SavedState};
 use spinledger_numerics::random::StreamKey;
 use spinledger_plan::sample::{Group, Point};
+use spinledger_plan::states::Begin;
+use spinledger_terms::Key;
 use std::time::{Duration, Instant};
 
 /// How often the state is saved at most.
@@ -38,6 +41,8 @@ pub(super) struct Course<'a> {
     last_look: Instant,
     last_save: Instant,
     save_pause: Duration,
+    /// Whether the state is saved: not where a later one is there.
+    saves: bool,
     last_touch: Instant,
     ledger: &'a Ledger,
     claim: ClaimGuard,
@@ -69,6 +74,7 @@ impl<'a> Course<'a> {
             last_look: now,
             last_save: now,
             save_pause: SAVE_EVERY,
+            saves: true,
             last_touch: now,
             ledger,
             claim,
@@ -113,9 +119,14 @@ impl<'a> Course<'a> {
         self.point.dynamics.lanes as usize
     }
 
-    /// Goes on from the saved state where it is not past `latest` sweeps, and begins where there is none. The inner error says why a state that
-    /// should have served did not; the rules are then in no order.
-    pub(super) fn take_up(&mut self, latest: u64, stream: &StreamKey) -> Result<Result<(), String>, Failure> {
+    /// Goes on from the saved state where it is not past `latest` sweeps, and begins where there is none. A saved state past `last`, the end of what
+    /// is to be done, stays the newest. The inner error says why a state that should have served did not; the rules are then in no order.
+    pub(super) fn take_up(
+        &mut self,
+        latest: u64,
+        last: u64,
+        stream: &StreamKey,
+    ) -> Result<Result<(), String>, Failure> {
         match self.ledger.load_state(&self.group.key) {
             SavedState::Found { position, bytes } if position <= latest => {
                 if let Err(reason) = self.restore(&bytes) {
@@ -125,6 +136,10 @@ impl<'a> Course<'a> {
                 Ok(Ok(()))
             }
             SavedState::Damaged(warning) => Ok(Err(warning)),
+            SavedState::Found { position, .. } if position > last => {
+                self.saves = false;
+                self.begin(stream).map(Ok)
+            }
             _ => self.begin(stream).map(Ok),
         }
     }
@@ -138,15 +153,23 @@ impl<'a> Course<'a> {
     fn begin(&mut self, stream: &StreamKey) -> Result<(), Failure> {
         let start = stream.derive("start");
         for lane in 0..self.lanes() {
-            let configuration = match self.group.start.as_str() {
-                "ordered" => ordered_start(&self.problem.energy, &self.problem.graph),
-                _ => random_start(&self.problem.energy, &self.problem.graph, &start.lane(lane as u32)),
+            let configuration = match &self.group.begin {
+                Begin::Ordered => ordered_start(&self.problem.energy, &self.problem.graph),
+                Begin::Random => random_start(&self.problem.energy, &self.problem.graph, &start.lane(lane as u32)),
+                Begin::States(keys) => self.kept(keys.get(lane).ok_or("a chain has nothing to begin from")?)?,
             };
             self.rules[0].0.import(lane, &configuration)?;
         }
         self.holder = 0;
         (self.swept, self.told) = (0, 0);
         self.adapt(self.point.dynamics.settle > 0)
+    }
+
+    /// A kept configuration.
+    fn kept(&self, key: &Key) -> Result<Configuration, Failure> {
+        let table = self.ledger.read_table(key, "main")?;
+        let misfit = |what: String| Failure::Broken(format!("the configuration to begin from does not fit: {what}"));
+        kept::configuration(&table, &self.problem).map_err(misfit)
     }
 
     fn adapt(&mut self, on: bool) -> Result<(), Failure> {
@@ -170,6 +193,9 @@ impl<'a> Course<'a> {
 
     /// Saves the state.
     pub(super) fn save(&mut self) -> Result<(), Failure> {
+        if !self.saves {
+            return Ok(());
+        }
         let started = Instant::now();
         let blobs: Vec<Vec<u8>> = self.rules.iter_mut().map(|(s, _)| s.save()).collect::<Result<_, _>>()?;
         let bytes = saved::pack(self.holder, &blobs);

@@ -40,6 +40,7 @@ fn spec() -> StepSpec {
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     super::must_be_of(step, "of", &["sample", "reweight"], problems);
+    super::must_not_follow(step, "of", problems);
 }
 
 /// Columns that the step concludes over.

@@ -9,6 +9,7 @@ mod chart;
 mod compare;
 mod crossing;
 mod drawn;
+pub(crate) mod picture;
 mod report;
 mod reweight;
 pub mod sample;
@@ -16,16 +17,25 @@ pub(crate) mod settled;
 mod words;
 
 use crate::failure::Failure;
-use crate::job::{SeriesInput, TableInput, UnitNames};
+use crate::job::{SeriesInput, StateInput, TableInput, UnitNames};
 use crate::series::SeriesReader;
 use spinledger_ledger::{Ledger, Record};
-use spinledger_pipeline::Pipeline;
+use spinledger_pipeline::{Pipeline, Point, Step};
+use spinledger_plan::dynamics::ItemRef;
 use spinledger_terms::{Key, Path, Problem, StepSpec, Table, Value, Vocabulary};
 use std::collections::BTreeMap;
 
 /// All kinds.
-pub const KINDS: &[&StepKind] =
-    &[&sample::KIND, &averages::KIND, &reweight::KIND, &crossing::KIND, &compare::KIND, &chart::KIND, &report::KIND];
+pub const KINDS: &[&StepKind] = &[
+    &sample::KIND,
+    &averages::KIND,
+    &reweight::KIND,
+    &crossing::KIND,
+    &compare::KIND,
+    &chart::KIND,
+    &picture::KIND,
+    &report::KIND,
+];
 
 /// Columns of a point that do not tell one group from another.
 pub(crate) const WITHIN_GROUP: [&str; 2] = ["temperature", "inverse_temperature"];
@@ -41,6 +51,8 @@ pub enum Split {
     Groups,
     /// One parcel.
     Whole,
+    /// One parcel, of one kept configuration.
+    State,
 }
 
 /// A kind of step.
@@ -94,13 +106,22 @@ pub fn kind(does: &str) -> Option<&'static StepKind> {
 pub struct Checked<'a> {
     /// Its place.
     pub path: &'a Path,
+    /// The step.
+    pub step: &'a Step,
     /// Its points: one without columns where it is not scanned, none where its scan waits for an earlier step.
-    pub points: &'a [spinledger_pipeline::Point],
+    pub points: &'a [Point],
     /// What kind the steps that it refers to are.
     pub kinds: &'a BTreeMap<String, String>,
+    /// The points of the steps before it, by name: of all that it can refer to.
+    pub earlier: &'a BTreeMap<String, Vec<Point>>,
+    /// The pipeline.
+    pub pipeline: &'a Pipeline,
     /// Items and step kinds.
     pub vocabulary: &'a Vocabulary,
 }
+
+/// Loads a lattice and a Hamiltonian on it.
+type LoadProblem<'a> = dyn Fn(&ItemRef, &ItemRef) -> Result<crate::loaded::Problem, Failure> + 'a;
 
 /// An analysis parcel at work.
 pub struct Task<'a> {
@@ -110,6 +131,10 @@ pub struct Task<'a> {
     pub series: &'a [SeriesInput],
     /// The tables it takes.
     pub tables: &'a [TableInput],
+    /// The configuration it takes.
+    pub state: Option<&'a StateInput>,
+    /// Loads a lattice and a Hamiltonian on it; nothing is loaded before.
+    pub(crate) problem: &'a LoadProblem<'a>,
     /// Names of the pipeline's units.
     pub units: &'a UnitNames,
     /// The ledger they are in.
@@ -170,6 +195,13 @@ impl<'a> Inputs<'a> {
     }
 }
 
+impl From<Failure> for StepError {
+    fn from(failure: Failure) -> Self {
+        let (Failure::Broken(text) | Failure::Disk(text)) = failure;
+        StepError(text)
+    }
+}
+
 /// Why a parcel broke, in words.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct StepError(pub String);
@@ -199,6 +231,20 @@ pub(crate) fn must_be_of(step: &Checked<'_>, parameter: &str, kinds: &[&str], pr
         let message = format!("`{}` does {kind}", name.as_str().unwrap_or_default());
         let problem = Problem::at_value(&point.place(parameter), message);
         problems.push(problem.expected(format!("a step that does: {}", kinds.join(", "))));
+    }
+}
+
+/// The sample step that a parameter names must not follow anything: what is concluded from its points takes them for states of equilibrium, and a
+/// point of a sequence remembers the one before.
+pub(crate) fn must_not_follow(step: &Checked<'_>, parameter: &str, problems: &mut Vec<Problem>) {
+    let Some(point) = step.points.first() else { return };
+    let Some(name) = point.get(parameter) else { return };
+    let points = name.as_str().and_then(|name| step.earlier.get(name)).map_or(&[][..], Vec::as_slice);
+    if let Some(followed) = points.iter().find(|point| point.get("follow").is_some()) {
+        let name = name.as_str().unwrap_or_default();
+        let message = format!("the points of `{name}` follow each other: they are not in equilibrium");
+        let problem = Problem::at_value(&point.place(parameter), message).other(followed.place("follow"), "here");
+        problems.push(problem.expected("a sample step without `follow`"));
     }
 }
 

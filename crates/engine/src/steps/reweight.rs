@@ -46,6 +46,7 @@ fn spec() -> StepSpec {
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     super::must_be_of(step, "of", &["sample"], problems);
+    super::must_not_follow(step, "of", problems);
     let Some(point) = step.points.first() else { return };
     let temperatures = point.get("temperature");
     let temperatures = temperatures.as_ref().and_then(|list| list.as_list()).unwrap_or_default();

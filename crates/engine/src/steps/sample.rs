@@ -1,11 +1,18 @@
 //! `sample`: time series from chains.
 
+mod course;
+
+pub(crate) use course::{StartStep, must_keep, start_step};
+
 use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use spinledger_pipeline::Point;
 use spinledger_plan::blocks::{block_rows, most_rows};
 use spinledger_plan::dynamics::{nominal_sites, rule_lanes};
 use spinledger_plan::sample::Ask;
-use spinledger_terms::{Field, Item, ItemKind, Kind, Problem, ScanSpec, StepSpec, Trait, Value, Vocabulary, nearest};
+use spinledger_plan::states::{Start, StateRef};
+use spinledger_terms::{
+    Field, Item, ItemKind, Kind, ModelTraits, Problem, ScanSpec, StepSpec, Trait, Value, Vocabulary, nearest,
+};
 use std::collections::BTreeSet;
 
 /// The kind.
@@ -47,15 +54,18 @@ fn spec() -> StepSpec {
             Field::new("every", Kind::COUNT, "sweeps between measurements").default(Value::Integer(1)),
             Field::new("chains", Kind::Integer { min: Some(1), max: Some(1 << 20) }, "independent chains per point")
                 .default(Value::Integer(4)),
-            Field::new("start", Kind::words(&["random", "ordered", "both"]), "configuration to start from")
-                .default(Value::text("random")),
+            Field::new("start", course::start_kind(), "configuration to start from").default(Value::text("random")),
+            Field::new("keep", course::keep_kind(), "configurations to keep"),
+            Field::new("follow", Kind::Text {}, "a scanned parameter along which points follow each other"),
             Field::new("settle", Kind::COUNT_FROM_ZERO, "sweeps of adapting step widths before everything")
                 .default(Value::Integer(0)),
         ],
         scan: Some(ScanSpec {
-            no_column: ["measure", "equilibrate", "every", "chains", "settle"].map(String::from).to_vec(),
+            no_column: ["measure", "equilibrate", "every", "chains", "settle", "keep", "keep.every", "keep.states"]
+                .map(String::from)
+                .to_vec(),
             larger: ["measure", "chains"].map(String::from).to_vec(),
-            follow: String::new(),
+            follow: "follow".into(),
         }),
     }
 }
@@ -64,16 +74,18 @@ fn analyse(_: &Task<'_>) -> Result<Output, StepError> {
     Err(StepError("sampling is not an analysis".into()))
 }
 
-/// What a point asks for beside its dynamics.
-pub fn ask(body: &Value) -> Ask {
+/// What a point asks for beside its dynamics; `kept` are the configurations that it begins from, where it begins from an earlier step's.
+pub fn ask(body: &Value, kept: Option<Vec<StateRef>>) -> Ask {
     let count = |name: &str| body.get(name).and_then(Value::as_i64).unwrap_or(1);
-    let starts = match body.get("start").and_then(Value::as_str) {
-        Some("both") => vec!["ordered".to_owned(), "random".to_owned()],
-        Some(one) => vec![one.to_owned()],
-        None => vec!["random".to_owned()],
+    let starts = match (kept, body.get("start").and_then(Value::as_str)) {
+        (Some(kept), _) => vec![Start::States(kept)],
+        (None, Some("both")) => vec![Start::Ordered, Start::Random],
+        (None, Some("ordered")) => vec![Start::Ordered],
+        (None, _) => vec![Start::Random],
     };
     let discard = body.get("equilibrate").and_then(Value::as_i64).is_none();
-    Ask { measure: count("measure") as u64, chains: u32::try_from(count("chains")).unwrap_or(1), starts, discard }
+    let chains = u32::try_from(count("chains")).unwrap_or(1);
+    Ask { measure: count("measure") as u64, chains, starts, discard, keep: course::kept_of(body) }
 }
 
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
@@ -105,6 +117,7 @@ fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
         _ => {}
     }
     check_temperature(point, body, problems);
+    course::check(step, point, body, problems);
     let item = |kind: ItemKind, value: Option<&Value>| -> Option<Item> {
         Some(step.vocabulary.item(kind, value?.get("plugin")?.as_str()?)?.1.clone())
     };
@@ -283,10 +296,7 @@ fn refusals(rule: &Item, model: &Item, parameters: Option<&Value>) -> Vec<String
     for form in traits.forms.iter().filter(|form| !rule.forms.contains(form)) {
         reasons.push(format!("it does not serve energies of the form `{form}`"));
     }
-    let states = traits
-        .states
-        .or_else(|| parameters?.at(&traits.states_parameter)?.as_i64().and_then(|q| u64::try_from(q).ok()));
-    if let (Some(most), Some(states)) = (rule.most_states, states)
+    if let (Some(most), Some(states)) = (rule.most_states, states_of(traits, parameters))
         && states > most
     {
         reasons.push(format!("it serves at most {most} states, here are {states}"));
@@ -295,6 +305,20 @@ fn refusals(rule: &Item, model: &Item, parameters: Option<&Value>) -> Vec<String
         reasons.push(missing(model, parameters, need));
     }
     reasons
+}
+
+/// How many states the spins of a model with these parameters have, as far as its manifest tells.
+pub(crate) fn states_of(traits: &ModelTraits, parameters: Option<&Value>) -> Option<u64> {
+    let given = || parameters?.at(&traits.states_parameter)?.as_i64().and_then(|q| u64::try_from(q).ok());
+    traits.states.or_else(given)
+}
+
+/// How the spins of a model with these parameters are shown: `spins` by their values, `colours`, `angles`, `states` by number.
+pub(crate) fn shown_as(model: &Item, parameters: Option<&Value>) -> &'static str {
+    [("scalar", "spins"), ("colours", "colours"), ("vectors", "angles")]
+        .into_iter()
+        .find(|(offer, _)| offers(model, parameters, offer))
+        .map_or("states", |(_, shown)| shown)
 }
 
 /// In words, why a need is not met: never offered, or spoiled by a parameter.

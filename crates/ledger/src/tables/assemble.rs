@@ -106,7 +106,7 @@ pub fn assemble(
     Ok(assembled)
 }
 
-fn info_of(constant: &Constant) -> Result<ColumnInfo, LedgerError> {
+pub(super) fn info_of(constant: &Constant) -> Result<ColumnInfo, LedgerError> {
     let Constant { name, unit, value } = constant;
     let cells =
         cells_of(value, 0).ok_or_else(|| LedgerError::Columns(format!("`{name}` cannot be {}", value.what())))?;
@@ -114,7 +114,7 @@ fn info_of(constant: &Constant) -> Result<ColumnInfo, LedgerError> {
 }
 
 /// A value repeated; None where columns cannot hold it.
-fn cells_of(value: &Value, rows: usize) -> Option<Cells> {
+pub(super) fn cells_of(value: &Value, rows: usize) -> Option<Cells> {
     match value {
         Value::Bool(value) => Some(Cells::Boolean(vec![Some(*value); rows])),
         Value::Integer(value) => Some(Cells::Integer(vec![Some(*value); rows])),

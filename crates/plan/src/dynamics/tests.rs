@@ -50,7 +50,7 @@ fn value_stability_of_groups() {
             + r#""update":[{"item":"local-updates/metropolis@2","parameters":{"lanes":2},"times":1},{"item":"mine/swap@2#"#
             + &hash
             + r#"","parameters":{},"times":3}]}"#;
-    assert_eq!(dynamics().group_value("random", 3).canonical(), expected);
+    assert_eq!(dynamics().group_value(&Start::Random, 3, None).canonical(), expected);
 }
 
 /// What random streams are made of. Another text makes other random numbers.
@@ -61,7 +61,7 @@ fn value_stability_of_streams() {
         + r#""model":{"item":"models/ising","parameters":{"coupling":1.0}},"seed":7,"start":"random","#
         + r#""update":[{"item":"local-updates/metropolis","parameters":{"lanes":2},"times":1},"#
         + r#"{"item":"mine/swap","parameters":{},"times":3}]}"#;
-    assert_eq!(dynamics().stream_preimage("random", 3), expected);
+    assert_eq!(dynamics().stream_preimage(&Start::Random, 3, None), expected);
 }
 
 /// Everything that the data depend on changes the key; what they do not depend on, does not.
@@ -70,7 +70,7 @@ fn keys_see_what_data_depend_on() {
     let of = |change: &dyn Fn(&mut Dynamics)| {
         let mut changed = dynamics();
         change(&mut changed);
-        (changed.group_value("random", 0).canonical(), changed.stream_preimage("random", 0))
+        (changed.group_value(&Start::Random, 0, None).canonical(), changed.stream_preimage(&Start::Random, 0, None))
     };
     let (key, stream) = of(&|_| {});
     let moves: [&dyn Fn(&mut Dynamics); 7] = [
@@ -110,4 +110,28 @@ fn keys_see_what_data_depend_on() {
     for (number, change) in nothing.iter().enumerate() {
         assert_eq!(of(change), (key.clone(), stream.clone()), "change {number} of what does not matter");
     }
+}
+
+/// What keys and streams of sequences are made of: position and start in both; what is followed, with its length, in the key only.
+#[test]
+fn value_stability_of_sequences() {
+    use spinledger_terms::Key;
+    let of = |follows: Follows| {
+        let dynamics = dynamics();
+        let mut value = dynamics.group_value(&Start::Ordered, 0, Some(&follows));
+        let Value::Map(map) = &mut value else { panic!("a mapping") };
+        map.retain(|key, _| ["follows", "position", "start"].contains(&key.as_str()));
+        (value.canonical(), dynamics.stream_preimage(&Start::Ordered, 0, Some(&follows)))
+    };
+    let first = of(Follows { position: 0, before: None });
+    assert_eq!(first.0, r#"{"position":0,"start":"ordered"}"#);
+    let second = of(Follows { position: 1, before: Some((Key([0x11; 32]), 40)) });
+    let expected =
+        r#"{"follows":{"group":""#.to_owned() + &"11".repeat(32) + r#"","rows":40},"position":1,"start":"ordered"}"#;
+    assert_eq!(second.0, expected);
+    assert!(second.1.contains(
+        r#""model":{"item":"models/ising","parameters":{"coupling":1.0}},"position":1,"seed":7,"start":"ordered""#
+    ));
+    let longer = of(Follows { position: 1, before: Some((Key([0x11; 32]), 41)) });
+    assert!(longer.0 != second.0 && longer.1 == second.1, "the length before is no physical identity of the stream");
 }

@@ -3,7 +3,7 @@ use crate::dynamics::tests::dynamics;
 use spinledger_ledger::{ChainPlace, Line};
 
 fn ask(measure: u64, chains: u32) -> Ask {
-    Ask { measure, chains, starts: vec!["ordered".into(), "random".into()], discard: false }
+    Ask { measure, chains, starts: vec![Start::Ordered, Start::Random], discard: false, keep: None }
 }
 
 /// Blocks of a group: lane, block, rows.
@@ -20,7 +20,7 @@ fn record(index: &mut Index, group: &Group, blocks: &[(u32, u32, u64)]) {
 fn point(measure: u64, chains: u32, index: &Index) -> Point {
     let mut dynamics = dynamics();
     dynamics.nominal_sites = 1 << 30;
-    plan_point(Vec::new(), dynamics, &ask(measure, chains), index)
+    plan_point(Vec::new(), dynamics, &ask(measure, chains), None, None, index)
 }
 
 /// What keys of blocks and series are made of.
@@ -127,4 +127,116 @@ fn updates_that_are_due() {
     assert_eq!(due.updates_due(), per_sweep * 8.0);
     due.groups[0].covered = vec![20, 20];
     assert_eq!(due.updates_due(), 0.0);
+}
+
+fn keeping(keep: Keep, measure: u64, index: &Index) -> Point {
+    let mut dynamics = dynamics();
+    dynamics.nominal_sites = 1 << 30;
+    let ask = Ask { keep: Some(keep), starts: vec![Start::Random], ..ask(measure, 2) };
+    plan_point(Vec::new(), dynamics, &ask, None, None, index)
+}
+
+fn record_state(index: &mut Index, group: &Group, lane: u32, row: u64) {
+    let key = Key::of(&group.state_preimage(lane, row));
+    let content = ContentHash([row as u8; 32]);
+    index.add(Line { key, kind: "state".into(), chain: None, content, seconds: 0.0, updates: 0, note: String::new() });
+}
+
+/// Keeping changes no key of chains; a parcel whose blocks are on record is due until its configurations are, too.
+#[test]
+fn configurations_are_owed_beside_the_blocks() {
+    let mut index = Index::default();
+    let plain = point(20, 2, &index);
+    let group = keeping(Keep::Every(8), 20, &index).groups.remove(0);
+    assert_eq!((group.key, &group.stream), (plain.groups[1].key, &plain.groups[1].stream));
+    assert_eq!(group.owed, [7, 15]);
+    record(&mut index, &group, &[(0, 0, 16), (1, 0, 16), (0, 1, 4), (1, 1, 4)]);
+    let planned = keeping(Keep::Every(8), 20, &index);
+    assert_eq!((planned.groups[0].state(20), planned.kept(&index)), (State::Partial, None));
+    for (lane, row) in [(0, 7), (1, 7), (0, 15)] {
+        record_state(&mut index, &group, lane, row);
+    }
+    assert_eq!(keeping(Keep::Every(8), 20, &index).groups[0].owed, [15]);
+    record_state(&mut index, &group, 1, 15);
+    let planned = keeping(Keep::Every(8), 20, &index);
+    assert_eq!(planned.groups[0].state(20), State::Recorded);
+    // `equilibrate` is 10 and `every` 2.
+    let kept: Vec<_> = planned.kept(&index).unwrap().iter().map(|k| (k.chain, k.sweep)).collect();
+    assert_eq!(kept, [(0, 24), (0, 40), (1, 24), (1, 40)]);
+    assert_eq!(keeping(Keep::Last, 20, &index).groups[0].owed, [19]);
+    assert_eq!(keeping(Keep::Last, 16, &index).groups[0].state(16), State::Recorded, "row 15 is there");
+    assert_eq!(point(20, 2, &index).kept(&index), Some(Vec::new()));
+}
+
+/// The forecast: nothing is swept for the configuration at the end of what is on record; for an earlier one the chains are run again.
+#[test]
+fn updates_for_configurations() {
+    let mut index = Index::default();
+    let group = keeping(Keep::Last, 20, &index).groups.remove(0);
+    record(&mut index, &group, &[(0, 0, 16), (1, 0, 16), (0, 1, 4), (1, 1, 4)]);
+    assert_eq!(keeping(Keep::Last, 20, &index).updates_due(), 0.0);
+    let per_sweep = 8.0 * (1u64 << 30) as f64;
+    // Rows 7 and 15: 16 rows every 2 sweeps after 11.
+    assert_eq!(keeping(Keep::Every(8), 20, &index).updates_due(), per_sweep * 43.0);
+    assert_eq!(keeping(Keep::Last, 30, &index).updates_due(), per_sweep * 20.0);
+}
+
+/// What keys of tables of configurations are made of; the same rows asked for in two ways are the same table.
+#[test]
+fn value_stability_of_tables_of_configurations() {
+    let mut point = keeping(Keep::Every(20), 20, &Index::default());
+    point.groups[0].key = Key([0x11; 32]);
+    let columns = [("temperature".to_owned(), "K".to_owned(), Value::Number(2.5))];
+    let value = point.states_value(&columns).unwrap();
+    let expected = r#"{"chains":[{"asked":2,"key":""#.to_owned()
+        + &"11".repeat(32)
+        + r#""}],"columns":[["temperature","K",2.5]],"rows":[19,0,1]}"#;
+    assert_eq!(value.canonical(), expected);
+    point.keep = Some(Keep::Last);
+    assert_eq!(point.states_value(&columns), Some(value.clone()));
+    point.keep = None;
+    assert_eq!(point.states_value(&columns), None);
+    assert_eq!(states_preimage(vec![value]), format!(r#"{{"kind":"states","points":[{expected}],"revision":1}}"#));
+}
+
+/// A sequence: each position begins from the last configurations of the one before, of all chains that are advanced, and its key says so.
+#[test]
+fn positions_follow_each_other() {
+    use crate::sequence::{Parcel, parcels};
+    let plan = |index: &Index, measures: &[u64]| -> Vec<Point> {
+        let mut points: Vec<Point> = Vec::new();
+        for (position, measure) in measures.iter().enumerate() {
+            let mut dynamics = dynamics();
+            dynamics.nominal_sites = 1 << 30;
+            let place = Some(Place { sequence: 0, position: position as u64 });
+            points.push(plan_point(Vec::new(), dynamics, &ask(*measure, 3), place, points.last(), index));
+        }
+        points
+    };
+    let mut index = Index::default();
+    let points = plan(&index, &[16, 16, 16]);
+    assert_eq!(points[0].groups[3].begin, Begin::Random);
+    let before = &points[0].groups[3];
+    let expected = [0, 1].map(|lane| Key::of(&before.state_preimage(lane, 15)));
+    assert_eq!(points[1].groups[3].begin, Begin::States(expected.to_vec()), "one chain is asked for, two are advanced");
+    assert!((0..3).all(|at| points[at].groups[0].owed == [15]));
+    // Four groups of chains (two starts of three chains in lanes of two), each a parcel along the whole sequence.
+    let all = parcels(&points);
+    assert_eq!(all.len(), 4);
+    assert_eq!(all[2], Parcel { parts: vec![(0, 2), (1, 2), (2, 2)] });
+    assert_eq!(all[2].state(&points), State::Due);
+    let longer = plan(&index, &[16, 16, 16, 16]);
+    let keys = |points: &[Point]| points.iter().flat_map(|p| p.groups.iter().map(|g| g.key)).collect::<Vec<_>>();
+    assert_eq!(keys(&longer)[..12], keys(&points), "a position that is appended changes none before it");
+    let other = plan(&index, &[16, 17, 16]);
+    assert_eq!(keys(&other)[..8], keys(&points)[..8], "its own length is in no key");
+    assert!(keys(&other)[8..].iter().zip(&keys(&points)[8..]).all(|(a, b)| a != b), "the length before is");
+    for (lane, at) in [(0, 0), (1, 0)] {
+        record(&mut index, &points[at].groups[0], &[(lane, 0, 16)]);
+        record_state(&mut index, &points[at].groups[0], lane, 15);
+    }
+    let points = plan(&index, &[16, 16, 16]);
+    assert_eq!(parcels(&points)[0].state(&points), State::Partial);
+    // Two positions of 16 rows every 2 sweeps after 11.
+    assert_eq!(parcels(&points)[0].updates_due(&points), 8.0 * (1u64 << 30) as f64 * 86.0);
 }

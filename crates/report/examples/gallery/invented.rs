@@ -180,7 +180,7 @@ pub(crate) fn domains(side: usize, states: u16, rounds: usize) -> Vec<u16> {
 pub(crate) fn pictures() -> Vec<(&'static str, Picture)> {
     let grid = |title: &str, side: usize, states: u16, rounds: usize, names: &[&str]| Picture {
         title: title.to_owned(),
-        sites: Sites::Grid { columns: side, rows: side },
+        sites: Sites::Grid { columns: side, rows: side, walls: true },
         states: domains(side, states, rounds),
         names: names.iter().map(|n| (*n).to_owned()).collect(),
         shades: Shades::Apart,

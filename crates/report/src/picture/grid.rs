@@ -1,6 +1,6 @@
 //! A rectangle of cells: equal neighbours become one rectangle.
 
-use super::{Picture, Shades, walls};
+use super::{Picture, Shades, Sites, walls};
 use crate::drawing::{Drawing, Stroke};
 use crate::ink::Ink;
 use crate::path::Path;
@@ -10,13 +10,15 @@ use std::collections::BTreeMap;
 const SMALL: f64 = 4.0;
 const MANY: usize = 20_000;
 
-pub(super) fn draw(picture: &Picture, columns: usize, rows: usize, side: f64) -> Drawing {
+pub(super) fn draw(picture: &Picture, columns: usize, rows: usize, side: f64, with_walls: bool) -> Drawing {
     // A picture of nothing is still a picture.
     let (columns, rows) = if columns == 0 || rows == 0 { (0, 0) } else { (columns, rows) };
     let longer = columns.max(rows).max(1) as f64;
     let cell = if side >= longer { (side / longer).floor() } else { side / longer };
     let (width, height) = (cell * columns as f64, cell * rows as f64);
-    let (mut drawing, left, top) = picture.frame(width, height, columns * rows);
+    // A strip shows each of its sites several times.
+    let sites = if matches!(picture.sites, Sites::Strip { .. }) { columns } else { columns * rows };
+    let (mut drawing, left, top) = picture.frame(width, height, sites);
     let (left, top) = (left.round(), top.round());
     let state = |column: usize, row: usize| picture.states.get(row * columns + column).copied();
 
@@ -58,7 +60,7 @@ pub(super) fn draw(picture: &Picture, columns: usize, rows: usize, side: f64) ->
     for (value, path) in paths {
         drawing.fill(path, picture.ink(value), 1.0);
     }
-    if matches!(picture.shades, Shades::Ring(_)) {
+    if !with_walls || matches!(picture.shades, Shades::Ring(_)) {
         return drawing;
     }
     let found = walls::around(columns, rows, &state);

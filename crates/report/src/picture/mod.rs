@@ -34,6 +34,15 @@ pub enum Sites {
         columns: usize,
         /// Rows of cells.
         rows: usize,
+        /// Whether walls are drawn.
+        walls: bool,
+    },
+    /// A chain from left to right, as a band: as many cells of it one above the other as `rows` says.
+    Strip {
+        /// Height of the band in cells.
+        rows: usize,
+        /// Whether walls are drawn.
+        walls: bool,
     },
     /// Sites anywhere in the plane, drawn as discs.
     Plane {
@@ -71,14 +80,19 @@ impl Picture {
     /// Draws the picture, `side` drawing units along the longer side at most (60 to 4000). In a grid each cell is a whole number of
     /// units across where that is possible, so that the pixels of a PNG are whole cells.
     ///
-    /// In a grid, angles ([`Shades::Ring`]) get no walls, nor do cells of less than 4 units between which there would be more than 20 000 lines:
+    /// In a grid or a strip, angles ([`Shades::Ring`]) get no walls, nor do cells of less than 4 units between which there would be more than 20 000 lines:
     /// nothing else would be seen.
     ///
     /// Cost: about 15 bytes of SVG for each run of equal states in a grid, and about 10 for each site in the plane.
     pub fn draw(&self, side: f64) -> Drawing {
         let side = side.clamp(60.0, 4000.0);
         match &self.sites {
-            Sites::Grid { columns, rows } => grid::draw(self, *columns, *rows, side),
+            Sites::Grid { columns, rows, walls } => grid::draw(self, *columns, *rows, side, *walls),
+            Sites::Strip { rows, walls } => {
+                let columns = self.states.len();
+                let band = Picture { states: self.states.repeat((*rows).max(1)), ..self.clone() };
+                grid::draw(&band, columns, (*rows).max(1), side, *walls)
+            }
             Sites::Plane { positions, walls } => sites::draw(self, positions, walls, side),
         }
     }

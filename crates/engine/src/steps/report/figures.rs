@@ -2,10 +2,10 @@
 
 use super::lineage::Lineage;
 use super::{Part, StepError, Task};
-use crate::steps::chart;
 use crate::steps::drawn::{Drawn, line_columns, place, points_on_lines};
 use crate::steps::words::{label, title, unit};
 use crate::steps::{Inputs, cell};
+use crate::steps::{chart, picture};
 use spinledger_report::{Axis, Chart, Content, Figure, Line, Mark, MarkAxis, Point, Style, shown};
 use spinledger_terms::{Table, Value};
 
@@ -35,6 +35,12 @@ pub(super) fn figures(task: &Task<'_>, parts: &[Part], lineage: &Lineage<'_>) ->
                 let chart = chart::build(&part.record.provenance.parameters, &inputs, task.units)?.chart;
                 let caption = format!("{}.", chart.title);
                 figures.push(Figure { caption, content: Content::Chart(chart), record: record() });
+            }
+            "picture" => {
+                let (main, walls) = (part.table(task, "main")?, part.table(task, "walls")?);
+                let picture = picture::picture_of(&part.record.provenance.parameters, &main, &walls)?;
+                let caption = format!("A configuration: {}.", picture.title);
+                figures.push(Figure { caption, content: Content::Picture(picture), record: record() });
             }
             "averages" | "reweight" => {
                 let table = part.table(task, "main")?;
