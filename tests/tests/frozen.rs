@@ -10,8 +10,17 @@ use std::collections::{BTreeMap, BTreeSet};
 /// Set to write the table anew.
 const REWRITE: &str = "SPINLEDGER_REWRITE";
 
-const LATTICES: [(&str, &str); 4] =
-    [("chain", "6"), ("square", "[4, 3]"), ("triangular", "[3, 4]"), ("cubic", "[2, 3, 2]")];
+const LATTICES: [(&str, &str); 9] = [
+    ("chain", "6"),
+    ("square", "[4, 3]"),
+    ("triangular", "[3, 4]"),
+    ("honeycomb", "[3, 2]"),
+    ("kagome", "[2, 3]"),
+    ("cubic", "[2, 3, 2]"),
+    ("bcc", "[2, 3, 2]"),
+    ("fcc", "2"),
+    ("diamond", "2"),
+];
 const BOUNDARIES: [&str; 5] = ["periodic", "free", "plus", "minus", "antiperiodic"];
 const RULES: [(&str, &str); 6] = [
     ("metropolis-1", "{ plugin: metropolis, lanes: 1 }"),
@@ -59,6 +68,8 @@ fn pipeline() -> String {
         if !["wolff", "swendsen-wang"].contains(&rule) {
             let field = "{ plugin: ising, coupling: { first.x: 1, first.y: -0.4 }, field: 0.3 }";
             steps += &step(&format!("field-{rule}"), square, field, update, both, short);
+            let spin_one = "{ plugin: blume-capel, coupling: 0.9, anisotropy: 0.4, field: -0.2 }";
+            steps += &step(&format!("spin-one-{rule}"), square, spin_one, update, both, short);
         }
         let hot = "inverse_temperature: 0\n    equilibrate: 10\n    measure: 40";
         steps += &step(&format!("hot-{rule}"), square, ising, update, both, hot);
@@ -91,6 +102,7 @@ fn pipeline() -> String {
   crossing-known: { does: crossing, of: sizes, one_over_nu: 1, correction: 1.75 }
   curves: { does: reweight, of: sizes, temperature: { from: 2, to: 2.5, count: 11 } }
   crossing-curves: { does: crossing, of: curves }
+  chart: { does: chart, of: curves, quantity: binder, points: sizes-means, marks: [{ value: 2.27, label: here }] }
   compare:
     does: compare
     items:
@@ -99,6 +111,7 @@ fn pipeline() -> String {
       - take: { step: mixed-means, quantity: energy }
         against: { step: blocks-means, quantity: energy }
         within: 1e9
+  page: { does: report, of: [sizes-means, curves, crossing, compare, chart, picture] }
 ";
     format!("spinledger: 1\npipeline: frozen\nseed: 20261201\nsteps:\n{steps}")
 }

@@ -8,6 +8,10 @@
 //!   mean: a drift would otherwise lengthen the time and excuse itself. Values are replaced by normal scores of their ranks first, as in
 //!   R-hat: the mean of a short piece of a skewed series (rare excursions at low temperature) is far from normal, and failed ten times more
 //!   often than promised. The limit is Student's for as many degrees of freedom as the error was estimated from.
+//!   Where the chains are too short to know their autocorrelation time, a drift that all of them share is still told: the differences between first
+//!   and last fifth of independent chains are independent, and their mean is compared with their scatter. Each chain is ranked by itself
+//!   for that, so that one drift looks like another however far apart they are; first and last are taken alike, since equilibrium looks the same
+//!   backwards.
 //! - *Spread*: rank-normalised split R-hat at most 1.05. Vehtari et al. 2021 recommend 1.01 for chains that are to be
 //!   run until it is met. Here the lengths are given, halves with only 20 independent measurements have 1.02
 //!   to 1.04 though nothing is wrong, and their large error is already in the error bar: 1.01 would flag short sound
@@ -99,10 +103,16 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
     if chains.is_empty() || chains.iter().any(|chain| chain.len() < 20 || !chain.iter().all(|v| v.is_finite())) {
         return short(0.0);
     }
-    let scored = scores(chains);
+    let given = chains;
+    let scored = scores(given);
     let chains: Vec<&[f64]> = scored.iter().map(Vec::as_slice).collect();
     let early: Vec<&[f64]> = chains.iter().map(|chain| &chain[..chain.len() / 5]).collect();
     let late: Vec<&[f64]> = chains.iter().map(|chain| &chain[chain.len() - chain.len() / 2..]).collect();
+    // Too short to say, but for a drift that all chains share.
+    let shared = |effective: f64| match shared_drift(&alone(given), params.false_alarm) {
+        Some(deviation) => EquilibrationInfo { verdict: Verdict::Drift { chain: None, deviation }, spread, deviation },
+        None => short(effective),
+    };
     // Each last half about its own mean.
     let centred: Vec<Vec<f64>> = late
         .iter()
@@ -113,13 +123,13 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
         .collect();
     let centred: Vec<&[f64]> = centred.iter().map(Vec::as_slice).collect();
     let Ok(found) = autocorrelation(&centred, &AutocorrelationParams::default()) else {
-        return short(0.0);
+        return shared(0.0);
     };
     // A sum over independent values has at least this variance per value: 2 tau times that of one.
     let variance = 2.0 * found.tau * found.variance;
     let effective = late.iter().map(|part| part.len()).min().unwrap_or(0) as f64 / (2.0 * found.tau);
     if variance > 0.0 && (!found.closed || effective < params.least_effective) {
-        return short(effective);
+        return shared(effective);
     }
     let differences: Vec<f64> =
         early.iter().zip(&late).map(|(early, late)| mean(early).unwrap_or(0.0) - mean(late).unwrap_or(0.0)).collect();
@@ -157,6 +167,42 @@ pub fn equilibration(chains: &[&[f64]], params: &EquilibrationParams) -> Equilib
         }
     };
     EquilibrationInfo { verdict, spread, deviation: worst.1 }
+}
+
+/// First minus last fifth of each chain, in scores of its own ranks.
+fn alone(chains: &[&[f64]]) -> Vec<f64> {
+    let difference = |chain: &&[f64]| {
+        let scored = &scores(&[*chain])[0];
+        let part = scored.len() / 5;
+        mean(&scored[..part]).unwrap_or(0.0) - mean(&scored[scored.len() - part..]).unwrap_or(0.0)
+    };
+    chains.iter().map(difference).collect()
+}
+
+/// The mean of the chains' differences in standard errors, both from the chains alone, where chance gives so large a one less often than
+/// `false_alarm`.
+///
+/// The tail of Student's distribution with d degrees of freedom is bounded by its power law, which is exact far out, where such small probabilities are:
+/// P(|t| > x) <= 2 c d^((d - 1)/2) x^-d, c = G((d + 1)/2)/((pi d)^1/2 G(d/2)) (from its density, leaving out 1 in 1 + t^2/d).
+fn shared_drift(differences: &[f64], false_alarm: f64) -> Option<f64> {
+    let count = differences.len();
+    let degrees = count.checked_sub(1).filter(|degrees| *degrees > 0)?;
+    let centre = mean(differences)?;
+    let square = sum_by(count, |chain| (differences[chain] - centre) * (differences[chain] - centre));
+    // Scores are of order 1: what is below this is rounding, of the mean and of the scatter.
+    let error = (square / (count * degrees) as f64).sqrt().max(1e-12);
+    let deviation = centre / error;
+    // c d^1/2 = 1/pi for one degree and 1/2 for two; G(x + 1) = x G(x) gives the rest by steps of two.
+    let mut peak = if degrees % 2 == 1 { std::f64::consts::FRAC_1_PI } else { 0.5 };
+    let mut from = 2 - degrees % 2;
+    while from < degrees {
+        peak *= (from + 1) as f64 / from as f64;
+        from += 2;
+    }
+    // c d^((d - 1)/2) x^-d = c d^1/2 / d (d^1/2/x)^d.
+    let ratio = (degrees as f64).sqrt() / deviation.abs();
+    let tail = (0..degrees).fold(2.0 * peak / degrees as f64, |tail, _| tail * ratio);
+    (tail < false_alarm).then_some(deviation)
 }
 
 /// The values as normal scores of their ranks among all of them; values that are equal up to rounding have equal scores.
@@ -199,6 +245,30 @@ mod tests {
         for (degrees, expected, within) in [(10.0, 4.5869, 0.02), (30.0, 3.6460, 0.001), (120.0, 3.3735, 1e-4)] {
             assert!((student(z, degrees) - expected).abs() < within, "{degrees} {}", student(z, degrees));
         }
+    }
+
+    #[test]
+    fn shared_drifts_are_judged_by_students_tail() {
+        // Differences of mean m with three degrees of freedom: t = 12.924 has the two-sided probability 1e-3, and the bound 1.022e-3; with
+        // four 8.610 and 1.092e-3, with seven 5.408 and 1.952e-3 (quantiles of any table of Student's distribution).
+        for (count, quantile, above) in [(4, 12.924, 1.03), (5, 8.610, 1.1), (8, 5.408, 1.96)] {
+            // Half of them at 1, half at -1 about the mean, one at 0 if there is one over: the error is known.
+            let pairs = count / 2;
+            let error = (2.0 * pairs as f64 / (count * (count - 1)) as f64).sqrt();
+            let at = |t: f64| {
+                let mut values: Vec<f64> = (0..2 * pairs).map(|k| if k % 2 == 0 { 1.0 } else { -1.0 }).collect();
+                values.resize(count, 0.0);
+                values.iter().map(|value| value + t * error).collect::<Vec<f64>>()
+            };
+            // Never more often than promised, and not much less often.
+            assert_eq!(shared_drift(&at(quantile), 1e-3), None, "{count}");
+            let found = shared_drift(&at(-quantile), above * 1e-3).expect("a drift");
+            assert!((found + quantile).abs() < 1e-9, "{count}: {found}");
+        }
+        assert_eq!(shared_drift(&[], 1e-3), None);
+        assert_eq!(shared_drift(&[3.0], 1e-3), None);
+        assert_eq!(shared_drift(&[0.0, 0.0, 0.0], 1e-3), None);
+        assert!(shared_drift(&[1.0, 1.0, 1.0], 1e-3).is_some());
     }
 
     #[test]

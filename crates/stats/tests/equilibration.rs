@@ -117,6 +117,31 @@ fn short_chains_have_no_verdict() {
     }
 }
 
+/// Chains that are one drift from beginning to end, too short to know their own time: that all of them go the same way is told. Chains that are short and
+/// sound are not: 400 sets at a false-alarm rate of 1e-3, more than 4 have probability 6e-5.
+#[test]
+fn a_drift_that_all_chains_share_is_told_however_short_they_are() {
+    let params = EquilibrationParams::default();
+    for seed in 0..20 {
+        let mut chains = stationary("shared", seed, 0.9, 100);
+        for chain in &mut chains {
+            chain.iter_mut().enumerate().for_each(|(t, value)| *value = 0.2 * *value + t as f64 / 5.0);
+        }
+        let info = equilibration(&slices(&chains), &params);
+        assert!(matches!(info.verdict, Verdict::Drift { chain: None, deviation } if deviation < -20.0), "{info:?}");
+        // Two go up and two go down: nothing is shared.
+        chains[..2].iter_mut().flatten().for_each(|value| *value = -*value);
+        let info = equilibration(&slices(&chains), &params);
+        assert!(matches!(info.verdict, Verdict::TooShort { .. }), "{info:?}");
+    }
+    let mut alarms = 0;
+    for seed in 0..400 {
+        let info = equilibration(&slices(&stationary("short and sound", seed, 0.98, 100)), &params);
+        alarms += usize::from(info.equilibrated() == Some(false));
+    }
+    assert!(alarms <= 4, "{alarms} of 400");
+}
+
 #[test]
 fn constant_chains_are_equilibrated_unless_they_differ() {
     let params = EquilibrationParams::default();

@@ -46,8 +46,8 @@ pub(crate) fn close(
         match ledger.read_table(key, "main") {
             Ok(table) => {
                 verdicts.extend(verdicts_of(&table));
-                // A page repeats the flags of the steps that it shows.
-                let own = flagged_of(&table).filter(|_| step.does != "report");
+                // A page and a chart repeat the flags of what they show.
+                let own = flagged_of(&table).filter(|_| !["chart", "report"].contains(&step.does.as_str()));
                 flagged.extend(own.map(|flagged| (step.name.as_str(), flagged)));
             }
             Err(error) => {

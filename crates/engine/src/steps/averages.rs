@@ -14,7 +14,7 @@ use table::Row;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "averages", revision: 2, split: Split::Points, spec, check, complete: as_is, analyse };
+    StepKind { does: "averages", revision: 3, split: Split::Points, spec, check, complete: as_is, analyse };
 
 /// Fewer independent measurements than this are flagged: an error estimated from 50 is itself uncertain by a tenth (common practice).
 const FEW: f64 = 50.0;

@@ -11,7 +11,7 @@ use spinledger_terms::{Column, ColumnSpec, Field, Kind, Problem, StepSpec, Table
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "reweight", revision: 1, split: Split::Groups, spec, check, complete: as_is, analyse };
+    StepKind { does: "reweight", revision: 2, split: Split::Groups, spec, check, complete: as_is, analyse };
 
 /// A place is covered where at least this many times the root of n independent measurements contribute, n being those of the run nearest to it, and
 /// where at least its square do.
