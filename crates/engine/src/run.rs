@@ -190,6 +190,7 @@ impl Run<'_> {
         let mut recorded = 0;
         let mut due = 0.0;
         let parcels = parcels(&points);
+        let followed = step.followed();
         for parcel in &parcels {
             if parcel.state(&points) == State::Recorded {
                 recorded += 1;
@@ -202,7 +203,7 @@ impl Run<'_> {
             let cost = parcel.updates_due(&points);
             due += cost;
             let Some((point, _)) = parcel.parts.first() else { continue };
-            let words = words::parcel(parcel.groups(&points), &step.followed());
+            let words = words::parcel(parcel.groups(&points), &followed);
             let job = Job::Sample(Box::new(SampleJob { points: along, pipeline: None }));
             items.push(Item { step: number, point: *point, words, job, cost });
         }

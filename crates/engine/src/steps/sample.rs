@@ -2,6 +2,7 @@
 
 mod course;
 
+use course::Known;
 pub(crate) use course::{StartStep, must_keep, start_step};
 
 use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
@@ -91,9 +92,10 @@ pub fn ask(body: &Value, kept: Option<Vec<StateRef>>) -> Ask {
 fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     // Many points share their mistakes: each is told once, at the first point that has it.
     let mut told = BTreeSet::new();
+    let mut known = Known::default();
     for point in step.points {
         let mut found = Vec::new();
-        check_point(step, point, &mut found);
+        check_point(step, point, &mut known, &mut found);
         for problem in found {
             if told.insert((problem.path.clone(), problem.message.clone())) {
                 problems.push(problem);
@@ -102,7 +104,7 @@ fn check(step: &Checked<'_>, problems: &mut Vec<Problem>) {
     }
 }
 
-fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
+fn check_point(step: &Checked<'_>, point: &Point, known: &mut Known, problems: &mut Vec<Problem>) {
     let body = &point.body();
     match (body.get("temperature"), body.get("inverse_temperature")) {
         (None, None) => problems.push(
@@ -117,7 +119,7 @@ fn check_point(step: &Checked<'_>, point: &Point, problems: &mut Vec<Problem>) {
         _ => {}
     }
     check_temperature(point, body, problems);
-    course::check(step, point, body, problems);
+    course::check(step, point, body, known, problems);
     let item = |kind: ItemKind, value: Option<&Value>| -> Option<Item> {
         Some(step.vocabulary.item(kind, value?.get("plugin")?.as_str()?)?.1.clone())
     };

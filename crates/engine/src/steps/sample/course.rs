@@ -49,12 +49,19 @@ pub(crate) fn start_step(body: &Value) -> Option<StartStep> {
     Some(StartStep { step: start.get("step")?.as_str()?.to_owned(), filter })
 }
 
+/// What was found out about steps to begin from: it is the same for all points that begin from one.
+#[derive(Default)]
+pub(super) struct Known {
+    /// The places of their points, by name; None where something is wrong with the step, or its points wait for a table.
+    places: BTreeMap<String, Option<Vec<Place>>>,
+}
+
 /// Checks them at a point.
-pub(super) fn check(step: &Checked<'_>, point: &Point, body: &Value, problems: &mut Vec<Problem>) {
+pub(super) fn check(step: &Checked<'_>, point: &Point, body: &Value, known: &mut Known, problems: &mut Vec<Problem>) {
     check_keep(point, body, problems);
     check_follow(step, point, body, problems);
     if let Some(start) = start_step(body) {
-        check_start(step, point, &start, problems);
+        check_start(step, point, &start, known, problems);
     }
 }
 
@@ -128,34 +135,38 @@ fn keeps(step: &Checked<'_>, name: &str, place: &Path, problems: &mut Vec<Proble
     false
 }
 
-fn check_start(step: &Checked<'_>, point: &Point, start: &StartStep, problems: &mut Vec<Problem>) {
-    let place = point.place("start");
+fn check_start(step: &Checked<'_>, point: &Point, start: &StartStep, known: &mut Known, problems: &mut Vec<Problem>) {
     if point.column("start").is_some() {
         // The column would name the step, and no result depends on names of steps.
-        let problem = Problem::at_value(&place, "a scan cannot name the step to begin from");
+        let problem = Problem::at_value(&point.place("start"), "a scan cannot name the step to begin from");
         return problems.push(problem.expected("`start: { step: ... }` in the step itself"));
     }
     let name = &start.step;
-    let step_place = point.place("start.step");
-    match step.kinds.get(name).map(String::as_str) {
-        Some("sample") => {}
-        Some(other) => {
-            let problem = Problem::at_value(&step_place, format!("`{name}` does {other}"));
-            return problems.push(problem.expected("a step that does: sample, and keeps configurations"));
-        }
-        None => return,
+    let place = point.place("start.step");
+    if !known.places.contains_key(name) {
+        known.places.insert(name.clone(), places(step, name, &place, problems));
     }
-    // Empty where its scan waits for a table.
-    let Some(points) = step.earlier.get(name).filter(|points| !points.is_empty()) else { return };
-    if !keeps(step, name, &step_place, problems) {
-        return;
-    }
-    let of = |point: &Point| Place::of(point, step.pipeline, step.vocabulary);
-    let places: Option<Vec<Place>> = points.iter().map(of).collect();
-    if let (Some(places), Some(own)) = (places, of(point))
-        && let Err(message) = choose(start, &places, &own)
+    let Some(Some(places)) = known.places.get(name) else { return };
+    if let Some(own) = Place::of(point, step.pipeline, step.vocabulary)
+        && let Err(message) = choose(start, places, &own)
     {
         let expected = format!("a point of `{name}` for each point here: the same in all columns that both have");
-        problems.push(Problem::at_value(&step_place, message).expected(expected));
+        problems.push(Problem::at_value(&place, message).expected(expected));
     }
+}
+
+/// The places of the points of a step to begin from; None where it is none, or they are not known yet.
+fn places(step: &Checked<'_>, name: &str, place: &Path, problems: &mut Vec<Problem>) -> Option<Vec<Place>> {
+    let does = step.kinds.get(name)?;
+    if does != "sample" {
+        let problem = Problem::at_value(place, format!("`{name}` does {does}"));
+        problems.push(problem.expected("a step that does: sample, and keeps configurations"));
+        return None;
+    }
+    // Empty where its scan waits for a table.
+    let points = step.earlier.get(name).filter(|points| !points.is_empty())?;
+    if !keeps(step, name, place, problems) {
+        return None;
+    }
+    points.iter().map(|point| Place::of(point, step.pipeline, step.vocabulary)).collect()
 }
