@@ -7,6 +7,7 @@ use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::process::{Child, Command, Output, Stdio};
 use std::sync::OnceLock;
+use std::time::Duration;
 use tempfile::TempDir;
 
 /// The top of the source tree.
@@ -110,6 +111,19 @@ impl Desk {
         let mut command = self.command(args);
         command.stdout(Stdio::null()).stderr(Stdio::null()).process_group(0);
         command.spawn().expect("the program starts")
+    }
+
+    /// Starts the program and kills it after a while, with its workers; whether it had not come to a good end before.
+    ///
+    /// # Panics
+    /// Where it cannot be started.
+    pub fn killed(&self, args: &[&str], after: Duration) -> bool {
+        let mut child = self.start(args);
+        std::thread::sleep(after);
+        let group = rustix::process::Pid::from_child(&child);
+        // It may have ended by now.
+        let _ = rustix::process::kill_process_group(group, rustix::process::Signal::KILL);
+        !child.wait().expect("the program ends").success()
     }
 
     /// Runs a pipeline with `--json` and expects a status.

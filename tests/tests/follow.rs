@@ -131,7 +131,7 @@ fn each_position_begins_where_the_one_before_ended() {
 fn workers_and_kills_do_not_matter() {
     const KILLS: u64 = 12;
     let text =
-        |kill: u64| hysteresis(96, 60 + kill, LOOP).replace("start: ordered", "start: both\n    keep: { every: 20 }");
+        |kill: u64| hysteresis(96, 240 + kill, LOOP).replace("start: ordered", "start: both\n    keep: { every: 20 }");
     let whole = text(KILLS);
     let reference = run(&whole, &["--workers", "1"]).parquet("results");
     assert!(reference == run(&whole, &["--workers", "2"]).parquet("results"), "two workers");
@@ -140,13 +140,8 @@ fn workers_and_kills_do_not_matter() {
     for kill in 0..KILLS {
         // The last kills are on the way to what is asked for in the end.
         desk.write("follow.yaml", &text(if kill < 4 { kill } else { KILLS }));
-        let mut child = desk.start(&["run", "follow.yaml", "--quiet"]);
-        std::thread::sleep(Duration::from_millis(20 + kill * 97 % 260));
-        let _ = rustix::process::kill_process_group(
-            rustix::process::Pid::from_child(&child),
-            rustix::process::Signal::KILL,
-        );
-        unfinished += u32::from(!child.wait().expect("the run ends").success());
+        unfinished +=
+            u32::from(desk.killed(&["run", "follow.yaml", "--quiet"], Duration::from_millis(20 + kill * 97 % 260)));
     }
     assert!(unfinished >= 5, "most kills came too late to prove anything: {unfinished} of {KILLS}");
     desk.write("follow.yaml", &whole);

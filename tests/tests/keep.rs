@@ -199,14 +199,9 @@ fn kills_do_not_matter() {
     let mut unfinished = 0;
     for kill in 0..KILLS {
         desk.write("keep.yaml", &text(kill));
-        let mut child = desk.start(&["run", "keep.yaml", "--quiet"]);
         // Moments that are spread over a quarter of a second.
-        std::thread::sleep(Duration::from_millis(20 + kill * 83 % 250));
-        let _ = rustix::process::kill_process_group(
-            rustix::process::Pid::from_child(&child),
-            rustix::process::Signal::KILL,
-        );
-        unfinished += u32::from(!child.wait().expect("the run ends").success());
+        unfinished +=
+            u32::from(desk.killed(&["run", "keep.yaml", "--quiet"], Duration::from_millis(20 + kill * 83 % 250)));
     }
     assert!(unfinished >= 6, "most kills came too late to prove anything: {unfinished} of {KILLS}");
     let whole = text(KILLS);
