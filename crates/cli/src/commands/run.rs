@@ -1,7 +1,7 @@
 //! `spinledger run`: compute what is due, tell how it goes, close with what came out.
 
 use crate::args::RunArgs;
-use crate::commands::{WRONG, closing, open, workers};
+use crate::commands::{WRONG, closing, open, results, workers};
 use crate::screen::{Screen, Style};
 use crate::text::{amount, counted, duration};
 use anyhow::Context;
@@ -9,7 +9,6 @@ use serde_json::json;
 use spinledger_engine::run::{Notice, RunOptions, run as run_pipeline};
 use spinledger_engine::{PoolOptions, Study};
 use spinledger_ledger::Ledger;
-use std::path::Path;
 use std::time::{Duration, Instant};
 
 /// Runs a pipeline.
@@ -23,7 +22,7 @@ pub(crate) fn run(args: &RunArgs) -> anyhow::Result<u8> {
     let Some(study) = open(&args.pipeline, &mut screen)? else { return Ok(WRONG) };
     let ledger = Ledger::open(&args.ledger.ledger)
         .with_context(|| format!("cannot open the ledger {}", args.ledger.ledger.display()))?;
-    let out = args.out.clone().unwrap_or_else(|| Path::new("results").join(&study.pipeline.name));
+    let out = results(args.out.as_deref(), &study);
     let options = RunOptions {
         pool: PoolOptions {
             program: std::env::current_exe().context("cannot tell which program this is")?,
