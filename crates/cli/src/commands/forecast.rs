@@ -3,7 +3,7 @@
 use crate::args::ForecastArgs;
 use crate::commands::{WELL, WRONG, open, results, workers};
 use crate::screen::{Screen, Style, Width};
-use crate::text::{amount, bytes, columns, counted, duration, fit, ranges, wrap};
+use crate::text::{amount, bytes, columns, counted, duration, fit, ranges, wide, wrap};
 use anyhow::Context;
 use serde_json::json;
 use spinledger_engine::forecast::{Disk, Forecast, Reason, StepForecast, forecast as forecast_pipeline};
@@ -69,19 +69,31 @@ fn tell_steps(forecast: &Forecast, screen: &mut Screen) {
             step.waits.join(", "),
         ]);
     }
-    tell_columns(&rows, &[2, 3, 4, 5, 6, 7], screen);
+    // What goes first where there is no room for it.
+    let room = Width::now().columns().unwrap_or(usize::MAX);
+    let mut right = vec![2, 3, 4, 5, 6, 7];
+    for leaves in [1, 8, 6, 4, 3, 7] {
+        if fits(&rows, &right, room) {
+            break;
+        }
+        rows.iter_mut().for_each(|row| row[leaves].clear());
+        right.retain(|column| *column != leaves);
+    }
+    let kept: Vec<usize> = (0..header.len()).filter(|at| !rows[0][*at].is_empty()).collect();
+    let pick = |row: &Vec<String>| kept.iter().map(|at| row[*at].clone()).collect();
+    let right: Vec<usize> = (0..kept.len()).filter(|at| right.contains(&kept[*at])).collect();
+    let rows: Vec<Vec<String>> = rows.iter().map(pick).collect();
+    columns(&rows, &right).iter().for_each(|line| screen.line(&fit(line, room)));
 }
 
-/// Rows of columns, cut where the terminal ends.
-fn tell_columns(rows: &[Vec<String>], right: &[usize], screen: &mut Screen) {
-    for line in columns(rows, right) {
-        screen.line(&Width::now().columns().map_or(line.clone(), |width| fit(&line, width)));
-    }
+fn fits(rows: &[Vec<String>], right: &[usize], room: usize) -> bool {
+    columns(rows, right).iter().all(|line| wide(line) <= room)
 }
 
 fn tell_reasons(forecast: &Forecast, screen: &mut Screen) {
     let header = ["why", "parcels", "what", "before", "now"];
     let mut rows = vec![header.map(String::from).to_vec()];
+    let mut lines = Vec::new();
     for step in &forecast.steps {
         let reasons = condensed(&step.reasons);
         let mut name = step.step.clone();
@@ -93,16 +105,27 @@ fn tell_reasons(forecast: &Forecast, screen: &mut Screen) {
         for reason in reasons.iter().take(SHOWN) {
             let parcels = if reason.parcels == 0 { String::new() } else { reason.parcels.to_string() };
             let goes_on = if reason.continues { " (continues)" } else { "" };
+            let arrow = if reason.before.is_empty() { "" } else { " ->" };
+            let colon = if reason.before.is_empty() && reason.now.is_empty() { "" } else { ":" };
+            let words = format!("{}{colon} {}{arrow} {}{goes_on}", reason.what, reason.before, reason.now);
+            lines.push(format!("{}: {parcels} {words}", step.step));
             row([parcels, reason.what.clone(), reason.before.clone(), format!("{}{goes_on}", reason.now)]);
         }
         if reasons.len() > SHOWN {
             let more = counted((reasons.len() - SHOWN) as u64, "more reason");
-            row([String::new(), format!("and {more} (--json tells all)"), String::new(), String::new()]);
+            let more = format!("and {more} (--json tells all)");
+            lines.push(format!("{}: {more}", step.step));
+            row([String::new(), more, String::new(), String::new()]);
         }
     }
-    if rows.len() > 1 {
-        screen.line("");
-        tell_columns(&rows, &[1], screen);
+    if lines.is_empty() {
+        return;
+    }
+    screen.line("");
+    if fits(&rows, &[1], Width::now().columns().unwrap_or(usize::MAX)) {
+        columns(&rows, &[1]).iter().for_each(|line| screen.line(line));
+    } else {
+        lines.iter().for_each(|line| tell(line, screen));
     }
 }
 
