@@ -137,10 +137,13 @@ impl std::str::FromStr for Rows {
 
 #[derive(Debug, ClapArgs)]
 pub(crate) struct TraceArgs {
-    /// A Parquet file of results, or a key (its first digits suffice)
+    /// A file of results (Parquet, SVG, PNG, HTML), or a key (its first digits suffice)
     pub(crate) what: String,
     #[command(flatten)]
     pub(crate) ledger: LedgerArgs,
+    /// Tell of every entry by itself
+    #[arg(long)]
+    pub(crate) all: bool,
     /// Print the records as JSON lines
     #[arg(long)]
     pub(crate) json: bool,

@@ -132,11 +132,12 @@ pub(crate) fn bytes(x: f64) -> String {
     format!("{x:.0} bytes")
 }
 
+/// So many values are listed; of more, the first and the last are told.
+const LISTED: usize = 3;
+
 /// What several points have in common and over what they range, from names and values of each: `size 12 to 32 (4), temperature 2.31`. Few values
 /// are listed.
 pub(crate) fn ranges(points: &[Vec<(String, String)>]) -> String {
-    /// So many values are listed; of more, the first and the last are told.
-    const LISTED: usize = 3;
     let mut names: Vec<&str> = Vec::new();
     for (name, _) in points.iter().flatten() {
         if !names.contains(&name.as_str()) {
@@ -144,24 +145,26 @@ pub(crate) fn ranges(points: &[Vec<(String, String)>]) -> String {
         }
     }
     let of = |name: &str| {
-        let mut values: Vec<&str> = Vec::new();
-        for (_, value) in points.iter().flatten().filter(|(known, _)| known == name) {
-            if !values.contains(&value.as_str()) {
-                values.push(value);
-            }
-        }
-        let number = |text: &str| text.parse::<f64>().ok();
-        let numbers = values.iter().all(|value| number(value).is_some());
-        if numbers {
-            values.sort_by(|a, b| number(a).partial_cmp(&number(b)).unwrap_or(std::cmp::Ordering::Equal));
-        }
-        match values.as_slice() {
-            few if few.len() <= LISTED => format!("{name} {}", few.join(", ")),
-            [first, .., last] if numbers => format!("{name} {first} to {last} ({})", values.len()),
-            many => format!("{name} {} ... ({})", many[..LISTED].join(", "), many.len()),
-        }
+        let values = points.iter().flatten().filter(|(known, _)| known == name).map(|(_, value)| value.as_str());
+        format!("{name} {}", range(values))
     };
     names.into_iter().map(of).collect::<Vec<_>>().join(", ")
+}
+
+/// Values of one name: `2.31`, `8, 12`, `12 to 32 (4)`.
+pub(crate) fn range<'a>(values: impl IntoIterator<Item = &'a str>) -> String {
+    let mut seen = std::collections::HashSet::new();
+    let mut values: Vec<&str> = values.into_iter().filter(|value| seen.insert(*value)).collect();
+    let number = |text: &str| text.parse::<f64>().ok();
+    let numbers = values.iter().all(|value| number(value).is_some());
+    if numbers {
+        values.sort_by(|a, b| number(a).partial_cmp(&number(b)).unwrap_or(std::cmp::Ordering::Equal));
+    }
+    match values.as_slice() {
+        few if few.len() <= LISTED => few.join(", "),
+        [first, .., last] if numbers => format!("{first} to {last} ({})", values.len()),
+        many => format!("{} ... ({})", many[..LISTED].join(", "), many.len()),
+    }
 }
 
 /// `1 parcel`, `2 parcels`.
