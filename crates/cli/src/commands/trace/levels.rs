@@ -328,12 +328,14 @@ fn take_chains(sampling: &mut Sampling, block: &Record) {
         sampling.parts.entry(String::new()).or_default().add("streams", words);
     }
     for identity in &p.plugins {
-        let words = format!("{}/{} revision {}", identity.library, identity.item, identity.revision);
+        let (item, revision) = (&identity.item, identity.revision);
         if identity.standard {
-            sampling.plugins.insert(words);
+            sampling.plugins.insert(format!("{}/{item} revision {revision}", identity.library));
         } else {
             let (file, hash) = (&identity.file, digits(&identity.file_hash));
-            sampling.foreign.insert(format!("foreign plugin {words} from {file}, file hash {hash}"));
+            sampling
+                .foreign
+                .insert(format!("foreign plugin {item} from {file}, revision {revision}, file hash {hash}"));
         }
     }
 }
