@@ -96,15 +96,7 @@ impl Forecast {
 /// Where the ledger cannot be read.
 pub fn forecast(study: &Study, ledger: Option<&Ledger>) -> Result<Forecast, LedgerError> {
     let index = ledger.map_or_else(|| Ok(Index::default()), Ledger::index)?;
-    let mut ahead = Ahead {
-        study,
-        ledger,
-        index: &index,
-        past: Past::new(ledger, &index),
-        products: Products::new(),
-        parts: Products::new(),
-        points: BTreeMap::new(),
-    };
+    let mut ahead = Ahead::new(study, ledger, &index);
     let steps: Vec<StepForecast> = study.pipeline.steps.iter().map(|step| ahead.step(step)).collect();
     let unknown = |step: &StepForecast| step.seconds.is_none() && (step.updates > 0.0 || step.does == "sample");
     let due = |step: &StepForecast| step.due != Some(0) || step.partial > 0;
@@ -113,8 +105,21 @@ pub fn forecast(study: &Study, ledger: Option<&Ledger>) -> Result<Forecast, Ledg
     Ok(Forecast { steps, seconds })
 }
 
+/// How the steps of a pipeline stand: as [`forecast`], without reasons, times and sizes, and as quick as planning.
+///
+/// # Errors
+/// Where the ledger cannot be read.
+pub fn standing(study: &Study, ledger: &Ledger) -> Result<Vec<StepForecast>, LedgerError> {
+    let index = ledger.index()?;
+    let mut ahead = Ahead::new(study, Some(ledger), &index);
+    ahead.brief = true;
+    Ok(study.pipeline.steps.iter().map(|step| ahead.step(step)).collect())
+}
+
 /// Looking ahead along the steps.
 struct Ahead<'a> {
+    /// Whether only the states of parcels are wanted.
+    brief: bool,
     study: &'a Study,
     ledger: Option<&'a Ledger>,
     index: &'a Index,
@@ -126,7 +131,20 @@ struct Ahead<'a> {
     points: BTreeMap<String, (u64, u64)>,
 }
 
-impl Ahead<'_> {
+impl<'a> Ahead<'a> {
+    fn new(study: &'a Study, ledger: Option<&'a Ledger>, index: &'a Index) -> Self {
+        Ahead {
+            brief: false,
+            study,
+            ledger,
+            index,
+            past: Past::new(ledger, index),
+            products: Products::new(),
+            parts: Products::new(),
+            points: BTreeMap::new(),
+        }
+    }
+
     fn step(&mut self, step: &Step) -> StepForecast {
         let mut forecast = StepForecast { step: step.name.clone(), does: step.does.clone(), ..StepForecast::default() };
         let waits = step.needs.iter().filter(|name| !self.products.contains_key(*name));
@@ -186,7 +204,7 @@ impl Ahead<'_> {
         forecast.pieces = open.len() as u64;
         if open.is_empty() {
             forecast.seconds = Some(0.0);
-        } else {
+        } else if !self.brief {
             forecast.reasons = self.chain_reasons(step, &open);
             self.costs(&points, forecast);
         }
@@ -298,6 +316,9 @@ impl Ahead<'_> {
     }
 
     fn analysis_reasons(&mut self, step: &Step, kind: &StepKind, all: &[Parcel], due: &[&Parcel]) -> Vec<Reason> {
+        if self.brief {
+            return Vec::new();
+        }
         self.past.analyses(kind.does);
         let leaves: Vec<Leaves> =
             due.iter().map(|parcel| self.past.names.leaves(analysis_leaves(&parcel.job.preimage))).collect();

@@ -4,6 +4,7 @@ use crate::commands::{BROKEN, WELL};
 use crate::screen::Screen;
 use crate::text::{amount, columns, counted, duration, with_error};
 use serde_json::json;
+use spinledger_engine::forecast::standing;
 use spinledger_engine::planning::Product;
 use spinledger_engine::run::Outcome;
 use spinledger_engine::{Study, chain_text};
@@ -80,6 +81,38 @@ pub(crate) fn close(
     screen.event(&json!({ "event": "finished", "computed": counts.computed, "reused": counts.reused,
         "broken": counts.broken, "steps": outcome.steps, "out": out }));
     if well { WELL } else { BROKEN }
+}
+
+/// Tells what is on record of a run that was stopped, and how to go on.
+pub(crate) fn tell_stopped(
+    study: &Study,
+    ledger: &Ledger,
+    outcome: &Outcome,
+    out: &Path,
+    spent: &Spent,
+    screen: &mut Screen,
+) -> anyhow::Result<()> {
+    let steps = standing(study, ledger)?;
+    let mut rows = vec![["step", "on record", "partial", "due"].map(String::from).to_vec()];
+    for step in &steps {
+        let due = step.due.map_or("?".to_owned(), |due| due.to_string());
+        rows.push(vec![step.step.clone(), step.recorded.to_string(), step.partial.to_string(), due]);
+    }
+    screen.line("");
+    columns(&rows, &[1, 2, 3]).iter().for_each(|line| screen.line(line));
+    screen.line("");
+    let updates = if spent.updates > 0.0 { format!(", {} spin updates", amount(spent.updates)) } else { String::new() };
+    screen.line(&format!("stopped after {}{updates}: what was computed is on record", duration(spent.seconds)));
+    screen.line("the same command goes on from here");
+    let steps: Vec<_> = steps
+        .iter()
+        .map(|step| json!({ "step": step.step, "recorded": step.recorded, "partial": step.partial, "due": step.due }))
+        .collect();
+    screen.event(&json!({ "event": "stopped", "steps": steps }));
+    let counts = outcome.counts;
+    screen.event(&json!({ "event": "finished", "computed": counts.computed, "reused": counts.reused,
+        "broken": counts.broken, "steps": outcome.steps, "out": out }));
+    Ok(())
 }
 
 fn tell_counts(study: &Study, outcome: &Outcome, screen: &mut Screen) {

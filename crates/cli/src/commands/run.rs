@@ -1,8 +1,9 @@
 //! `spinledger run`: compute what is due, tell how it goes, close with what came out.
 
 use crate::args::RunArgs;
-use crate::commands::{WRONG, closing, open, results, workers};
+use crate::commands::{BROKEN, WRONG, closing, open, results, workers};
 use crate::screen::{Screen, Style};
+use crate::signals;
 use crate::text::{amount, counted, duration};
 use anyhow::Context;
 use serde_json::json;
@@ -22,6 +23,7 @@ pub(crate) fn run(args: &RunArgs) -> anyhow::Result<u8> {
     let Some(study) = open(&args.pipeline, &mut screen)? else { return Ok(WRONG) };
     let ledger = Ledger::open(&args.ledger.ledger)
         .with_context(|| format!("cannot open the ledger {}", args.ledger.ledger.display()))?;
+    let asked = signals::heed().context("cannot heed signals")?;
     let out = results(args.out.as_deref(), &study);
     let options = RunOptions {
         pool: PoolOptions {
@@ -30,6 +32,7 @@ pub(crate) fn run(args: &RunArgs) -> anyhow::Result<u8> {
             workers: workers(args.workers),
             threads: usize::from(args.threads),
             stall: args.stall.map(Duration::from_secs_f64),
+            stop: asked.stop.clone(),
         },
         out: out.clone(),
         only: args.only.clone(),
@@ -42,6 +45,10 @@ pub(crate) fn run(args: &RunArgs) -> anyhow::Result<u8> {
     // Here nothing ran: what fails on the way is in the outcome.
     let outcome = outcome?;
     let spent = closing::Spent { seconds: progress.started.elapsed().as_secs_f64(), updates: progress.updates };
+    if outcome.asked {
+        closing::tell_stopped(&study, &ledger, &outcome, &out, &spent, &mut screen)?;
+        return Ok(asked.status().unwrap_or(BROKEN));
+    }
     Ok(closing::close(&study, &ledger, &outcome, &out, spent, &mut screen))
 }
 
@@ -115,6 +122,11 @@ impl Progress {
             Notice::Left { step } => {
                 screen.event(&json!({ "event": "left", "step": step }));
                 screen.line(&format!("{step}: left due, since something that it needs is broken"));
+            }
+            Notice::Stopping => {
+                self.working.clear();
+                screen.event(&json!({ "event": "stopping" }));
+                screen.line("stopping: blocks in flight are being put on record (once more ends at once)");
             }
             Notice::Warning(text) => {
                 screen.event(&json!({ "event": "warning", "text": text }));
