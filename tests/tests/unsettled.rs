@@ -38,10 +38,11 @@ fn is_told(desk: &Desk, name: &str, ran: &Ran, flag: &str, terminal: &str, page:
 fn a_quench_that_does_not_equilibrate() {
     let short = (
         "few-samples",
-        "with too few independent measurements",
+        "too few independent measurements",
         "too few independent measurements for an error that can be relied on",
     );
-    let drifting = ("not-equilibrated", "not equilibrated", "the chains have not forgotten where they began");
+    let drifting =
+        ("not-equilibrated", "have not forgotten where they began", "the chains have not forgotten where they began");
     let forms = [
         // All the chain is one drift, and its autocorrelation time as long as itself: too short to tell a drift from anything.
         ("early", "start: random\n    equilibrate: 20\n    measure: 100", short),
@@ -127,7 +128,7 @@ steps:
         "gap",
         &ran,
         "poor-overlap",
-        "where histograms do not overlap",
+        "hardly overlap",
         "histograms of neighbouring temperatures hardly overlap",
     );
     let tc = desk.table("results/gap/tc.parquet");
@@ -178,7 +179,7 @@ steps:
 "
         );
         let ran = run(&desk, name, &text);
-        is_told(&desk, name, &ran, "no-crossing", "sizes that do not cross", "curves of two sizes do not cross");
+        is_told(&desk, name, &ran, "no-crossing", "two sizes do not cross", "curves of two sizes do not cross");
         for step in ["tc", "tcs"] {
             let tc = desk.table(&format!("results/{name}/{step}.parquet"));
             for row in 0..tc.rows() {
