@@ -15,6 +15,8 @@ const SAMPLE_EVERY: Duration = Duration::from_millis(500);
 /// Before that, and before this part of what is due is done, what is left is a guess and not told.
 const TOLD_AFTER: Duration = Duration::from_secs(2);
 const TOLD_FROM: f64 = 0.02;
+/// Where no spin was updated for so long, no sampling goes on.
+const IDLE: Duration = Duration::from_secs(2);
 /// Less than this is not worth a word.
 const LEAST_LEFT: f64 = 1.0;
 /// Room that what is being worked on should have, at least.
@@ -33,6 +35,8 @@ pub(super) struct Progress {
     to_come: Vec<String>,
     /// Updates done at some times, oldest first.
     past: VecDeque<(Instant, f64)>,
+    /// When the last updates were told.
+    moved: Instant,
     stopping: bool,
 }
 
@@ -58,6 +62,7 @@ impl Progress {
             working: Vec::new(),
             to_come: to_come.cloned().collect(),
             past: VecDeque::from([(started, 0.0)]),
+            moved: started,
             stopping: false,
         }
     }
@@ -94,6 +99,9 @@ impl Progress {
             }
             Notice::Progress { updates } => {
                 self.done += *updates as f64;
+                if *updates > 0 {
+                    self.moved = Instant::now();
+                }
             }
             Notice::Done { step, parcel, computed } => {
                 self.leave(step, parcel);
@@ -152,7 +160,7 @@ impl Progress {
         let now = Instant::now();
         let rate = self.past.front().map_or(0.0, |(then, done)| {
             let seconds = (now - *then).as_secs_f64();
-            if seconds > 0.5 { (self.done - done) / seconds } else { 0.0 }
+            if seconds > 0.5 && now - self.moved < IDLE { (self.done - done) / seconds } else { 0.0 }
         });
         let open = self.due - self.done;
         let meaningful = now - self.started > TOLD_AFTER && self.done > TOLD_FROM * self.due && rate > 0.0;
