@@ -157,3 +157,36 @@ fn a_stop_at_any_moment_is_harmless() {
     desk.run_pipeline("stopped.yaml", &[], 0);
     assert!(desk.parquet("results") == fresh.parquet("results"), "stopped and undisturbed differ");
 }
+
+/// Points that follow each other, with kept configurations: a stop within the sequence is as harmless.
+#[test]
+fn a_sequence_can_be_stopped() {
+    let text = "spinledger: 1\npipeline: stopped\nseed: 8\nsteps:\n  cool:\n    does: sample\n    lattice: { plugin: square, size: 48 }\n    model: ising\n    \
+         update: metropolis\n    observe: [energy, magnetisation]\n    follow: temperature\n    scan: { temperature: [3.0, 2.5, 2.0] }\n    equilibrate: 20\n    \
+         every: 8\n    measure: 2000\n    chains: 2\n    keep: { states: last }\n";
+    let fresh = Desk::new();
+    fresh.write("stopped.yaml", text);
+    fresh.run_pipeline("stopped.yaml", &[], 0);
+    let desk = Desk::new();
+    desk.write("stopped.yaml", text);
+    let mut stopped = 0;
+    for _ in 0..20 {
+        let mut child = desk.start(&["run", "stopped.yaml", "--quiet", "--workers", "2"]);
+        std::thread::sleep(Duration::from_millis(250));
+        let _ = kill_process_group(Pid::from_child(&child), Signal::TERM);
+        match child.wait().unwrap().code() {
+            Some(143) => stopped += 1,
+            Some(0) => break,
+            _ => {}
+        }
+    }
+    assert!(stopped > 1, "{stopped} stops");
+    desk.run_pipeline("stopped.yaml", &[], 0);
+    assert!(desk.parquet("results") == fresh.parquet("results"), "stopped and undisturbed differ");
+    let files = desk.parquet("results/stopped/cool");
+    let last = files.keys().find(|name| name.contains("temperature-2.parquet") || name.contains("temperature-2.0"));
+    let last = last.unwrap_or_else(|| panic!("{:?}", files.keys().collect::<Vec<_>>()));
+    let ran = desk.run(&["trace", &format!("results/stopped/cool/{last}")]);
+    assert!(ran.status == Some(0) && ran.out.lines().count() <= 40, "{}{}", ran.out, ran.err);
+    assert!(ran.out.contains("begun from: ") && ran.out.contains("configurations"), "{}", ran.out);
+}

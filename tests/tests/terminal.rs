@@ -57,7 +57,10 @@ fn a_run_fits_the_terminal() {
         }
         if width == 120 {
             let told = |words: &str| drawn.iter().any(|line| line.contains(words));
-            assert!(told(" updates/s") && told("| chains size 64, temperature 2.") && told("then means, held"), "{drawn:#?}");
+            assert!(
+                told(" updates/s") && told("| chains size 64, temperature 2.") && told("then means, held"),
+                "{drawn:#?}"
+            );
             assert!(!drawn.iter().any(|line| line.contains(" ms left")), "{drawn:#?}");
         }
     }

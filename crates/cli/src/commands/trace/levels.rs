@@ -193,17 +193,15 @@ impl Tree<'_> {
         alike.notes.extend(record.provenance.notes.iter().cloned());
         match record.kind.as_str() {
             "series" => self.take_series(alike, record),
-            "block" => {
+            // What a configuration was begun from is told by `--all`: in a sequence that goes back to its first point.
+            "block" | "state" => {
                 alike.sampling.updates += record.provenance.updates as f64;
                 take_chains(&mut alike.sampling, record);
             }
             _ => {
                 alike.parameters.add_below("", &record.provenance.parameters);
                 for input in &record.provenance.inputs {
-                    match alike.inputs.iter_mut().find(|(role, _)| *role == input.name) {
-                        Some((_, keys)) => keys.push(input.key),
-                        None => alike.inputs.push((input.name.clone(), vec![input.key])),
-                    }
+                    take_input(&mut alike.inputs, &input.name, input.key);
                 }
             }
         }
@@ -222,14 +220,22 @@ impl Tree<'_> {
         if let Some(measure) = p.parameters.get("measure") {
             sampling.chains.add("rows", value_words(measure));
         }
+        let mut begun = false;
         for (at, input) in p.inputs.iter().enumerate() {
             if !sampling.blocks.insert(input.key) {
                 continue;
             }
-            if at == 0 {
+            // Chains that began from configurations name theirs in their first blocks.
+            if at == 0 || (begun && input.name.ends_with(" block 0")) {
                 match self.ledger.read_record(&input.key) {
                     Ok(block) => {
-                        take_chains(sampling, &block);
+                        if at == 0 {
+                            take_chains(sampling, &block);
+                            begun = !block.provenance.inputs.is_empty();
+                        }
+                        for begin in &block.provenance.inputs {
+                            take_input(&mut alike.inputs, "begun from", begin.key);
+                        }
                         self.makers.add(&block);
                     }
                     Err(_) => {
@@ -292,6 +298,13 @@ impl Tree<'_> {
         let of = table.rows();
         let flags = flags.into_iter().collect::<Vec<_>>().join(", ");
         (rows > 0).then(|| format!("not settled: {rows} of {of} rows: {flags}"))
+    }
+}
+
+fn take_input(inputs: &mut Vec<(String, Vec<Key>)>, role: &str, key: Key) {
+    match inputs.iter_mut().find(|(known, _)| known == role) {
+        Some((_, keys)) => keys.push(key),
+        None => inputs.push((role.to_owned(), vec![key])),
     }
 }
 
@@ -365,6 +378,7 @@ fn head_of(alike: &Alike) -> String {
         ("block", count) => {
             format!("{count} blocks, {} spin updates, {}", amount(sampling.updates), duration(alike.seconds))
         }
+        ("state", count) => format!("{count} configurations"),
         (kind, count) => format!("{} {kind}, {}", count, duration(alike.seconds)),
     }
 }
