@@ -400,7 +400,7 @@ fn results_are_traced() {
     {
         let ran = desk.run(&["trace", file]);
         assert_eq!(ran.status, Some(0), "{}", ran.err);
-        assert!(ran.out.contains("block 0 of chain 0") && ran.out.contains("lattice lattices/square@1"), "{}", ran.out);
+        assert!(ran.out.contains("2 chains x 20 rows") && ran.out.contains("lattice square"), "{}", ran.out);
         assert_eq!(ran.out.matches("made by spinledger").count(), 1, "{}", ran.out);
         key = ran.out.split_whitespace().nth(1).unwrap().to_owned();
     }

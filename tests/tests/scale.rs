@@ -76,6 +76,7 @@ steps:
     chains: 2
 "#,
     );
+    let text = std::fs::read_to_string(desk.path("many.yaml")).unwrap();
     let events = desk.run_pipeline("many.yaml", &[], 0);
     assert_eq!(events.counts(), (10_000, 0, 0));
     let mut best = f64::INFINITY;
@@ -86,4 +87,21 @@ steps:
         assert_eq!(events.counts(), (0, 10_000, 0));
     }
     assert!(best < 1.0, "nothing to do with ten thousand parcels took {best} s");
+    // Ten thousand that are due are compared with ten thousand on record: why they are due differs in one place, or in two.
+    for (from, to, reasons) in [
+        ("seed: 1", "seed: 2", vec!["seed"]),
+        ("from: 1, to: 3.4995", "from: 10, to: 13.4995", vec!["new point"; 5000]),
+        ("model: ising", "model: { plugin: ising, coupling: 1.5 }", vec!["model.coupling"]),
+    ] {
+        desk.write("many.yaml", &text.replace(from, to));
+        let start = Instant::now();
+        let ran = desk.run(&["forecast", "many.yaml", "--json"]);
+        let took = start.elapsed().as_secs_f64();
+        assert!(took < 3.0, "{to}: why ten thousand parcels are due took {took} s");
+        let event: serde_json::Value = serde_json::from_str(ran.out.trim()).unwrap();
+        let told = event["steps"][0]["reasons"].as_array().unwrap();
+        let what: Vec<&str> = told.iter().map(|reason| reason["what"].as_str().unwrap()).collect();
+        assert_eq!(what, reasons, "{to}");
+        assert_eq!(told.iter().map(|reason| reason["parcels"].as_u64().unwrap()).sum::<u64>(), 10_000);
+    }
 }

@@ -36,7 +36,7 @@ fn is_told(desk: &Desk, name: &str, ran: &Ran, flag: &str, terminal: &str, page:
 /// some 10^5 sweeps. Whatever sweeps are left out, however the chains start, the energy is not that of equilibrium, and no run here is long enough to pretend.
 #[test]
 fn a_quench_that_does_not_equilibrate() {
-    let (flag, terminal) = ("not-equilibrated", "not equilibrated");
+    let (flag, terminal) = ("not-equilibrated", "have not forgotten where they began");
     let page = "the chains have not forgotten where they began";
     let forms = [
         // Every chain is one drift, and its autocorrelation time as long as itself.
@@ -123,7 +123,7 @@ steps:
         "gap",
         &ran,
         "poor-overlap",
-        "where histograms do not overlap",
+        "hardly overlap",
         "histograms of neighbouring temperatures hardly overlap",
     );
     let tc = desk.table("results/gap/tc.parquet");
@@ -174,7 +174,7 @@ steps:
 "
         );
         let ran = run(&desk, name, &text);
-        is_told(&desk, name, &ran, "no-crossing", "sizes that do not cross", "curves of two sizes do not cross");
+        is_told(&desk, name, &ran, "no-crossing", "two sizes do not cross", "curves of two sizes do not cross");
         for step in ["tc", "tcs"] {
             let tc = desk.table(&format!("results/{name}/{step}.parquet"));
             for row in 0..tc.rows() {

@@ -18,7 +18,7 @@ pub(crate) enum Command {
     Run(RunArgs),
     /// Find every mistake in a pipeline; run nothing
     Check(CheckArgs),
-    /// Tell what would run, what is on record and about how long it takes
+    /// Tell what would run and why, what is on record, and about how long it takes
     Forecast(ForecastArgs),
     /// Print a result table, in the terminal or as CSV or JSON lines
     Print(PrintArgs),
@@ -83,6 +83,9 @@ pub(crate) struct ForecastArgs {
     pub(crate) pipeline: PathBuf,
     #[command(flatten)]
     pub(crate) ledger: LedgerArgs,
+    /// The folder of results [default: results/PIPELINE]
+    #[arg(long, value_name = "DIR")]
+    pub(crate) out: Option<PathBuf>,
     /// Worker processes to reckon with [default: the number of processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=4096))]
     pub(crate) workers: Option<u16>,
@@ -134,10 +137,13 @@ impl std::str::FromStr for Rows {
 
 #[derive(Debug, ClapArgs)]
 pub(crate) struct TraceArgs {
-    /// A Parquet file of results, or a key (its first digits suffice)
+    /// A file of results (Parquet, SVG, PNG, HTML), or a key (its first digits suffice)
     pub(crate) what: String,
     #[command(flatten)]
     pub(crate) ledger: LedgerArgs,
+    /// Tell of every entry by itself
+    #[arg(long)]
+    pub(crate) all: bool,
     /// Print the records as JSON lines
     #[arg(long)]
     pub(crate) json: bool,

@@ -4,6 +4,7 @@
 mod args;
 mod commands;
 mod screen;
+mod signals;
 mod text;
 
 use clap::Parser;

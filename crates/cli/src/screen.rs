@@ -1,5 +1,6 @@
 //! The one object that prints. A closed pipe ends the printing, not the run.
 
+use crate::text::{columns, fit, wide, wrap};
 use std::io::{IsTerminal, Write};
 use std::time::{Duration, Instant};
 
@@ -49,6 +50,28 @@ impl Screen {
         }
     }
 
+    /// A sentence for a person: in as many lines as the terminal needs for it, or of 80 columns where there is none.
+    pub(crate) fn tell(&mut self, text: &str) {
+        for line in wrap(text, width()) {
+            self.line(&line);
+        }
+    }
+
+    /// A table with a header for a person; where a terminal has no room for it, a paragraph a row.
+    pub(crate) fn table(&mut self, rows: &[Vec<String>], right: &[usize]) {
+        let lines = columns(rows, right);
+        let Some((head, body)) = rows.split_first() else { return };
+        if !self.terminal || lines.iter().all(|line| wide(line) <= width()) {
+            lines.iter().for_each(|line| self.line(line));
+            return;
+        }
+        for row in body {
+            let cells = row.iter().zip(head).skip(1).filter(|(cell, _)| !cell.is_empty());
+            let cells = cells.map(|(cell, name)| if name.is_empty() { cell.clone() } else { format!("{cell} {name}") });
+            self.tell(&format!("{}: {}", row[0], cells.collect::<Vec<_>>().join(", ")));
+        }
+    }
+
     /// An event for a program.
     pub(crate) fn event(&mut self, event: &serde_json::Value) {
         if self.style == Style::Json {
@@ -72,8 +95,9 @@ impl Screen {
         }
     }
 
-    /// The line at the bottom of a terminal; without a terminal a plain line now and then. `text` is made only when it is shown.
-    pub(crate) fn bottom(&mut self, text: impl FnOnce() -> String) {
+    /// The line at the bottom of a terminal; without a terminal a plain line now and then. `text` is made only when it is shown, for the room
+    /// that there is.
+    pub(crate) fn bottom(&mut self, text: impl FnOnce(Width) -> String) {
         if self.style != Style::Person {
             return;
         }
@@ -82,14 +106,15 @@ impl Screen {
             return;
         }
         self.last = Instant::now();
-        let text = text();
         if self.terminal {
-            let text: String = text.chars().take(width().saturating_sub(1)).collect();
+            // The last column stays empty: some terminals go on to the next line behind it.
+            let room = width().saturating_sub(1);
+            let text = fit(&text(Width::Of(room)), room);
             self.clear();
-            self.drawn = text.chars().count();
+            self.drawn = wide(&text);
             put(&text);
         } else {
-            put(&format!("{text}\n"));
+            put(&format!("{}\n", text(Width::Any)));
         }
     }
 

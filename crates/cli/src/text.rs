@@ -98,6 +98,9 @@ pub(crate) fn with_error(value: f64, error: Option<f64>) -> String {
 
 /// Seconds in words.
 pub(crate) fn duration(seconds: f64) -> String {
+    if seconds < 0.000_95 {
+        return "less than 1 ms".into();
+    }
     if seconds < 0.95 {
         return format!("{:.0} ms", seconds * 1000.0);
     }
@@ -112,15 +115,56 @@ pub(crate) fn duration(seconds: f64) -> String {
     if hours < 48 { format!("{hours} h {} min", minutes % 60) } else { format!("{} days", hours / 24) }
 }
 
-/// A large number in words: `7.8 thousand`.
+/// A large number: `7812`, `3.2e9`.
 pub(crate) fn amount(x: f64) -> String {
-    for (power, word) in [(1e12, "trillion"), (1e9, "billion"), (1e6, "million"), (1e3, "thousand")] {
-        // What rounds to a thousand of one word is one of the next.
-        if x >= 0.999_95 * power {
-            return format!("{:.1} {word}", x / power);
+    if x.abs() < 9999.5 { format!("{x:.0}") } else { format!("{x:.1e}") }
+}
+
+/// Bytes: `512 bytes`, `3.4 MB`.
+pub(crate) fn bytes(x: f64) -> String {
+    for (unit, word) in [(1e12, "TB"), (1e9, "GB"), (1e6, "MB"), (1e3, "kB")] {
+        // What rounds to a thousand of one unit is one of the next.
+        if x >= 0.999_5 * unit {
+            let x = x / unit;
+            return if x < 9.95 { format!("{x:.1} {word}") } else { format!("{x:.0} {word}") };
         }
     }
-    format!("{x:.0}")
+    format!("{x:.0} bytes")
+}
+
+/// So many values are listed; of more, the first and the last are told.
+const LISTED: usize = 3;
+
+/// What several points have in common and over what they range, from names and values of each: `size 12 to 32 (4), temperature 2.31`. Few values
+/// are listed.
+pub(crate) fn ranges(points: &[Vec<(String, String)>]) -> String {
+    let mut names: Vec<&str> = Vec::new();
+    for (name, _) in points.iter().flatten() {
+        if !names.contains(&name.as_str()) {
+            names.push(name);
+        }
+    }
+    let of = |name: &str| {
+        let values = points.iter().flatten().filter(|(known, _)| known == name).map(|(_, value)| value.as_str());
+        format!("{name} {}", range(values))
+    };
+    names.into_iter().map(of).collect::<Vec<_>>().join(", ")
+}
+
+/// Values of one name: `2.31`, `8, 12`, `12 to 32 (4)`.
+pub(crate) fn range<'a>(values: impl IntoIterator<Item = &'a str>) -> String {
+    let mut seen = std::collections::HashSet::new();
+    let mut values: Vec<&str> = values.into_iter().filter(|value| seen.insert(*value)).collect();
+    let number = |text: &str| text.parse::<f64>().ok();
+    let numbers = values.iter().all(|value| number(value).is_some());
+    if numbers {
+        values.sort_by(|a, b| number(a).partial_cmp(&number(b)).unwrap_or(std::cmp::Ordering::Equal));
+    }
+    match values.as_slice() {
+        few if few.len() <= LISTED => few.join(", "),
+        [first, .., last] if numbers => format!("{first} to {last} ({})", values.len()),
+        many => format!("{} ... ({})", many[..LISTED].join(", "), many.len()),
+    }
 }
 
 /// `1 parcel`, `2 parcels`.
@@ -148,9 +192,22 @@ mod tests {
     }
 
     #[test]
-    fn amounts_are_words() {
-        let texts: Vec<String> = [0.0, 999.4, 999.96, 7812.0, 999_960.0, 4.2e12].map(amount).to_vec();
-        assert_eq!(texts, ["0", "999", "1.0 thousand", "7.8 thousand", "1.0 million", "4.2 trillion"]);
+    fn amounts_are_short() {
+        let texts: Vec<String> = [0.0, 999.4, 9999.4, 9999.6, 999_960.0, 4.2e12].map(amount).to_vec();
+        assert_eq!(texts, ["0", "999", "9999", "1.0e4", "1.0e6", "4.2e12"]);
+        let texts: Vec<String> = [0.0, 999.4, 999.6, 12_345.0, 9.96e6, 999.96e6].map(bytes).to_vec();
+        assert_eq!(texts, ["0 bytes", "999 bytes", "1.0 kB", "12 kB", "10 MB", "1.0 GB"]);
+    }
+
+    #[test]
+    fn points_are_gathered() {
+        let point = |size: &str, t: &str| vec![("size".to_owned(), size.to_owned()), ("t".to_owned(), t.to_owned())];
+        let points = [point("12", "2.5"), point("8", "2.25"), point("12", "10"), point("8", "2.5"), point("8", "3")];
+        assert_eq!(ranges(&points), "size 8, 12, t 2.25 to 10 (4)");
+        assert_eq!(ranges(&points[..1]), "size 12, t 2.5");
+        let points = ["8x8", "8x9", "9x9", "9x8"].map(|size| vec![("size".to_owned(), size.to_owned())]);
+        assert_eq!(ranges(&points), "size 8x8, 8x9, 9x9 ... (4)");
+        assert_eq!(ranges(&[]), "");
     }
 
     #[test]

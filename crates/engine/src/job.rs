@@ -243,6 +243,13 @@ pub enum Report {
         /// Who.
         by: String,
     },
+    /// It was stopped on the way, since there are no more orders; what was done is on record.
+    Stopped {
+        /// Attempted spin updates since the last report.
+        updates: u64,
+        /// What is now on record, as lines of the journal.
+        entries: Vec<Entry>,
+    },
     /// It cannot be done.
     Broken {
         /// Why.

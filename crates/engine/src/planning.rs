@@ -7,7 +7,7 @@ mod sample;
 pub(crate) mod starts;
 mod state;
 
-pub use analysis::{AnalysisPlan, Parcel, analysis_parcels};
+pub use analysis::{AnalysisPlan, Parcel, analysis_parcels, inputs_of};
 pub use columns::point_columns;
 pub use sample::{closed_series, sample_points};
 

@@ -1,6 +1,7 @@
 //! The runner's side of the workers: processes are started when there is work, given jobs one at a time, watched, and replaced when they die.
 
 mod process;
+mod stopping;
 #[cfg(test)]
 mod tests;
 
@@ -8,6 +9,8 @@ use crate::job::{Entry, Job, Report};
 use process::{Process, Said};
 use std::collections::{BTreeMap, BTreeSet, VecDeque};
 use std::path::PathBuf;
+use std::sync::Arc;
+use std::sync::atomic::AtomicBool;
 use std::sync::mpsc::{self, Receiver, Sender};
 use std::time::{Duration, Instant};
 
@@ -35,6 +38,8 @@ pub struct PoolOptions {
     pub threads: usize,
     /// A job without progress for so long is broken.
     pub stall: Option<Duration>,
+    /// To be set when everything is to come to an end.
+    pub stop: Arc<AtomicBool>,
 }
 
 /// What happened to a job.
@@ -60,6 +65,15 @@ pub(crate) enum Event {
     },
     /// It cannot be done; the text says why.
     Broken(String),
+    /// All jobs are coming to an end, as asked for.
+    Stopping,
+    /// It came to an end before it was done.
+    Stopped {
+        /// Attempted spin updates since the last event of the job.
+        updates: u64,
+        /// What is now on record.
+        entries: Vec<Entry>,
+    },
 }
 
 /// Why no job can be done.
@@ -74,6 +88,9 @@ pub(crate) enum PoolError {
     /// What is computed cannot be kept.
     #[error("{0}")]
     Disk(String),
+    /// It was asked for.
+    #[error("stopped when asked to")]
+    Asked,
 }
 
 /// The workers.
@@ -123,7 +140,7 @@ impl Pool {
     /// again until it is done or free; a job whose worker ended before taking it up is given to another.
     ///
     /// # Errors
-    /// Where no worker can be started or lives long enough to take up a job, and where the disk fails. Workers go on with what they have then
+    /// Where no worker can be started or lives long enough to take up a job, where the disk fails, and where an end was asked for. Workers go on with what they have then
     /// until the pool is dropped.
     pub(crate) fn execute(&mut self, jobs: &[Job], tell: &mut dyn FnMut(usize, Event)) -> Result<(), PoolError> {
         let mut round = Round {
@@ -134,6 +151,9 @@ impl Pool {
             open: jobs.len(),
         };
         while round.open > 0 {
+            if self.is_stopping() {
+                return Err(self.wind_down(jobs, tell));
+            }
             round.ask_again();
             for place in 0..self.places.len() {
                 if self.places[place].as_ref().is_some_and(|worker| worker.job.is_some()) {
@@ -200,6 +220,7 @@ impl Pool {
             Report::Log { text } => Meaning::GoesOn(Event::Log(text)),
             Report::Held { by } => Meaning::Held(by),
             Report::Done { computed, updates, entries } => Meaning::Ends(Event::Done { computed, updates, entries }),
+            Report::Stopped { updates, entries } => Meaning::Ends(Event::Stopped { updates, entries }),
             Report::Broken { message } => Meaning::Ends(Event::Broken(message)),
             Report::Disk { message } => Meaning::Disk(message),
         };
@@ -249,6 +270,11 @@ impl Pool {
     ) -> Result<(), PoolError> {
         match meaning {
             Meaning::GoesOn(event) => tell(job, event),
+            // Its worker was told to end, by something else than this pool: another does the job.
+            Meaning::Ends(Event::Stopped { updates, entries }) => {
+                tell(job, Event::Stopped { updates, entries });
+                round.waiting.push_front(job);
+            }
             Meaning::Ends(event) => {
                 round.open -= 1;
                 tell(job, event);

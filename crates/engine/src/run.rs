@@ -43,18 +43,26 @@ struct Item {
 }
 
 /// Why a run comes to an early end.
-struct Stop(String);
+enum Stop {
+    /// Something is in the way.
+    Failed(String),
+    /// It was asked for.
+    Asked,
+}
 
 impl From<LedgerError> for Stop {
     fn from(error: LedgerError) -> Self {
         let (Failure::Broken(text) | Failure::Disk(text)) = Failure::from(error);
-        Stop(text)
+        Stop::Failed(text)
     }
 }
 
 impl From<PoolError> for Stop {
     fn from(error: PoolError) -> Self {
-        Stop(crate::chain_text(&error))
+        match error {
+            PoolError::Asked => Stop::Asked,
+            error => Stop::Failed(crate::chain_text(&error)),
+        }
     }
 }
 
@@ -87,8 +95,10 @@ pub fn run(
         samples: BTreeMap::new(),
         tell,
     };
-    if let Err(Stop(why)) = run.steps(&wanted).and_then(|()| run.finish(options, &wanted)) {
-        run.outcome.stopped = Some(why);
+    match run.steps(&wanted).and_then(|()| run.finish(options, &wanted)) {
+        Ok(()) => {}
+        Err(Stop::Failed(why)) => run.outcome.stopped = Some(why),
+        Err(Stop::Asked) => run.outcome.asked = true,
     }
     Ok(run.outcome)
 }
@@ -132,6 +142,9 @@ impl Run<'_> {
             if ready.is_empty() {
                 // Checked pipelines have no circles, so every step becomes ready; this is the end all the same.
                 break;
+            }
+            if self.pool.is_stopping() {
+                return Err(Stop::Asked);
             }
             open.retain(|i| !ready.contains(i));
             self.wave(&ready)?;
@@ -272,6 +285,11 @@ impl Run<'_> {
                         count(outcome, step, |c| if computed { &mut c.computed } else { &mut c.reused });
                         tell(Notice::Done { step, parcel: &item.words, computed });
                     }
+                }
+                Event::Stopping => tell(Notice::Stopping),
+                Event::Stopped { updates, entries } => {
+                    entries.into_iter().for_each(|entry| index.add(line_of(entry)));
+                    tell(Notice::Progress { updates });
                 }
                 Event::Broken(message) => {
                     broken.insert((item.step, item.point));

@@ -38,6 +38,7 @@ pub(crate) fn sample(job: &SampleJob, ledger: &Ledger, loaded: &mut Loaded, line
         let work = Work { point, group, pipeline: job.pipeline, ledger, line };
         match work.run(loaded, &mut entries)? {
             Done::Held(by) => return Ok(Report::Held { by }),
+            Done::Stopped => return Ok(Report::Stopped { updates: line.untold(), entries }),
             Done::Found => {}
             Done::Computed => computed = true,
         }
@@ -51,6 +52,8 @@ enum Done {
     Found,
     /// Something was computed.
     Computed,
+    /// It was stopped on the way; what was measured is on record.
+    Stopped,
     /// Another process is at it.
     Held(String),
 }
@@ -99,7 +102,7 @@ impl Work<'_> {
         let recorder = Recorder { work: self, problem: &problem, columns, threads, inputs: self.begins_from() };
         let finished = recorder.record(&mut course, observers, (&covered, &owed), entries)?;
         if !finished {
-            return Err("stopped, since the runner is gone".into());
+            return Ok(Done::Stopped);
         }
         course.save()?;
         Ok(Done::Computed)
@@ -207,6 +210,7 @@ impl Recorder<'_> {
             let stop = if lanes.is_empty() { owed.last().map_or(start, |row| row + 1) } else { end };
             for row in start..stop {
                 if !course.sweep_to(course.sweeps_at(row))? {
+                    self.stop(course, block, lanes, covered, &begun, entries)?;
                     return Ok(false);
                 }
                 if !looked {
@@ -234,6 +238,29 @@ impl Recorder<'_> {
         }
         course.tell();
         Ok(true)
+    }
+
+    /// Puts what was measured of a block on record, short as it is, and saves the state: a later run goes on from here as from a block that was
+    /// asked for at this length.
+    fn stop(
+        &self,
+        course: &mut Course<'_>,
+        block: Block,
+        lanes: Vec<(usize, BlockData)>,
+        covered: &[u64],
+        begun: &Begun,
+        entries: &mut Vec<Entry>,
+    ) -> Result<(), Failure> {
+        for (lane, data) in lanes {
+            let rows = data.rows() as u64;
+            if block.first + rows > covered[lane].max(block.first) {
+                check::tracked(course, self.problem, lane)?;
+                entries.push(self.publish(course, lane as u32, Block { rows, ..block }, data, begun)?);
+            }
+        }
+        course.tell();
+        // Not past the first row that is due, since that was not measured.
+        course.save()
     }
 
     /// A block to be filled, with the rows that are on record of it.

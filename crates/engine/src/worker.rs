@@ -1,7 +1,7 @@
 //! The worker's side: a process of the same program that takes orders over a descriptor of its own and reports back.
 //!
 //! Orders come on standard input, which is moved out of the way at once: plugins may print and read what they like. When the runner is gone
-//! (end of input), work stops at the next whole measurement; a plugin that does not come back is left behind after a grace period.
+//! (end of input), or says that there will be no more orders, work stops at the next whole measurement, and what was measured is put on record; a plugin that does not come back is left behind after a grace period.
 
 use crate::analyse;
 use crate::close;

@@ -52,7 +52,7 @@ pub use error::{LedgerError, WriteError};
 pub use index::{ChainPlace, Index, Line};
 pub use ledger::Ledger;
 pub use publish::{Draft, Payload, Published};
-pub use record::{Input, OtherFile, Processor, Program, Provenance, Record, Streams, TableRecord, now};
+pub use record::{Brief, Input, OtherFile, Processor, Program, Provenance, Record, Streams, TableRecord, now};
 pub use stamp::file_key;
 pub use state::SavedState;
 pub use tables::assemble::{Assembled, Constant, Piece, assemble};

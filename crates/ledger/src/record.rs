@@ -32,6 +32,17 @@ pub struct Record {
     pub preimage: String,
 }
 
+/// The part of a record that says what an entry depends on and how large it is: quick to read where there are many.
+#[derive(Clone, Debug, PartialEq, Eq, Deserialize)]
+pub struct Brief {
+    /// The entry's key.
+    pub key: Key,
+    /// The tables, in order.
+    pub tables: Vec<TableRecord>,
+    /// The text that the key is the hash of.
+    pub preimage: String,
+}
+
 /// One table of an entry.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 pub struct TableRecord {

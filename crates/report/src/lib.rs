@@ -46,7 +46,7 @@ mod ticks;
 pub use chart::{Axis, Chart, Frame, Line, Mark, MarkAxis, Point, Scale, Style};
 pub use drawing::Drawing;
 pub use number::{Shown, shown};
-pub use page::{Again, Answer, Content, Figure, Flagged, Page, Reference, TableView, Verdict, flag_words};
+pub use page::{Again, Answer, Content, Figure, Flagged, Page, Reference, TableView, Verdict, flag_remedy, flag_words};
 pub use picture::{Picture, Shades, Sites, Walls};
 
 /// A drawing could not be painted.

@@ -1,13 +1,15 @@
 //! The end of a run: the closing table, verdicts, what is not settled, where the results are, the exit status.
 
 use crate::commands::{BROKEN, WELL};
-use crate::screen::Screen;
-use crate::text::{amount, columns, counted, duration, with_error};
+use crate::screen::{Screen, width};
+use crate::text::{amount, columns, counted, duration, wide, with_error, wrap};
 use serde_json::json;
+use spinledger_engine::forecast::standing;
 use spinledger_engine::planning::Product;
 use spinledger_engine::run::Outcome;
 use spinledger_engine::{Study, chain_text};
 use spinledger_ledger::Ledger;
+use spinledger_report::{flag_remedy, flag_words};
 use spinledger_terms::Table;
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};
@@ -67,19 +69,51 @@ pub(crate) fn close(
         ));
     } else {
         let out: PathBuf = out.components().collect();
-        screen.line(&format!("results in {} in {}", out.display(), duration(spent.seconds)));
+        screen.tell(&format!("results in {} in {}", out.display(), duration(spent.seconds)));
         if spent.updates > 0.0 && spent.seconds > 0.0 {
             let rate = amount(spent.updates / spent.seconds);
-            screen.line(&format!("{} spin updates, {rate} a second", amount(spent.updates)));
+            screen.tell(&format!("{} spin updates, {rate} a second", amount(spent.updates)));
         }
     }
     if counts.broken > 0 {
         let parcels = counted(counts.broken, "parcel");
-        screen.line(&format!("{parcels} broken; all else is on record, and the same command goes on from there"));
+        screen.tell(&format!("{parcels} broken; all else is on record, and the same command goes on from there"));
     }
     screen.event(&json!({ "event": "finished", "computed": counts.computed, "reused": counts.reused,
         "broken": counts.broken, "steps": outcome.steps, "out": out }));
     if well { WELL } else { BROKEN }
+}
+
+/// Tells what is on record of a run that was stopped, and how to go on.
+pub(crate) fn tell_stopped(
+    study: &Study,
+    ledger: &Ledger,
+    outcome: &Outcome,
+    out: &Path,
+    spent: &Spent,
+    screen: &mut Screen,
+) -> anyhow::Result<()> {
+    let steps = standing(study, ledger)?;
+    let mut rows = vec![["step", "on record", "partial", "due"].map(String::from).to_vec()];
+    for step in &steps {
+        let due = step.due.map_or("?".to_owned(), |due| due.to_string());
+        rows.push(vec![step.step.clone(), step.recorded.to_string(), step.partial.to_string(), due]);
+    }
+    screen.line("");
+    screen.table(&rows, &[1, 2, 3]);
+    screen.line("");
+    let updates = if spent.updates > 0.0 { format!(", {} spin updates", amount(spent.updates)) } else { String::new() };
+    screen.tell(&format!("stopped after {}{updates}: what was computed is on record", duration(spent.seconds)));
+    screen.tell("the same command goes on from here");
+    let steps: Vec<_> = steps
+        .iter()
+        .map(|step| json!({ "step": step.step, "recorded": step.recorded, "partial": step.partial, "due": step.due }))
+        .collect();
+    screen.event(&json!({ "event": "stopped", "steps": steps }));
+    let counts = outcome.counts;
+    screen.event(&json!({ "event": "finished", "computed": counts.computed, "reused": counts.reused,
+        "broken": counts.broken, "steps": outcome.steps, "out": out }));
+    Ok(())
 }
 
 fn tell_counts(study: &Study, outcome: &Outcome, screen: &mut Screen) {
@@ -94,7 +128,7 @@ fn tell_counts(study: &Study, outcome: &Outcome, screen: &mut Screen) {
         rows.push(row);
     }
     screen.line("");
-    columns(&rows, &[1, 2, 3]).iter().for_each(|line| screen.line(line));
+    screen.table(&rows, &[1, 2, 3]);
 }
 
 /// A row of a comparison.
@@ -143,7 +177,16 @@ fn tell_verdicts(verdicts: &[Verdict], screen: &mut Screen) -> bool {
     }
     screen.line("");
     let mut disagrees = false;
-    for (line, row) in columns(&rows, &[3]).iter().zip(&rows) {
+    let lines = columns(&rows, &[3]);
+    let fits = lines.iter().all(|line| wide(line) <= width());
+    for (line, row) in lines.iter().zip(&rows) {
+        // Where there is no room for columns, a paragraph a row.
+        let words = format!("{}: {}, reference {}, deviation {}: {}", row[0], row[1], row[2], row[3], row[4]);
+        let line = if fits { line.clone() } else { wrap(&words, width()).join("\n") };
+        let line = &line;
+        if !fits && row[4] == "verdict" {
+            continue;
+        }
         let code = match row[4].as_str() {
             "agrees" => "32",
             "disagrees" => "31",
@@ -184,33 +227,20 @@ fn tell_flags(flagged: &[(&str, Flagged)], screen: &mut Screen) {
         screen.line("");
     }
     for (step, Flagged { rows, of, flags }) in flagged {
-        let text = screen.tint(&format!("not settled: {step}: {rows} of {of} rows"), "33");
-        screen.line(&text);
+        for line in wrap(&format!("not settled: {step}: {rows} of {of} rows"), width()) {
+            let line = screen.tint(&line, "33");
+            screen.line(&line);
+        }
         for (flag, (count, quantities)) in flags {
             // Which one is worth a word where it is not most of them.
             let named = if rows < of && (1..=MOST_NAMED).contains(&quantities.len()) {
-                format!(": {}", quantities.iter().map(String::as_str).collect::<Vec<_>>().join(", "))
+                format!(", {}", quantities.iter().map(String::as_str).collect::<Vec<_>>().join(", "))
             } else {
                 String::new()
             };
-            screen.line(&format!("  {count} {}{named}", flag_words(flag)));
+            let words = flag_words(flag).map_or(String::new(), |words| format!(": {words}"));
+            let remedy = flag_remedy(flag).map_or(String::new(), |remedy| format!(" (what helps: {remedy})"));
+            screen.tell(&format!("  {count} {flag}{named}{words}{remedy}"));
         }
-    }
-}
-
-fn flag_words(flag: &str) -> &str {
-    match flag {
-        "not-equilibrated" => "not equilibrated (chains drift or disagree: equilibrate longer)",
-        "few-samples" => "with too few independent measurements (measure longer)",
-        "bad-fit" => "from a fit that does not fit",
-        "biased" => "from a fit without a correction that is there",
-        "size-dependent" => "moved by leaving out the smallest size",
-        "few-sizes" => "from too few sizes to test a correction",
-        "no-crossing" => "with sizes that do not cross in the range",
-        "poor-overlap" => "where histograms do not overlap",
-        "no-error" => "without an error",
-        "imprecise" => "less precise than asked for",
-        "not-finite" => "not finite",
-        other => other,
     }
 }

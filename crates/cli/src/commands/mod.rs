@@ -15,7 +15,7 @@ use spinledger_engine::{Study, search};
 use spinledger_host::Catalogue;
 use spinledger_pipeline::{Source, located, render};
 use spinledger_terms::Problem;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 
 /// Exit status: all well.
 pub(crate) const WELL: u8 = 0;
@@ -53,6 +53,11 @@ pub(crate) fn tell_problems(source: &Source, problems: &[Problem], screen: &mut 
         let count = problems.len() as u64;
         complain(&format!("\n{} in {}; nothing ran", crate::text::counted(count, "problem"), source.name()));
     }
+}
+
+/// The folder of results of a pipeline, where the user gives none.
+pub(crate) fn results(given: Option<&Path>, study: &Study) -> PathBuf {
+    given.map_or_else(|| Path::new("results").join(&study.pipeline.name), Path::to_path_buf)
 }
 
 /// Worker processes when the user gives none: one a processor.

@@ -30,14 +30,22 @@ pub struct Parcel {
 /// Name, unit and value of constant columns.
 type Columns = Vec<(String, String, Value)>;
 
+/// What an analysis step takes: roles and names of steps.
+pub fn inputs_of(study: &Study, step: &Step) -> Vec<(String, String)> {
+    references(&step.spec.fields, &parameters_of(study, step))
+}
+
+/// The parameters of an analysis step, which has one point.
+fn parameters_of(study: &Study, step: &Step) -> Value {
+    match step.expand(&|_| None, &study.vocabulary) {
+        Ok(Expansion::Points(points)) if !points.is_empty() => points[0].body(),
+        _ => Value::Map(step.body.clone()),
+    }
+}
+
 /// Plans an analysis step from the products of the steps that it needs; None where one that it needs as a whole is broken.
 pub fn analysis_parcels(study: &Study, step: &Step, kind: &StepKind, products: &Products) -> Option<AnalysisPlan> {
-    let mut parameters = Value::Map(step.body.clone());
-    if let Ok(Expansion::Points(points)) = step.expand(&|_| None, &study.vocabulary)
-        && let Some(point) = points.first()
-    {
-        parameters = point.body();
-    }
+    let mut parameters = parameters_of(study, step);
     (kind.complete)(&mut parameters, &Surroundings { pipeline: &study.pipeline });
     let roles = references(&step.spec.fields, &parameters);
     for (role, _) in &roles {

@@ -86,6 +86,11 @@ impl Process {
         Ok(self.stream.write_all(&text).is_ok())
     }
 
+    /// Tells it that there will be no more orders: it comes to an end, and what it has is put on record first.
+    pub(super) fn wind_down(&self) {
+        let _ = self.stream.shutdown(std::net::Shutdown::Write);
+    }
+
     /// Whether the process has ended, whatever of its descriptors may still be open in processes that it left behind.
     pub(super) fn has_ended(&mut self) -> bool {
         matches!(self.child.try_wait(), Ok(Some(_)))

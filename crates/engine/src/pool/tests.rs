@@ -18,6 +18,17 @@ impl Desk {
 
     /// What happens to some jobs with workers that run this script.
     fn execute(&self, script: &str, jobs: usize, workers: usize, stall: Option<f64>) -> (Vec<String>, Option<String>) {
+        self.execute_with(script, jobs, workers, stall, Arc::default())
+    }
+
+    fn execute_with(
+        &self,
+        script: &str,
+        jobs: usize,
+        workers: usize,
+        stall: Option<f64>,
+        stop: Arc<AtomicBool>,
+    ) -> (Vec<String>, Option<String>) {
         let program = self.folder.path().join("program");
         std::fs::write(&program, format!("#!/bin/sh\n{script}\n")).unwrap();
         std::fs::set_permissions(&program, std::fs::Permissions::from_mode(0o755)).unwrap();
@@ -27,6 +38,7 @@ impl Desk {
             workers,
             threads: 1,
             stall: stall.map(Duration::from_secs_f64),
+            stop,
         };
         let job = Job::Close(CloseJob {
             preimage: String::new(),
@@ -45,6 +57,8 @@ impl Desk {
                 Event::Log(text) => format!("log {text}"),
                 Event::Done { computed, updates, .. } => format!("done {computed} {updates}"),
                 Event::Broken(message) => format!("broken {message}"),
+                Event::Stopping => "stopping".to_owned(),
+                Event::Stopped { updates, .. } => format!("stopped {updates}"),
             };
             events.push(format!("{job} {words}"));
         };
@@ -167,4 +181,26 @@ fn endless_output_is_cut() {
     let (events, _) = Desk::new().execute(script, 1, 1, None);
     let wanted = format!("0 broken its worker ended by itself with status 1; its last words: {}", "a".repeat(300));
     assert_eq!(events, ["0 started".to_owned(), wanted]);
+}
+
+/// When an end is asked for, workers are told that there is no more, and what they report still counts; what waits is not begun.
+#[test]
+fn an_end_that_is_asked_for_is_orderly() {
+    let desk = Desk::new();
+    // A worker that reports when its orders end; `cat` ends with them.
+    let script = r#"read order; echo '"taken"' >&0; cat >/dev/null; echo '{"stopped":{"updates":7,"entries":[]}}' >&0"#;
+    let (events, error) = desk.execute_with(script, 3, 1, None, Arc::new(AtomicBool::new(true)));
+    assert_eq!(events, ["0 stopping"], "nothing was begun yet");
+    assert_eq!(error.as_deref(), Some("stopped when asked to"));
+    let stop = Arc::new(AtomicBool::new(false));
+    let later = stop.clone();
+    std::thread::spawn(move || {
+        std::thread::sleep(Duration::from_millis(400));
+        later.store(true, std::sync::atomic::Ordering::Relaxed);
+    });
+    let begun = Instant::now();
+    let (events, error) = desk.execute_with(script, 3, 1, None, stop);
+    assert_eq!(events, ["0 started", "0 stopping", "0 stopped 7"]);
+    assert_eq!(error.as_deref(), Some("stopped when asked to"));
+    assert!(begun.elapsed() < Duration::from_secs(3), "{:?}", begun.elapsed());
 }

@@ -132,7 +132,7 @@ impl Run<'_> {
                 self.break_step(number, &message);
                 return Ok(());
             }
-            Err(Failure::Disk(message)) => return Err(Stop(message)),
+            Err(Failure::Disk(message)) => return Err(Stop::Failed(message)),
         };
         // As it is called in the results, and where it stands.
         let tables = record.tables.iter().map(|table| format!("{}.parquet", table.name));

@@ -71,6 +71,8 @@ pub enum Notice<'a> {
         /// The step.
         step: &'a str,
     },
+    /// The run comes to an end, as asked for; what is being worked on is put on record first.
+    Stopping,
     /// Something to be told.
     Warning(&'a str),
 }
@@ -86,6 +88,8 @@ pub struct Outcome {
     pub products: Products,
     /// Steps left due.
     pub left: Vec<String>,
+    /// Whether the run came to an early end because that was asked for.
+    pub asked: bool,
     /// Why the run came to an early end, if it did: a full disk, a folder that cannot be written, workers that do not start. No parcel is
     /// broken by that.
     pub stopped: Option<String>,

@@ -10,7 +10,12 @@ use spinledger_ledger::BlockData;
 /// errors of 10^12 additions stay below it, and a wrong energy change of a single spin in 10^8 does not.
 const TOLERANCE: f64 = 1e-9;
 
-/// The energy that the rule tracks, and the one just recorded, against a recomputation.
+/// The energy that the rule tracks against a recomputation.
+pub(super) fn tracked(course: &mut Course<'_>, problem: &Problem, lane: usize) -> Result<(), Failure> {
+    energy(course, problem, lane, &BlockData::default())
+}
+
+/// The energy that the rule tracks, and the one just recorded, if any, against a recomputation.
 pub(super) fn energy(course: &mut Course<'_>, problem: &Problem, lane: usize, data: &BlockData) -> Result<(), Failure> {
     let swept = course.swept();
     let configuration = course.holder().export(lane)?;

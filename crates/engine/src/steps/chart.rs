@@ -10,7 +10,7 @@ use spinledger_terms::{Column, Field, Kind, Problem, StepSpec, Table, Value};
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "chart", revision: 1, split: Split::Whole, spec, check, complete: as_is, analyse };
+    StepKind { does: "chart", revision: 2, split: Split::Whole, spec, check, complete: as_is, analyse };
 
 /// Pixels of a PNG for each drawing unit.
 pub(super) const PIXELS: f64 = 2.0;

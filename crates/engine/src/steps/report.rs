@@ -16,7 +16,7 @@ use std::collections::BTreeSet;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "report", revision: 1, split: Split::Whole, spec, check, complete, analyse };
+    StepKind { does: "report", revision: 2, split: Split::Whole, spec, check, complete, analyse };
 
 fn spec() -> StepSpec {
     let figures = Kind::Either {

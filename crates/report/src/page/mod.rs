@@ -12,7 +12,7 @@ use crate::chart::Chart;
 use crate::picture::Picture;
 use spinledger_terms::{Table, Value};
 
-pub use words::flag_words;
+pub use words::{flag_remedy, flag_words};
 
 /// Everything that stands on a page, as finished values.
 #[derive(Clone, Debug, PartialEq)]
