@@ -16,7 +16,7 @@ use std::collections::BTreeSet;
 
 /// The kind.
 pub(super) const KIND: StepKind =
-    StepKind { does: "report", revision: 2, split: Split::Whole, spec, check, complete, analyse };
+    StepKind { does: "report", revision: 3, split: Split::Whole, spec, check, complete, analyse };
 
 fn spec() -> StepSpec {
     let figures = Kind::Either {
@@ -85,7 +85,6 @@ fn analyse(task: &Task<'_>) -> Result<Output, StepError> {
     let lineage = Lineage::new(task.ledger);
     let mut page = Page::new(text("pipeline"), text("title"));
     page.answers = answers::answers(task, &parts, &lineage)?;
-    page.notes = vec!["Errors are one standard error.".to_owned()];
     page.figures = figures::figures(task, &parts, &lineage)?;
     (task.progress)();
     page.tables = views::tables(task, &parts, &lineage)?;

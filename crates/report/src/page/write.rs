@@ -78,7 +78,7 @@ impl Page {
         out.push_str("<button type=\"button\" id=\"shade\" hidden=\"\">dark</button></div>\n");
         let _ = write!(
             out,
-            "<h1 dir=\"auto\">{}</h1>\n<p class=\"lead\">The numbers on this page are research estimates. They are not certified material data.</p>\n<nav aria-label=\"On this page\"><ul>",
+            "<h1 dir=\"auto\">{}</h1>\n<p class=\"lead\">The numbers on this page are research estimates. They are not certified material data. Errors are one standard error.</p>\n<nav aria-label=\"On this page\"><ul>",
             escape(&self.question)
         );
         let parts = [
