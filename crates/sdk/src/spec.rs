@@ -53,8 +53,8 @@ impl Parameter {
     }
 }
 
-/// Something that a model offers: the word, and conditions `(parameter, "nonzero" | "negative" | "positive")` any of which takes
-/// it away. Words: `scalar`, `negation`, `directions`, `inversion`, `permutation`, `ferromagnetic`, `colours`, `vectors`.
+/// Something that a model offers: the word, and conditions `(parameter, "nonzero" | "negative" | "positive" | "uneven")` any of
+/// which takes it away. Words: `scalar`, `negation`, `directions`, `inversion`, `permutation`, `ferromagnetic`, `uniform`, `colours`, `vectors`.
 pub type Trait = (&'static str, &'static [(&'static str, &'static str)]);
 
 /// A lattice.
@@ -174,6 +174,11 @@ pub struct UpdateSpec {
     pub most_states: u64,
     /// The parameter that gives the number of chains advanced together; empty: one.
     pub lanes: &'static str,
+    /// Where that parameter is not given, it is chosen by size: 1 where `packing` fits, else this many. 0: it has a default of its own.
+    pub together: u64,
+    /// By number of directions (the list of that length serves it): the size in each must be a multiple of the number here, and at least twice that,
+    /// and every boundary periodic. Where that is not so, or no list has the length, one chain (1 as value of `lanes`) is refused.
+    pub packing: &'static [&'static [u64]],
 }
 
 impl UpdateSpec {
@@ -189,6 +194,8 @@ impl UpdateSpec {
         needs: &[],
         most_states: 0,
         lanes: "",
+        together: 0,
+        packing: &[],
     };
 }
 
