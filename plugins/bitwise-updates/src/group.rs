@@ -108,6 +108,24 @@ impl<'a> Group<'a> {
         })
     }
 
+    /// For tests that look at vectors.
+    #[cfg(test)]
+    pub(crate) fn vectors(&self) -> &[crate::word::Vector] {
+        &self.vectors.all()[..self.layout.free]
+    }
+
+    /// For tests that plant faults.
+    #[cfg(test)]
+    pub(crate) fn kinds(&mut self) -> &mut [Option<Kind>] {
+        &mut self.kinds
+    }
+
+    /// For tests that plant faults.
+    #[cfg(test)]
+    pub(crate) fn set_stream(&mut self, key: &spinledger_numerics::random::StreamKey) {
+        self.stream = Eight::from_key(key);
+    }
+
     /// Number of chains.
     fn lanes(&self) -> usize {
         if self.positions.is_some() { 1 } else { LANES }

@@ -22,7 +22,6 @@ const GUIDE: usize = 256;
 /// Masks of rare events, chunk after chunk.
 #[derive(Clone, Debug)]
 pub(crate) struct Rare {
-    classes: usize,
     /// Cumulative binomial distribution; ends in a number above 1. Empty where there are no events.
     cumulative: Vec<f64>,
     /// Where to begin looking, by the first eight bits of the number looked for.
@@ -32,10 +31,10 @@ pub(crate) struct Rare {
     stream: Xoshiro,
     /// The stream before the chunk was drawn: the masks are drawn anew from it when a state is restored.
     before: Xoshiro,
-    /// Mask of class m for vector v of the chunk at `v classes + m`.
+    /// Mask of class m for vector v of the chunk at v times the number of classes + m.
     masks: Vec<Vector>,
-    /// Events of the chunk, by place.
-    places: Vec<u16>,
+    /// The class of the largest rate.
+    fullest: usize,
     /// Vectors of the chunk that are done with.
     used: usize,
 }
@@ -51,14 +50,13 @@ impl Rare {
         let limits = left.iter().map(|r| if *r > 0.0 { (r / largest * unit).round() as u64 } else { 0 }).collect();
         let stream = Xoshiro::from_key(key);
         Rare {
-            classes: left.len(),
-            cumulative,
             guide,
             limits,
             before: stream.clone(),
             stream,
             masks: vec![[0; 8]; CHUNK * left.len()],
-            places: Vec::new(),
+            fullest: left.iter().position(|r| *r == largest).unwrap_or(0),
+            cumulative,
             used: CHUNK,
         }
     }
@@ -75,42 +73,44 @@ impl Rare {
 
     /// The masks of the next vectors, those of a vector side by side.
     pub(crate) fn take(&mut self, count: usize) -> &[Vector] {
-        let masks = &self.masks[self.used * self.classes..(self.used + count) * self.classes];
+        let masks = &self.masks[self.used * self.limits.len()..(self.used + count) * self.limits.len()];
         self.used += count;
         masks
     }
 
     /// Draws a chunk.
-    #[inline(never)]
     fn draw(&mut self) {
-        for place in self.places.drain(..) {
-            let (vector, lane) = (place as usize / LANES, place as usize % LANES);
-            for mask in &mut self.masks[vector * self.classes..][..self.classes] {
-                mask[lane / 64] = 0;
-            }
+        match self.limits.len() {
+            1 => self.draw_for::<1>(),
+            2 => self.draw_for::<2>(),
+            3 => self.draw_for::<3>(),
+            4 => self.draw_for::<4>(),
+            _ => {}
         }
-        if self.cumulative.is_empty() {
-            return;
-        }
+    }
+
+    /// No branch depends on a single event, since none could be predicted.
+    #[inline(never)]
+    fn draw_for<const CLASSES: usize>(&mut self) {
+        let (Some(limits), false) = (self.limits.first_chunk::<CLASSES>(), self.cumulative.is_empty()) else { return };
+        self.masks.fill([0; 8]);
         let number = unit_f64(self.stream.next());
         let mut events = self.guide[(number * GUIDE as f64) as usize] as usize;
         while self.cumulative[events] <= number {
             events += 1;
         }
-        let mut taken = [0_u64; PLACES / 64];
-        while self.places.len() < events {
+        let words = self.masks.as_flattened_mut();
+        while events > 0 {
             let word = self.stream.next();
             let (place, choice) = (word as usize % PLACES, word >> PLACE_BITS);
+            let places = &mut words[8 * CLASSES * (place / LANES) + place % LANES / 64..][..8 * (CLASSES - 1) + 1];
             let bit = 1 << (place % 64);
-            if taken[place / 64] & bit != 0 {
-                continue;
+            // All events serve the class of the largest rate: its mask tells which places are taken.
+            let new = u64::from(places[8 * self.fullest] & bit == 0);
+            for (class, limit) in limits.iter().enumerate() {
+                places[8 * class] |= (new & u64::from(choice < *limit)) << (place % 64);
             }
-            taken[place / 64] |= bit;
-            self.places.push(place as u16);
-            let masks = &mut self.masks[place / LANES * self.classes..][..self.classes];
-            for (mask, limit) in masks.iter_mut().zip(&self.limits) {
-                mask[place % LANES / 64] |= if choice < *limit { bit } else { 0 };
-            }
+            events -= new as usize;
         }
     }
 
