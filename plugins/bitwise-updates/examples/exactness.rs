@@ -55,10 +55,10 @@ fn show(estimates: &[Estimate]) {
 
 fn main() {
     let longer: usize = std::env::args().nth(1).map_or(9, |n| n.parse().expect("a whole number"));
-    show(&critical(8, 36_000 * longer));
-    show(&critical(12, 38_000 * longer));
-    show(&packed(2.0, 250_000 * longer, 8, false));
+    show(&critical(8, 80_000 * longer));
+    show(&critical(12, 90_000 * longer));
+    show(&packed(2.0, 600_000 * longer, 8, false));
     show(&packed(2.269_185_314_213_022, 100_000 * longer, 200, false));
-    show(&packed(2.4, 400_000 * longer, 20, false));
-    show(&packed(2.6, 150_000 * longer, 16, true));
+    show(&packed(2.4, 450_000 * longer, 20, false));
+    show(&packed(2.6, 180_000 * longer, 16, true));
 }

@@ -3,7 +3,7 @@
 use spinledger_numerics::elementary::exp;
 
 /// Most neighbours that this library serves.
-pub(crate) const MOST_NEIGHBOURS: usize = 8;
+pub(crate) const MOST_NEIGHBOURS: usize = 12;
 /// Part of ties that flips; `README.md` says why not all.
 #[cfg(test)]
 pub(crate) const TIE_SHARE: f64 = 0.875;

@@ -81,33 +81,37 @@ struct Visit<'a> {
 impl Visit<'_> {
     #[inline(always)]
     fn run<W: Word>(self) {
-        // Width of a star; number of choices of classes, 2^ceil(z/2).
+        // Width of a star; unions of the first classes, and of the others. There are ceil(z/2) classes.
         match self.decision.degree {
-            0 => self.each::<W, 1, 1>(),
-            1 => self.each::<W, 2, 2>(),
-            2 => self.each::<W, 3, 2>(),
-            3 => self.each::<W, 4, 4>(),
-            4 => self.each::<W, 5, 4>(),
-            5 => self.each::<W, 6, 8>(),
-            6 => self.each::<W, 7, 8>(),
-            7 => self.each::<W, 8, 16>(),
-            8 => self.each::<W, 9, 16>(),
+            0 => self.each::<W, 1, 1, 1>(),
+            1 => self.each::<W, 2, 2, 1>(),
+            2 => self.each::<W, 3, 2, 1>(),
+            3 => self.each::<W, 4, 4, 1>(),
+            4 => self.each::<W, 5, 4, 1>(),
+            5 => self.each::<W, 6, 8, 1>(),
+            6 => self.each::<W, 7, 8, 1>(),
+            7 => self.each::<W, 8, 4, 4>(),
+            8 => self.each::<W, 9, 4, 4>(),
+            9 => self.each::<W, 10, 8, 4>(),
+            10 => self.each::<W, 11, 8, 4>(),
+            11 => self.each::<W, 12, 8, 8>(),
+            12 => self.each::<W, 13, 8, 8>(),
             more => unreachable!("{more} neighbours were refused"),
         }
     }
 
     #[inline(always)]
-    fn each<W: Word, const WIDTH: usize, const CHOICES: usize>(self) {
+    fn each<W: Word, const WIDTH: usize, const LOW: usize, const HIGH: usize>(self) {
         if self.decision.soft {
-            self.visit::<W, WIDTH, CHOICES, true>();
+            self.visit::<W, WIDTH, LOW, HIGH, true>();
         } else {
-            self.visit::<W, WIDTH, CHOICES, false>();
+            self.visit::<W, WIDTH, LOW, HIGH, false>();
         }
     }
 
     #[inline(always)]
-    fn visit<W: Word, const WIDTH: usize, const CHOICES: usize, const SOFT: bool>(self) {
-        let classes = CHOICES.trailing_zeros() as usize;
+    fn visit<W: Word, const WIDTH: usize, const LOW: usize, const HIGH: usize, const SOFT: bool>(self) {
+        let classes = (LOW * HIGH).trailing_zeros() as usize;
         let (stars, _) = self.stars.as_chunks::<WIDTH>();
         // Ties look at the last three digits, so that these stand alone.
         let Some((low, top)) = self.decision.digits.split_last_chunk::<3>() else { return };
@@ -117,32 +121,33 @@ impl Visit<'_> {
             for (number, star) in stars.iter().enumerate() {
                 let seen = Surroundings::<W>::new::<WIDTH>(star, self.vectors, part);
                 // Digits choose among unions of classes.
-                let mut choices = [W::splat(0); CHOICES];
-                for class in 0..classes {
-                    let lanes = seen.class::<WIDTH>(class);
-                    for below in 0..1 << class {
-                        choices[1 << class | below] = choices[below].or(lanes);
-                    }
-                }
+                let first = seen.unions::<WIDTH, LOW>(0);
+                let others = seen.unions::<WIDTH, HIGH>(LOW.trailing_zeros() as usize);
+                let chosen = |digit: &u8| {
+                    let digit = *digit as usize;
+                    let chosen = first[digit % LOW];
+                    if HIGH > 1 { chosen.or(others[digit / LOW % HIGH]) } else { chosen }
+                };
                 let mut flips = W::splat(0);
                 for digit in low {
                     let random = draw(&mut stream);
-                    flips = flips.majority(random, choices[*digit as usize & (CHOICES - 1)]);
+                    flips = flips.majority(random, chosen(digit));
                 }
                 let mut random = [W::splat(0); 3];
                 for (random, digit) in random.iter_mut().zip(top) {
                     *random = draw(&mut stream);
-                    flips = flips.majority(*random, choices[*digit as usize & (CHOICES - 1)]);
+                    flips = flips.majority(*random, chosen(digit));
                 }
                 for class in 0..classes {
-                    flips = flips.or(W::load(&self.masks[number * classes + class], part).and(choices[1 << class]));
+                    let mask = W::load(&self.masks[number * classes + class], part);
+                    flips = flips.or(mask.and(chosen(&(1 << class))));
                 }
                 let centre = &mut self.vectors[star[0] as usize];
                 let spins = W::load(centre, part);
                 let mut downhill = seen.most::<WIDTH>().xor3(spins, opposed);
                 let mut ties = W::splat(0);
                 if WIDTH % 2 == 1 {
-                    let tie = seen.tie::<WIDTH>();
+                    let tie = seen.is::<WIDTH>((WIDTH - 1) / 2);
                     downhill = downhill.without(tie);
                     let [third, second, first] = random;
                     ties = tie.and(if SOFT { first } else { first.or(second).or(third) });
@@ -192,16 +197,18 @@ impl<W: Word> Surroundings<W> {
         lanes
     }
 
-    /// Lanes of a class m < z/2: m of the z neighbours are in one state and all others in the other.
+    /// All unions of log2(N) classes m < z/2 from `first` on. Lanes of a class have m of the z neighbours in one state and the others in the other.
     #[inline(always)]
-    fn class<const WIDTH: usize>(&self, class: usize) -> W {
-        self.is::<WIDTH>(class).or(self.is::<WIDTH>(WIDTH - 1 - class))
-    }
-
-    /// Lanes with as many neighbours in one state as in the other.
-    #[inline(always)]
-    fn tie<const WIDTH: usize>(&self) -> W {
-        self.is::<WIDTH>((WIDTH - 1) / 2)
+    fn unions<const WIDTH: usize, const N: usize>(&self, first: usize) -> [W; N] {
+        let mut unions = [W::splat(0); N];
+        for place in 0..N.trailing_zeros() as usize {
+            let class = first + place;
+            let lanes = self.is::<WIDTH>(class).or(self.is::<WIDTH>(WIDTH - 1 - class));
+            for below in 0..1 << place {
+                unions[1 << place | below] = unions[below].or(lanes);
+            }
+        }
+        unions
     }
 
     /// Lanes in which more than half of the neighbours are in state 1: the number is compared with the least such number, digit by digit.

@@ -85,6 +85,8 @@ impl Rare {
             2 => self.draw_for::<2>(),
             3 => self.draw_for::<3>(),
             4 => self.draw_for::<4>(),
+            5 => self.draw_for::<5>(),
+            6 => self.draw_for::<6>(),
             _ => {}
         }
     }

@@ -8,6 +8,7 @@ mod exact;
 #[path = "../../../lattices/src/standard/mod.rs"]
 mod lattices;
 mod mechanics;
+#[allow(dead_code, unused_imports, reason = "the standard models as they are; not all are needed here")]
 #[path = "../../../models/src/standard/mod.rs"]
 mod models;
 mod moments;

@@ -25,7 +25,7 @@ fn other_hamiltonians() {
     check(refused::<Square, Ising>(square, r#"{"field": 0.1}"#, 512), "no field");
     check(refused::<Square, Potts>(square, r#"{"q": 3}"#, 512), "two states");
     check(refused::<Square, Ising>(square, r#"{"coupling": {"first.x": 1, "first.y": 0.5}}"#, 512), "one strength");
-    check(refused::<Complete, Ising>(r#"{"size": 10}"#, "{}", 512), "at most 8 neighbours, here are 9");
+    check(refused::<Complete, Ising>(r#"{"size": 14}"#, "{}", 512), "at most 12 neighbours, here are 13");
 }
 
 #[test]

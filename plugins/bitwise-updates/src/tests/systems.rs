@@ -64,6 +64,7 @@ pub(super) fn small() -> Vec<System> {
         system::<Square, Potts>("2x3, two colours", r#"{"size": [2, 3], "boundary": "free"}"#, r#"{"q": 2}"#, 0.6),
         system::<Complete, Ising>("everyone with everyone, 8", r#"{"size": 8}"#, "{}", 0.08),
         system::<Complete, Ising>("everyone with everyone, 9", r#"{"size": 9}"#, "{}", 0.07),
+        system::<Complete, Ising>("everyone with everyone, 12", r#"{"size": 12}"#, "{}", 0.06),
         system::<Complete, Ising>("everyone with everyone, 9, hot", r#"{"size": 9}"#, anti, 0.03),
     ]
 }
@@ -92,13 +93,13 @@ impl Lattice for Complete {
     }
 }
 
-/// Free sites with pinned neighbours only: for every number of neighbours up to 8 (0 aside) and every number of them that is down, one site.
+/// Free sites with pinned neighbours only: for every number of neighbours up to 12 (0 aside) and every number of them that is down, one site.
 pub(super) struct Islands;
 
 impl Islands {
     /// Number of neighbours, and how many of them are down, of each site.
     pub(super) fn sites() -> impl Iterator<Item = (usize, usize)> {
-        (1..=8).flat_map(|degree| (0..=degree).map(move |down| (degree, down)))
+        (1..=12).flat_map(|degree| (0..=degree).map(move |down| (degree, down)))
     }
 }
 
