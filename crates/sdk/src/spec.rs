@@ -18,6 +18,18 @@ pub mod kinds {
     pub const NUMBER_BY_CLASS: &str = r#"{"either":{"of":[{"number":{}},{"map":{"of":{"number":{}}}}]}}"#;
 }
 
+/// Views that an observable may accept, to be joined by `|`.
+pub mod views {
+    /// One byte a site.
+    pub const BYTES: u32 = spinledger_abi::SL_VIEW_BYTES;
+    /// One bit a site, of spins of two states.
+    pub const BITS: u32 = spinledger_abi::SL_VIEW_BITS;
+    /// One vector a site.
+    pub const VECTORS: u32 = spinledger_abi::SL_VIEW_VECTORS;
+    /// Whatever the rule shows: nothing is converted.
+    pub const ANY: u32 = BYTES | BITS | VECTORS;
+}
+
 /// One parameter.
 #[derive(Clone, Copy, Debug)]
 pub struct Parameter {
@@ -231,7 +243,7 @@ pub struct ObservableSpec {
     pub needs: &'static [&'static str],
     /// Chains that it reads at once: 1 or 2.
     pub chains: u64,
-    /// Views that it accepts: `SL_VIEW_` flags of the interface.
+    /// What it accepts, see [`views`].
     pub views: u32,
     /// Columns, where they do not depend on parameters.
     pub columns: &'static [Column],
@@ -248,7 +260,7 @@ impl ObservableSpec {
         parameters: &[],
         needs: &[],
         chains: 1,
-        views: spinledger_abi::SL_VIEW_BYTES | spinledger_abi::SL_VIEW_VECTORS,
+        views: views::BYTES | views::VECTORS,
         columns: &[],
     };
 }

@@ -59,6 +59,6 @@ fn main() {
     show(&critical(12, 90_000 * longer));
     show(&packed(2.0, 600_000 * longer, 8, false));
     show(&packed(2.269_185_314_213_022, 100_000 * longer, 200, false));
-    show(&packed(2.4, 450_000 * longer, 20, false));
+    show(&packed(2.4, 650_000 * longer, 20, false));
     show(&packed(2.6, 180_000 * longer, 16, true));
 }
