@@ -1,9 +1,9 @@
 //! What moves the spins: the part of a sample point that decides a chain's course, in the form that keys and streams are made of.
 
 use crate::blocks::block_rows;
+use crate::lanes::{complete, rule_lanes};
 use crate::sequence::Follows;
 use crate::states::Start;
-use crate::lanes::{complete, rule_lanes};
 use serde::{Deserialize, Serialize};
 use spinledger_pipeline::Units;
 use spinledger_terms::{Identity, Item, ItemKind, Value, Vocabulary};
