@@ -3,27 +3,40 @@
 use crate::simd::Work;
 use crate::word::{LANES, Vector, Word};
 
-/// Digits of a count: numbers of vectors have 32 bits.
+/// Most digits of a count: numbers of vectors and pairs have 32 bits.
 const DIGITS: usize = 33;
 
 /// How many of some vectors have the bit of each lane: digits across lanes, the least significant first.
 #[derive(Clone, Debug)]
-pub(crate) struct Counts([Vector; DIGITS]);
+pub(crate) struct Counts {
+    digits: [Vector; DIGITS],
+    /// Those that may not be 0.
+    used: usize,
+}
 
 impl Counts {
     /// Of all lanes together.
     pub(crate) fn sum(&self) -> u64 {
         let ones = |vector: &Vector| vector.iter().map(|word| u64::from(word.count_ones())).sum::<u64>();
-        self.0.iter().enumerate().map(|(place, vector)| ones(vector) << place).sum()
+        self.digits[..self.used].iter().enumerate().map(|(place, vector)| ones(vector) << place).sum()
     }
+}
 
-    /// Of each lane.
-    pub(crate) fn lanes(&self) -> Vec<u64> {
-        let mut counts = vec![0; LANES];
-        for (place, vector) in self.0.iter().enumerate().filter(|(_, vector)| **vector != [0; 8]) {
-            for (counts, word) in counts.as_chunks_mut::<64>().0.iter_mut().zip(vector) {
+/// Takes counts apart, lane by lane.
+pub(crate) struct Lanes<'a>(pub(crate) &'a Counts);
+
+impl Work for Lanes<'_> {
+    type Output = Vec<u32>;
+
+    /// Whatever the register: compilers see what to do with the loops.
+    #[inline(always)]
+    fn run<W: Word>(self) -> Vec<u32> {
+        let mut counts = vec![0_u32; LANES];
+        for (place, vector) in self.0.digits[..self.0.used].iter().enumerate() {
+            let halves = vector.iter().flat_map(|word| [*word as u32, (word >> 32) as u32]);
+            for (counts, half) in counts.as_chunks_mut::<32>().0.iter_mut().zip(halves) {
                 for (lane, count) in counts.iter_mut().enumerate() {
-                    *count += (word >> lane & 1) << place;
+                    *count |= (half >> lane & 1) << place;
                 }
             }
         }
@@ -72,6 +85,9 @@ fn add<W: Word>(a: W, b: W, c: W) -> (W, W) {
 #[inline(always)]
 fn count<W: Word>(vectors: usize, at: impl Fn(usize, usize) -> W) -> Counts {
     let mut counts = [[0; 8]; DIGITS];
+    // Digits of the largest count there can be.
+    let used = (usize::BITS - vectors.leading_zeros()) as usize;
+    assert!(used < DIGITS, "numbers of vectors have 32 bits");
     for part in 0..8 / W::WORDS {
         let mut digits = [W::splat(0); DIGITS];
         // A carry into each digit that waits for a second one.
@@ -97,17 +113,17 @@ fn count<W: Word>(vectors: usize, at: impl Fn(usize, usize) -> W) -> Counts {
         }
         digits[..3].copy_from_slice(&[ones, twos, fours]);
         let mut add_at = |first: usize, mut carry: W| {
-            for digit in &mut digits[first..] {
+            for digit in &mut digits[first..used.max(first)] {
                 let next = digit.and(carry);
                 *digit = digit.xor(carry);
                 carry = next;
             }
         };
-        (3..DIGITS).filter(|place| blocks >> (place - 3) & 1 == 1).for_each(|place| add_at(place, waiting[place]));
+        (3..used).filter(|place| blocks >> (place - 3) & 1 == 1).for_each(|place| add_at(place, waiting[place]));
         (8 * blocks..vectors).for_each(|number| add_at(0, at(number, part)));
-        digits.into_iter().zip(&mut counts).for_each(|(digit, vector)| digit.store(vector, part));
+        digits[..used].iter().zip(&mut counts).for_each(|(digit, vector)| digit.store(vector, part));
     }
-    Counts(counts)
+    Counts { digits: counts, used }
 }
 
 #[cfg(test)]
@@ -126,14 +142,15 @@ mod tests {
             let some = &vectors[..count];
             let pairs: Vec<[u32; 2]> = (1..count as u32).map(|v| [v - 1, v]).collect();
             let lane = |vector: &Vector, lane: usize| vector[lane / 64] >> (lane % 64) & 1;
-            let ones: Vec<u64> = (0..LANES).map(|l| some.iter().map(|v| lane(v, l)).sum()).collect();
-            let unlike = |l: usize| some.windows(2).map(|v| lane(&v[0], l) ^ lane(&v[1], l)).sum::<u64>();
-            let unlike: Vec<u64> = (0..LANES).map(unlike).collect();
+            let ones: Vec<u32> = (0..LANES).map(|l| some.iter().map(|v| lane(v, l)).sum::<u64>() as u32).collect();
+            let unlike = |l: usize| some.windows(2).map(|v| lane(&v[0], l) ^ lane(&v[1], l)).sum::<u64>() as u32;
+            let unlike: Vec<u32> = (0..LANES).map(unlike).collect();
             for level in Level::ALL.into_iter().filter(|level| level.is_there()) {
                 let counted = level.run(Ones(some));
-                assert_eq!(counted.lanes(), ones, "{count} {level:?}");
-                assert_eq!(counted.sum(), ones.iter().sum::<u64>());
-                assert_eq!(level.run(Unlike { vectors: some, pairs: &pairs }).lanes(), unlike, "{count} {level:?}");
+                assert_eq!(level.run(Lanes(&counted)), ones, "{count} {level:?}");
+                assert_eq!(counted.sum(), ones.iter().map(|n| u64::from(*n)).sum::<u64>());
+                let counted = level.run(Unlike { vectors: some, pairs: &pairs });
+                assert_eq!(level.run(Lanes(&counted)), unlike, "{count} {level:?}");
             }
         }
     }

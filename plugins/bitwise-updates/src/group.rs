@@ -1,6 +1,6 @@
 //! Chains under the rule.
 
-use crate::count::{Ones, Unlike};
+use crate::count::{Counts, Lanes, Ones, Unlike};
 use crate::coupling::Coupling;
 use crate::decision::{Decision, MOST_NEIGHBOURS};
 use crate::kernel::{Kind, Sweeps, refresh};
@@ -146,7 +146,10 @@ impl<'a> Group<'a> {
             let unlike = self.level.run(Unlike { vectors, pairs: &self.layout.pairs });
             let one = self.positions.is_some();
             let broken = |unlike: u64| if self.opposed { self.energy.bonds - unlike } else { unlike };
-            let lanes = |counts: &crate::count::Counts| if one { vec![counts.sum()] } else { counts.lanes() };
+            let lanes = |counts: &Counts| match one {
+                true => vec![counts.sum()],
+                false => self.level.run(Lanes(counts)).into_iter().map(u64::from).collect(),
+            };
             Totals { ones: lanes(&ones), broken: lanes(&unlike).into_iter().map(broken).collect() }
         })
     }
