@@ -74,6 +74,18 @@ fn pipeline() -> String {
         let hot = "inverse_temperature: 0\n    equilibrate: 10\n    measure: 40";
         steps += &step(&format!("hot-{rule}"), square, ising, update, both, hot);
     }
+    for (name, place) in [
+        ("multi-spin-chains", square),
+        ("multi-spin-sites", "plugin: square, size: 64"),
+        ("multi-spin-cubic", "plugin: cubic, size: 16"),
+        ("multi-spin-edges", "plugin: triangular, size: 3, boundary: [antiperiodic, plus]"),
+    ] {
+        steps += &step(name, place, "ising", "multi-spin", both, short);
+    }
+    let hot = "inverse_temperature: 0\n    equilibrate: 10\n    measure: 40";
+    steps += &step("multi-spin-hot", square, "ising", "{ plugin: multi-spin, lanes: 512 }", both, hot);
+    steps +=
+        &step("multi-spin-1", "plugin: square, size: 64", "ising", "{ plugin: multi-spin, lanes: 1 }", both, short);
     let mixed = "[heat-bath, { plugin: wolff, clusters: 2 }, { plugin: metropolis, times: 2 }]";
     let both_starts = "temperature: 2.2\n    start: both\n    measure: 400\n    every: 3";
     steps += &step("mixed", square, ising, mixed, both, both_starts);
@@ -250,7 +262,8 @@ fn nothing_standard_is_left_out() {
             if name == "lanes" {
                 let lanes: BTreeSet<&str> =
                     kind.split(|c: char| !c.is_ascii_digit()).filter(|n| !n.is_empty()).collect();
-                assert_eq!(lanes, BTreeSet::from(["1", "64"]), "lanes of {identity} in {kind}");
+                let known = if identity.contains("/multi-spin@") { ["1", "512"] } else { ["1", "64"] };
+                assert_eq!(lanes, BTreeSet::from(known), "lanes of {identity} in {kind}");
             }
         }
     }

@@ -1,6 +1,7 @@
 //! What moves the spins: the part of a sample point that decides a chain's course, in the form that keys and streams are made of.
 
 use crate::blocks::block_rows;
+use crate::lanes::{complete, rule_lanes};
 use crate::sequence::Follows;
 use crate::states::Start;
 use serde::{Deserialize, Serialize};
@@ -84,8 +85,15 @@ impl Dynamics {
         let (model, _, _) = item(ItemKind::Model, body.get("model")?)?;
         let update = body.get("update")?;
         let rules = update.as_list().unwrap_or(std::slice::from_ref(update));
-        let rules: Vec<_> = rules.iter().map(|rule| item(ItemKind::Update, rule)).collect::<Option<_>>()?;
-        let lanes = rules.iter().map(|(rule, item, _)| rule_lanes(&rule.parameters, item)).max().unwrap_or(1);
+        let mut rules: Vec<_> = rules.iter().map(|rule| item(ItemKind::Update, rule)).collect::<Option<_>>()?;
+        let mut lanes = 1;
+        for (rule, item, _) in &mut rules {
+            let own = rule_lanes(&rule.parameters, item, &lattice.parameters, &lattice_item);
+            if let Value::Map(parameters) = &mut rule.parameters {
+                complete(parameters, item, own);
+            }
+            lanes = lanes.max(own);
+        }
         let observe = body.get("observe")?.as_list()?;
         let observe = observe.iter().map(|o| Some(item(ItemKind::Observable, o)?.0)).collect::<Option<_>>()?;
         let boltzmann = units.boltzmann();
@@ -223,13 +231,6 @@ fn in_energy_units(parameters: &mut BTreeMap<String, Value>, item: &Item, units:
 fn with_times(mut value: Value, times: u64) -> Value {
     value.set("times", Value::Integer(times as i64));
     value
-}
-
-/// Chains that a rule advances together: the value of the parameter that its manifest names.
-pub fn rule_lanes(parameters: &Value, item: &Item) -> u32 {
-    let name = item.update.as_ref().map_or("", |traits| traits.lanes.as_str());
-    let lanes = if name.is_empty() { None } else { parameters.get(name).and_then(Value::as_i64) };
-    lanes.and_then(|n| u32::try_from(n).ok()).unwrap_or(1).max(1)
 }
 
 /// Number of sites as far as the lattice's manifest and parameters tell; 4096 where they do not.

@@ -7,6 +7,7 @@
 //! - [`sample`] plans a `sample` step: its points, the groups of chains of each, how many rows are on record.
 //! - [`states`] says what chains begin from and which configurations are kept, [`sequence`] which points follow each other.
 //! - [`analysis`] makes the keys of everything else.
+//! - [`lanes`] says how many chains a rule advances together.
 //! - [`blocks`] cuts chains into blocks.
 //!
 //! The preimages made here are what keys mean: changing their form orphans every ledger, so they are frozen by tests.
@@ -15,6 +16,7 @@
 pub mod analysis;
 pub mod blocks;
 pub mod dynamics;
+pub mod lanes;
 pub mod sample;
 pub mod sequence;
 pub mod states;

@@ -34,7 +34,7 @@ pub use graph::{Bond, Graph};
 pub use host::Host;
 pub use neighbours::Neighbours;
 pub use params::Params;
-pub use spec::{Column, LatticeSpec, ModelSpec, ObservableSpec, Parameter, Trait, UpdateSpec, kinds};
+pub use spec::{Column, LatticeSpec, ModelSpec, ObservableSpec, Parameter, Trait, UpdateSpec, kinds, views};
 pub use spinledger_numerics as numerics;
 pub use traits::{
     ColumnInfo, Lattice, Model, Observable, ObservableInstance, Prepare, Problem, Update, UpdateInstance,

@@ -18,6 +18,18 @@ pub mod kinds {
     pub const NUMBER_BY_CLASS: &str = r#"{"either":{"of":[{"number":{}},{"map":{"of":{"number":{}}}}]}}"#;
 }
 
+/// Views that an observable may accept, to be joined by `|`.
+pub mod views {
+    /// One byte a site.
+    pub const BYTES: u32 = spinledger_abi::SL_VIEW_BYTES;
+    /// One bit a site, of spins of two states.
+    pub const BITS: u32 = spinledger_abi::SL_VIEW_BITS;
+    /// One vector a site.
+    pub const VECTORS: u32 = spinledger_abi::SL_VIEW_VECTORS;
+    /// Whatever the rule shows: nothing is converted.
+    pub const ANY: u32 = BYTES | BITS | VECTORS;
+}
+
 /// One parameter.
 #[derive(Clone, Copy, Debug)]
 pub struct Parameter {
@@ -53,8 +65,8 @@ impl Parameter {
     }
 }
 
-/// Something that a model offers: the word, and conditions `(parameter, "nonzero" | "negative" | "positive")` any of which takes
-/// it away. Words: `scalar`, `negation`, `directions`, `inversion`, `permutation`, `ferromagnetic`, `colours`, `vectors`.
+/// Something that a model offers: the word, and conditions `(parameter, "nonzero" | "negative" | "positive" | "uneven")` any of
+/// which takes it away. Words: `scalar`, `negation`, `directions`, `inversion`, `permutation`, `ferromagnetic`, `uniform`, `colours`, `vectors`.
 pub type Trait = (&'static str, &'static [(&'static str, &'static str)]);
 
 /// A lattice.
@@ -174,6 +186,11 @@ pub struct UpdateSpec {
     pub most_states: u64,
     /// The parameter that gives the number of chains advanced together; empty: one.
     pub lanes: &'static str,
+    /// Where that parameter is not given, it is chosen by size: 1 where `packing` fits, else this many. 0: it has a default of its own.
+    pub together: u64,
+    /// By number of directions (the list of that length serves it): the size in each must be a multiple of the number here, and at least twice that,
+    /// and every boundary periodic. Where that is not so, or no list has the length, one chain (1 as value of `lanes`) is refused.
+    pub packing: &'static [&'static [u64]],
 }
 
 impl UpdateSpec {
@@ -189,6 +206,8 @@ impl UpdateSpec {
         needs: &[],
         most_states: 0,
         lanes: "",
+        together: 0,
+        packing: &[],
     };
 }
 
@@ -224,7 +243,7 @@ pub struct ObservableSpec {
     pub needs: &'static [&'static str],
     /// Chains that it reads at once: 1 or 2.
     pub chains: u64,
-    /// Views that it accepts: `SL_VIEW_` flags of the interface.
+    /// What it accepts, see [`views`].
     pub views: u32,
     /// Columns, where they do not depend on parameters.
     pub columns: &'static [Column],
@@ -241,7 +260,7 @@ impl ObservableSpec {
         parameters: &[],
         needs: &[],
         chains: 1,
-        views: spinledger_abi::SL_VIEW_BYTES | spinledger_abi::SL_VIEW_VECTORS,
+        views: views::BYTES | views::VECTORS,
         columns: &[],
     };
 }

@@ -49,19 +49,29 @@ pub enum View<'a> {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Positions<'a> {
     places: &'a [u32],
-    reach: u32,
+    /// None: not found yet.
+    reach: Option<u32>,
 }
 
 impl<'a> Positions<'a> {
     /// From the position of each site. Cost: one pass; for a chain that is shown often keep a [`PositionList`].
     pub fn new(places: &'a [u32]) -> Self {
-        Positions { places, reach: places.iter().copied().max().unwrap_or(0) }
+        Positions { places, reach: Some(furthest(places)) }
+    }
+
+    /// The same without the pass: how far they reach is found when the view is shown to somebody else. Most that are received are only read.
+    pub(crate) fn received(places: &'a [u32]) -> Self {
+        Positions { places, reach: None }
     }
 
     /// The position of each site.
     pub fn places(&self) -> &'a [u32] {
         self.places
     }
+}
+
+fn furthest(places: &[u32]) -> u32 {
+    places.iter().copied().max().unwrap_or(0)
 }
 
 /// Positions for good.
@@ -74,13 +84,13 @@ pub struct PositionList {
 impl PositionList {
     /// From the position of each site. Cost: one pass.
     pub fn new(places: Vec<u32>) -> Self {
-        let reach = Positions::new(&places).reach;
+        let reach = furthest(&places);
         PositionList { places, reach }
     }
 
     /// To be shown.
     pub fn positions(&self) -> Positions<'_> {
-        Positions { places: &self.places, reach: self.reach }
+        Positions { places: &self.places, reach: Some(self.reach) }
     }
 }
 
@@ -143,7 +153,8 @@ impl<'a> View<'a> {
                 Some(last.checked_mul(stride)?.checked_add(offset)? / 64 + 1)
             }
             View::Bits { offset, positions: Some(positions), .. } if positions.places.len() > last => {
-                Some(offset.checked_add(positions.reach as usize)? / 64 + 1)
+                let furthest = positions.reach.unwrap_or_else(|| furthest(positions.places));
+                Some(offset.checked_add(furthest as usize)? / 64 + 1)
             }
             View::Bits { .. } => None,
             View::Vectors { components, stride, component_stride, .. } => {

@@ -34,6 +34,8 @@ const UPDATE: UpdateSpec = UpdateSpec {
     needs: &["inversion|permutation"],
     most_states: 256,
     lanes: "lanes",
+    together: 512,
+    packing: &[&[512], &[16, 32]],
     ..UpdateSpec::EMPTY
 };
 const OBSERVABLE: ObservableSpec = ObservableSpec {
@@ -89,6 +91,7 @@ fn traits_of_each_kind_arrive() {
     assert_eq!(model.offers[1].unless[1].parameter, "x.y");
     assert_eq!(model.by_class, ["coupling"]);
     let update = items[2].update.as_ref().expect("update");
+    assert_eq!((update.together, &*update.packing), (Some(512), &[vec![512], vec![16, 32]][..]));
     assert_eq!((update.most_states, &*update.lanes, &*update.needs[0]), (Some(256), "lanes", "inversion|permutation"));
     let observable = items[3].observable.as_ref().expect("observable");
     assert_eq!((observable.chains, observable.columns[0].invariant), (2, false));

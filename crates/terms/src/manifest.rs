@@ -156,7 +156,7 @@ pub struct ModelTraits {
 
 /// Something that a model offers, unless its parameters spoil it. Words in use: `scalar` (states carry spin values), `negation` (-S is
 /// a state), `directions` (states for pinned rims are known), `inversion` (S -> -S everywhere leaves H unchanged), `permutation` (so does
-/// any permutation of colours), `ferromagnetic` (no coupling is negative), `colours` (states are Potts colours).
+/// any permutation of colours), `ferromagnetic` (no coupling is negative), `uniform` (all couplings are equal), `colours` (states are Potts colours).
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Trait {
     /// The word.
@@ -171,7 +171,7 @@ pub struct Trait {
 pub struct Condition {
     /// The parameter, as a dotted path.
     pub parameter: String,
-    /// `nonzero`, `negative` or `positive`.
+    /// `nonzero`, `negative`, `positive`, or `uneven`: elements that differ.
     pub is: String,
 }
 
@@ -190,6 +190,10 @@ impl Condition {
             "nonzero" => any(value, &|x| x != 0.0),
             "negative" => any(value, &|x| x < 0.0),
             "positive" => any(value, &|x| x > 0.0),
+            "uneven" => {
+                let first = std::cell::Cell::new(None);
+                any(value, &|x| first.replace(Some(x)).is_some_and(|before| before != x))
+            }
             _ => true,
         })
     }
@@ -209,6 +213,14 @@ pub struct UpdateTraits {
     /// The parameter that gives the number of chains advanced together; empty: one.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub lanes: String,
+    /// The value of that parameter where it is not given and the lattice does not fit `packing`; where it fits, it is 1. None: the parameter has
+    /// a default of its own.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub together: Option<u32>,
+    /// By number of directions: one chain is served where the number of cells in each direction is a multiple of the number here, and at least
+    /// twice that, and every boundary is periodic.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub packing: Vec<Vec<u64>>,
 }
 
 /// Of an observable.

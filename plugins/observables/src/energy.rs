@@ -2,6 +2,7 @@
 
 use spinledger_sdk::{
     Column, ColumnInfo, Host, Observable, ObservableInstance, ObservableSpec, Params, Problem, Result, Tallies, View,
+    views,
 };
 
 const COLUMN: Column = Column { name: "energy", unit: "energy", invariant: true, about: "energy per free site" };
@@ -16,6 +17,8 @@ impl Observable for EnergyPerSite {
         about: "energy per site, bonds to pinned sites and fields included",
         formula: "energy = E/N",
         columns: &[COLUMN],
+        // Mostly read from totals: a configuration that is not looked at should not be unpacked.
+        views: views::ANY,
         ..ObservableSpec::EMPTY
     };
     type Instance<'a> = Instance<'a>;

@@ -3,6 +3,7 @@
 use spinledger_numerics::sum::sum_by;
 use spinledger_sdk::{
     ColumnInfo, Error, Host, Observable, ObservableInstance, ObservableSpec, Params, Problem, Result, Tallies, View,
+    views,
 };
 
 /// Columns of the components of vector spins.
@@ -19,6 +20,8 @@ impl Observable for Magnetisation {
         formula: "scalar spins: magnetisation = m = sum s/N; vector spins: magnetisation_x, _y, _z = components of m = sum S/N, \
                   magnetisation = |m|",
         needs: &["scalar|vectors"],
+        // Mostly read from totals: a configuration that is not looked at should not be unpacked.
+        views: views::ANY,
         // No columns are listed, since they depend on the model.
         ..ObservableSpec::EMPTY
     };

@@ -1,14 +1,16 @@
 //! `sample`: time series from chains.
 
 mod course;
+mod packing;
 
 use course::Known;
 pub(crate) use course::{StartStep, must_keep, start_step};
 
+use self::packing::{by_class, check_lanes, check_packing};
 use super::{Checked, Output, Split, StepError, StepKind, Task, as_is};
 use spinledger_pipeline::Point;
 use spinledger_plan::blocks::{block_rows, most_rows};
-use spinledger_plan::dynamics::{nominal_sites, rule_lanes};
+use spinledger_plan::dynamics::nominal_sites;
 use spinledger_plan::sample::Ask;
 use spinledger_plan::states::{Start, StateRef};
 use spinledger_terms::{
@@ -129,14 +131,16 @@ fn check_point(step: &Checked<'_>, point: &Point, known: &mut Known, problems: &
     check_lengths(point, body, &lattice, problems);
     check_model(point, body, &lattice, &model, problems);
     if let Some(update) = body.get("update") {
+        let coupled = by_class(body.get("model"), &model, &lattice);
         let listed = update.as_list().is_some();
         for (i, rule) in update.as_list().unwrap_or(std::slice::from_ref(update)).iter().enumerate() {
             let place = if listed { format!("update.{i}") } else { "update".to_owned() };
             if let Some(rule) = item(ItemKind::Update, Some(rule)) {
-                check_rule(step.vocabulary, point, body, &place, &rule, &model, problems);
+                let able = check_rule(step.vocabulary, point, coupled.as_ref(), &place, &rule, &model, problems);
+                check_packing(point, body, &place, &rule, &lattice, &able, problems);
             }
         }
-        check_lanes(step.vocabulary, point, update, problems);
+        check_lanes(step.vocabulary, point, update, body, &lattice, problems);
     }
     let mut columns: BTreeSet<String> = BTreeSet::new();
     for (i, observable) in body.get("observe").and_then(Value::as_list).unwrap_or_default().iter().enumerate() {
@@ -259,34 +263,36 @@ fn check_model(point: &Point, body: &Value, lattice: &Item, model: &Item, proble
     }
 }
 
-fn check_rule(
-    vocabulary: &Vocabulary,
+/// Checks a rule against a model; returns the rules that serve it.
+fn check_rule<'a>(
+    vocabulary: &'a Vocabulary,
     point: &Point,
-    body: &Value,
+    parameters: Option<&Value>,
     place: &str,
     rule: &Item,
     model: &Item,
     problems: &mut Vec<Problem>,
-) {
-    let reasons = refusals(rule, model, body.get("model"));
-    if reasons.is_empty() {
-        return;
-    }
+) -> Vec<&'a str> {
     let able: BTreeSet<&str> = vocabulary
         .items
         .iter()
         .map(|(_, item)| item)
-        .filter(|item| item.kind == ItemKind::Update && refusals(item, model, body.get("model")).is_empty())
+        .filter(|item| item.kind == ItemKind::Update && refusals(item, model, parameters).is_empty())
         .map(|item| item.name.as_str())
         .collect();
     let able: Vec<&str> = able.into_iter().collect();
-    let expected = if able.is_empty() {
-        "no rule that was found serves it".into()
-    } else {
-        format!("one of: {}", able.join(", "))
-    };
-    let message = format!("the rule `{}` cannot serve the model `{}`: {}", rule.name, model.name, reasons.join("; "));
-    problems.push(Problem::at_value(&point.place(place), message).expected(expected));
+    let reasons = refusals(rule, model, parameters);
+    if !reasons.is_empty() {
+        let expected = if able.is_empty() {
+            "no rule that was found serves it".into()
+        } else {
+            format!("one of: {}", able.join(", "))
+        };
+        let reasons = reasons.join("; ");
+        let message = format!("the rule `{}` cannot serve the model `{}`: {reasons}", rule.name, model.name);
+        problems.push(Problem::at_value(&point.place(place), message).expected(expected));
+    }
+    able
 }
 
 /// Why a rule cannot serve a model with these parameters; empty where it can.
@@ -346,6 +352,7 @@ fn words_of(name: &str) -> &str {
         "inversion" => "an energy that is unchanged when all spins are reversed",
         "permutation" => "an energy that is unchanged when colours are permuted",
         "ferromagnetic" => "couplings that are not negative",
+        "uniform" => "couplings of one strength",
         "colours" => "Potts colours",
         "vectors" => "vector spins",
         other => other,
@@ -360,21 +367,4 @@ fn offers(model: &Item, parameters: Option<&Value>, need: &str) -> bool {
             .iter()
             .any(|t| t.name == name && !t.unless.iter().any(|condition| parameters.is_some_and(|p| condition.holds(p))))
     })
-}
-
-/// Rules of one sweep must advance the same number of chains together.
-fn check_lanes(vocabulary: &Vocabulary, point: &Point, update: &Value, problems: &mut Vec<Problem>) {
-    let rules = update.as_list().unwrap_or(std::slice::from_ref(update));
-    let lanes: Vec<u32> = rules
-        .iter()
-        .filter_map(|rule| {
-            let (_, item) = vocabulary.item(ItemKind::Update, rule.get("plugin")?.as_str()?)?;
-            Some(rule_lanes(rule, item))
-        })
-        .collect();
-    if let Some(i) = lanes.iter().position(|n| *n != lanes[0]) {
-        let message = format!("this rule advances {} chains together, the first {}", lanes[i], lanes[0]);
-        let problem = Problem::at_value(&point.place(&format!("update.{i}")), message);
-        problems.push(problem.expected("rules with the same `lanes`").other(point.place("update.0"), "the first rule"));
-    }
 }

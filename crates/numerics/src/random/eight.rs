@@ -56,6 +56,20 @@ impl Eight {
         Self { state, block: [0; LANES], drawn: LANES, half: None }
     }
 
+    /// State words of the eight generators, word w of lane l at `[w][l]`: for kernels that step them in registers of their own. None where
+    /// words of a block, or a half word, were drawn and others of it wait.
+    #[must_use]
+    pub fn lanes(&self) -> Option<[[u64; LANES]; 4]> {
+        (self.drawn == LANES && self.half.is_none()).then_some(self.state)
+    }
+
+    /// The stream that goes on from these state words: what [`Eight::lanes`] gave, stepped on by equal numbers of steps. A generator whose words
+    /// are all zero, which none comes to be, would stay there.
+    #[must_use]
+    pub const fn from_lanes(state: [[u64; LANES]; 4]) -> Self {
+        Self { state, block: [0; LANES], drawn: LANES, half: None }
+    }
+
     /// One step of every lane.
     #[inline]
     fn step(&mut self) -> [u64; LANES] {

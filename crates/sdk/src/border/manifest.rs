@@ -136,6 +136,27 @@ impl<const N: usize> Manifest<N> {
         self.byte(b']');
     }
 
+    /// A further field that holds lists of numbers.
+    const fn grids(&mut self, name: &str, grids: &[&[u64]]) {
+        self.byte(b',');
+        self.text(name);
+        self.raw(":[");
+        let mut k = 0;
+        while k < grids.len() {
+            self.comma(k);
+            self.byte(b'[');
+            let mut d = 0;
+            while d < grids[k].len() {
+                self.comma(d);
+                self.number(grids[k][d]);
+                d += 1;
+            }
+            self.byte(b']');
+            k += 1;
+        }
+        self.byte(b']');
+    }
+
     const fn item(&mut self, item: ItemSpec) {
         match item {
             ItemSpec::Lattice(s) => {
@@ -173,6 +194,10 @@ impl<const N: usize> Manifest<N> {
                 self.list("needs", s.needs);
                 if s.most_states > 0 {
                     self.count("most_states", s.most_states);
+                }
+                if s.together > 0 {
+                    self.count("together", s.together);
+                    self.grids("packing", s.packing);
                 }
             }
             ItemSpec::Observable(s) => {

@@ -221,7 +221,8 @@ pub(crate) unsafe fn view<'a>(raw: *const abi::SlView) -> Result<View<'a>> {
             // SAFETY: as above.
             let words = unsafe { slice(raw.data.cast(), raw.length) };
             // SAFETY: as above.
-            let positions = (!raw.positions.is_null()).then(|| Positions::new(unsafe { slice(raw.positions, sites) }));
+            let positions =
+                (!raw.positions.is_null()).then(|| Positions::received(unsafe { slice(raw.positions, sites) }));
             Ok(View::Bits { sites, words, offset: raw.offset, stride, positions })
         }
         abi::SL_VIEW_VECTORS => Ok(View::Vectors {

@@ -39,6 +39,7 @@ impl Model for Ising {
             ("directions", &[]),
             ("inversion", &[("field", "nonzero")]),
             ("ferromagnetic", &[("coupling", "negative")]),
+            ("uniform", &[("coupling", "uneven")]),
         ],
         by_class: &["coupling"],
         ..ModelSpec::EMPTY

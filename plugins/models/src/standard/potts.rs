@@ -32,6 +32,7 @@ impl Model for Potts {
             ("permutation", &[]),
             ("directions", &[]),
             ("ferromagnetic", &[("coupling", "negative")]),
+            ("uniform", &[("coupling", "uneven")]),
         ],
         by_class: &["coupling"],
         ..ModelSpec::EMPTY
