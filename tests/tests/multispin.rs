@@ -228,8 +228,8 @@ steps:
     }
 }
 
-/// One lattice packed by sites against clusters, below, at and above the critical point: eight comparisons, of which one deviates by more than 4.5
-/// standard errors with a probability of 6e-5.
+/// One lattice packed by sites against clusters, below and above the critical point: ten comparisons, of which one deviates by more than 4.5
+/// standard errors with a probability of 7e-5.
 #[test]
 fn averages_are_those_of_a_cluster_rule() {
     let step = |name: &str, temperature: f64, update: &str, more: &str| {
@@ -260,9 +260,15 @@ fn averages_are_those_of_a_cluster_rule() {
     for name in ["cold", "warm"] {
         let [bits, clusters] =
             ["bits", "clusters"].map(|rule| desk.table(&format!("results/both/{name}-{rule}-means.parquet")));
-        for (quantity, precision) in
-            [("energy", 3e-4), ("heat_capacity", 2e-2), ("magnetisation_abs", 1e-2), ("magnetisation_squared", 2e-2)]
-        {
+        // Above the critical point m^2 of one lattice is as broad as its mean.
+        let broad = if name == "warm" { 1e-2 } else { 2e-3 };
+        for (quantity, precision) in [
+            ("energy", 3e-4),
+            ("heat_capacity", 2e-2),
+            ("magnetisation_abs", broad),
+            ("magnetisation_squared", 2.0 * broad),
+            ("binder", 5.0 * broad),
+        ] {
             let [(a, da), (b, db)] =
                 [&bits, &clusters].map(|table| (number(table, quantity, "value"), number(table, quantity, "error")));
             let error = da.hypot(db);

@@ -4,21 +4,25 @@ use crate::simd::Work;
 use crate::word::{LANES, Vector, Word};
 
 /// Most digits of a count: numbers of vectors and pairs have 32 bits.
-const DIGITS: usize = 33;
+const MOST_DIGITS: usize = 32;
+/// Digits of most counts: less to be cleared.
+const FEW_DIGITS: usize = 12;
 
 /// How many of some vectors have the bit of each lane: digits across lanes, the least significant first.
 #[derive(Clone, Debug)]
-pub(crate) struct Counts {
-    digits: [Vector; DIGITS],
-    /// Those that may not be 0.
-    used: usize,
-}
+pub(crate) struct Counts(Vec<Vector>);
 
-impl Counts {
-    /// Of all lanes together.
-    pub(crate) fn sum(&self) -> u64 {
+/// Adds up counts over lanes.
+pub(crate) struct Sum<'a>(pub(crate) &'a Counts);
+
+impl Work for Sum<'_> {
+    type Output = u64;
+
+    /// Whatever the register: compilers see what to do with the loops.
+    #[inline(always)]
+    fn run<W: Word>(self) -> u64 {
         let ones = |vector: &Vector| vector.iter().map(|word| u64::from(word.count_ones())).sum::<u64>();
-        self.digits[..self.used].iter().enumerate().map(|(place, vector)| ones(vector) << place).sum()
+        self.0.0.iter().enumerate().map(|(place, vector)| ones(vector) << place).sum()
     }
 }
 
@@ -28,11 +32,11 @@ pub(crate) struct Lanes<'a>(pub(crate) &'a Counts);
 impl Work for Lanes<'_> {
     type Output = Vec<u32>;
 
-    /// Whatever the register: compilers see what to do with the loops.
+    /// As above.
     #[inline(always)]
     fn run<W: Word>(self) -> Vec<u32> {
         let mut counts = vec![0_u32; LANES];
-        for (place, vector) in self.0.digits[..self.0.used].iter().enumerate() {
+        for (place, vector) in self.0.0.iter().enumerate() {
             let halves = vector.iter().flat_map(|word| [*word as u32, (word >> 32) as u32]);
             for (counts, half) in counts.as_chunks_mut::<32>().0.iter_mut().zip(halves) {
                 for (lane, count) in counts.iter_mut().enumerate() {
@@ -84,10 +88,18 @@ fn add<W: Word>(a: W, b: W, c: W) -> (W, W) {
 /// equal weight, so that about one and an eighth of them serve each vector.
 #[inline(always)]
 fn count<W: Word>(vectors: usize, at: impl Fn(usize, usize) -> W) -> Counts {
-    let mut counts = [[0; 8]; DIGITS];
     // Digits of the largest count there can be.
     let used = (usize::BITS - vectors.leading_zeros()) as usize;
-    assert!(used < DIGITS, "numbers of vectors have 32 bits");
+    if used <= FEW_DIGITS {
+        count_in::<W, FEW_DIGITS>(used, vectors, at)
+    } else {
+        count_in::<W, MOST_DIGITS>(used, vectors, at)
+    }
+}
+
+#[inline(always)]
+fn count_in<W: Word, const DIGITS: usize>(used: usize, vectors: usize, at: impl Fn(usize, usize) -> W) -> Counts {
+    let mut counts = vec![[0; 8]; used];
     for part in 0..8 / W::WORDS {
         let mut digits = [W::splat(0); DIGITS];
         // A carry into each digit that waits for a second one.
@@ -123,7 +135,7 @@ fn count<W: Word>(vectors: usize, at: impl Fn(usize, usize) -> W) -> Counts {
         (8 * blocks..vectors).for_each(|number| add_at(0, at(number, part)));
         digits[..used].iter().zip(&mut counts).for_each(|(digit, vector)| digit.store(vector, part));
     }
-    Counts { digits: counts, used }
+    Counts(counts)
 }
 
 #[cfg(test)]
@@ -135,10 +147,10 @@ mod tests {
     fn counts_are_those_of_the_bits() {
         let mut stream = spinledger_sdk::numerics::random::SplitMix::new(3);
         // Unequal densities, so that some lanes count far and others hardly.
-        let vectors: Vec<Vector> = (0..1100)
+        let vectors: Vec<Vector> = (0..5000)
             .map(|_| std::array::from_fn(|word| (0..word).fold(u64::MAX, |bits, _| bits & stream.next())))
             .collect();
-        for count in [0, 1, 7, 8, 9, 16, 17, 24, 127, 128, 1000, 1100] {
+        for count in [0, 1, 7, 8, 9, 16, 17, 24, 127, 128, 1000, 4095, 4096, 5000] {
             let some = &vectors[..count];
             let pairs: Vec<[u32; 2]> = (1..count as u32).map(|v| [v - 1, v]).collect();
             let lane = |vector: &Vector, lane: usize| vector[lane / 64] >> (lane % 64) & 1;
@@ -148,7 +160,7 @@ mod tests {
             for level in Level::ALL.into_iter().filter(|level| level.is_there()) {
                 let counted = level.run(Ones(some));
                 assert_eq!(level.run(Lanes(&counted)), ones, "{count} {level:?}");
-                assert_eq!(counted.sum(), ones.iter().map(|n| u64::from(*n)).sum::<u64>());
+                assert_eq!(level.run(Sum(&counted)), ones.iter().map(|n| u64::from(*n)).sum::<u64>());
                 let counted = level.run(Unlike { vectors: some, pairs: &pairs });
                 assert_eq!(level.run(Lanes(&counted)), unlike, "{count} {level:?}");
             }

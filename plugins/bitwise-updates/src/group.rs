@@ -1,6 +1,6 @@
 //! Chains under the rule.
 
-use crate::count::{Counts, Lanes, Ones, Unlike};
+use crate::count::{Counts, Lanes, Ones, Sum, Unlike};
 use crate::coupling::Coupling;
 use crate::decision::{Decision, MOST_NEIGHBOURS};
 use crate::kernel::{Kind, Sweeps, refresh};
@@ -147,7 +147,7 @@ impl<'a> Group<'a> {
             let one = self.positions.is_some();
             let broken = |unlike: u64| if self.opposed { self.energy.bonds - unlike } else { unlike };
             let lanes = |counts: &Counts| match one {
-                true => vec![counts.sum()],
+                true => vec![self.level.run(Sum(counts))],
                 false => self.level.run(Lanes(counts)).into_iter().map(u64::from).collect(),
             };
             Totals { ones: lanes(&ones), broken: lanes(&unlike).into_iter().map(broken).collect() }

@@ -1,8 +1,8 @@
 //! `multi-spin`: Metropolis for Ising spins, one bit a spin, 512 spins at a time.
 //!
-//! Spins stand in vectors of 512 bits ([`word`]), either one lattice cut into 512 blocks ([`packing`]) or 512 chains side by side; both are
-//! a list of vectors with their neighbours ([`layout`]), and one kernel serves them ([`kernel`]). Acceptance is a comparison of a uniform number with
-//! a probability, digit by digit in all lanes at once ([`decision`]); what some ten digits leave out is made up for by rare events ([`rare`]).
+//! Spins stand in vectors of 512 bits (`word.rs`), either one lattice cut into 512 blocks (`packing.rs`) or 512 chains side by side; both are
+//! a list of vectors with their neighbours (`layout.rs`), and one kernel serves them (`kernel.rs`). Acceptance is a comparison of a uniform number with
+//! a probability, digit by digit in all lanes at once (`decision.rs`); what some ten digits leave out is made up for by rare events (`rare.rs`).
 //!
 //! `README.md` fixes the order of visits and draws, and says why the probabilities are right.
 #![deny(unsafe_code)]

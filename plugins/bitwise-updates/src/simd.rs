@@ -38,9 +38,9 @@ impl Level {
         match self {
             Level::Portable => true,
             #[cfg(target_arch = "x86_64")]
-            Level::Avx2 => is_x86_feature_detected!("avx2"),
+            Level::Avx2 => is_x86_feature_detected!("avx2") && is_x86_feature_detected!("popcnt"),
             #[cfg(target_arch = "x86_64")]
-            Level::Avx512 => is_x86_feature_detected!("avx512f"),
+            Level::Avx512 => is_x86_feature_detected!("avx512f") && is_x86_feature_detected!("popcnt"),
             #[cfg(not(target_arch = "x86_64"))]
             _ => false,
         }
@@ -83,10 +83,10 @@ impl Level {
         match self {
             Level::Portable => work.run::<Pair>(),
             #[cfg(target_arch = "x86_64")]
-            // SAFETY: the processor has AVX2, as just asserted.
+            // SAFETY: the processor has AVX2 and counts bits, as just asserted.
             Level::Avx2 => unsafe { x86::run_avx2(work) },
             #[cfg(target_arch = "x86_64")]
-            // SAFETY: the processor has AVX-512F, as just asserted.
+            // SAFETY: the processor has AVX-512F and counts bits, as just asserted.
             Level::Avx512 => unsafe { x86::run_avx512(work) },
             #[cfg(not(target_arch = "x86_64"))]
             _ => work.run::<Pair>(),
@@ -100,15 +100,15 @@ mod x86 {
     use std::arch::x86_64::*;
 
     /// # Safety
-    /// The processor has AVX2.
-    #[target_feature(enable = "avx2")]
+    /// The processor has AVX2 and counts bits.
+    #[target_feature(enable = "avx2,popcnt")]
     pub(super) unsafe fn run_avx2<T: Work>(work: T) -> T::Output {
         work.run::<Four>()
     }
 
     /// # Safety
-    /// The processor has AVX-512F.
-    #[target_feature(enable = "avx512f")]
+    /// The processor has AVX-512F and counts bits.
+    #[target_feature(enable = "avx512f,popcnt")]
     pub(super) unsafe fn run_avx512<T: Work>(work: T) -> T::Output {
         work.run::<Eight>()
     }

@@ -204,7 +204,7 @@ fn energies_of_one_chain() {
     let precision = |estimate: &Estimate| if estimate.name.starts_with("energy") { 1e-4 } else { 2e-3 };
     check(&packed(2.0, 600_000, 8, false), precision);
     check(&packed(2.4, 650_000, 20, false), precision);
-    check(&packed(5.0, 500_000, 4, false), precision);
+    check(&packed(5.0, 700_000, 4, false), precision);
 }
 
 #[test]
