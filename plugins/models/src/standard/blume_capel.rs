@@ -1,5 +1,6 @@
 //! Spins of two directions that may also be missing.
 
+use super::{COUPLING, FIELD};
 use spinledger_sdk::{Graph, Model, ModelBuilder, ModelSpec, Parameter, Params, Result, kinds};
 
 /// Values of the states.
@@ -21,21 +22,9 @@ impl Model for BlumeCapel {
         formula: "H = -sum J s_i s_j + sum D s_i^2 - sum h s_i, s = +1, 0 or -1; J > 0 is ferromagnetic, D > 0 favours 0",
         source: "Blume 1966 Phys. Rev. 141 517; Capel 1966 Physica 32 966",
         parameters: &[
-            Parameter::optional(
-                "coupling",
-                kinds::NUMBER_BY_CLASS,
-                "1",
-                "J: a number, or a mapping from bond class to number",
-            )
-            .unit("energy"),
+            COUPLING,
             Parameter::optional("anisotropy", kinds::NUMBER, "0", "D: what a spin that is not 0 costs").unit("energy"),
-            Parameter::optional(
-                "field",
-                kinds::NUMBER,
-                "0",
-                "h: an energy, or in tesla where the pipeline gives a moment",
-            )
-            .unit("field"),
+            FIELD,
         ],
         states: 3,
         // Not the inversion, although it is a symmetry without a field: a cluster rule alone would never move a spin that is 0.

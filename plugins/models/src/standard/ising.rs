@@ -1,6 +1,7 @@
 //! Spins of two directions.
 
-use spinledger_sdk::{Graph, Model, ModelBuilder, ModelSpec, Parameter, Params, Result, kinds};
+use super::{COUPLING, FIELD};
+use spinledger_sdk::{Graph, Model, ModelBuilder, ModelSpec, Params, Result};
 
 /// H = -sum J s_i s_j - sum h s_i with s = +1 (state 0, up) or -1 (state 1, down).
 #[derive(Debug)]
@@ -16,22 +17,7 @@ impl Model for Ising {
         about: "Ising model: spins +1 and -1, exchange coupling and field",
         formula: "H = -sum J s_i s_j - sum h s_i, s = +1 or -1; J > 0 is ferromagnetic",
         source: "Ising 1925 Z. Phys. 31 253",
-        parameters: &[
-            Parameter::optional(
-                "coupling",
-                kinds::NUMBER_BY_CLASS,
-                "1",
-                "J: a number, or a mapping from bond class to number",
-            )
-            .unit("energy"),
-            Parameter::optional(
-                "field",
-                kinds::NUMBER,
-                "0",
-                "h: an energy, or in tesla where the pipeline gives a moment",
-            )
-            .unit("field"),
-        ],
+        parameters: &[COUPLING, FIELD],
         states: 2,
         offers: &[
             ("scalar", &[]),

@@ -1,6 +1,7 @@
 //! Spins of q equal colours.
 
-use spinledger_sdk::{Graph, Model, ModelBuilder, ModelSpec, Parameter, Params, Result, kinds};
+use super::COUPLING;
+use spinledger_sdk::{Graph, Model, ModelBuilder, ModelSpec, Parameter, Params, Result};
 
 /// H = -sum J delta(s_i, s_j), s = 0 .. q - 1 (colours 1 .. q).
 #[derive(Debug)]
@@ -16,16 +17,7 @@ impl Model for Potts {
         about: "Potts model: q equal colours, neighbours of one colour gain J",
         formula: "H = -sum J delta(s_i, s_j), s one of q colours; J > 0 is ferromagnetic",
         source: "Potts 1952 Proc. Camb. Phil. Soc. 48 106",
-        parameters: &[
-            Parameter::required("q", r#"{"integer":{"min":2,"max":256}}"#, "number of colours"),
-            Parameter::optional(
-                "coupling",
-                kinds::NUMBER_BY_CLASS,
-                "1",
-                "J: a number, or a mapping from bond class to number",
-            )
-            .unit("energy"),
-        ],
+        parameters: &[Parameter::required("q", r#"{"integer":{"min":2,"max":256}}"#, "number of colours"), COUPLING],
         states_parameter: "q",
         offers: &[
             ("colours", &[]),
