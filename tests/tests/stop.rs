@@ -163,7 +163,7 @@ fn a_stop_at_any_moment_is_harmless() {
 fn a_sequence_can_be_stopped() {
     let text = "spinledger: 1\npipeline: stopped\nseed: 8\nsteps:\n  cool:\n    does: sample\n    lattice: { plugin: square, size: 48 }\n    model: ising\n    \
          update: metropolis\n    observe: [energy, magnetisation]\n    follow: temperature\n    scan: { temperature: [3.0, 2.5, 2.0] }\n    equilibrate: 20\n    \
-         every: 8\n    measure: 2000\n    chains: 2\n    keep: { states: last }\n";
+         every: 8\n    measure: 8000\n    chains: 2\n    keep: { states: last }\n";
     let fresh = Desk::new();
     fresh.write("stopped.yaml", text);
     fresh.run_pipeline("stopped.yaml", &[], 0);
@@ -172,7 +172,7 @@ fn a_sequence_can_be_stopped() {
     let mut stopped = 0;
     for _ in 0..20 {
         let mut child = desk.start(&["run", "stopped.yaml", "--quiet", "--workers", "2"]);
-        std::thread::sleep(Duration::from_millis(250));
+        std::thread::sleep(Duration::from_millis(120));
         let _ = kill_process_group(Pid::from_child(&child), Signal::TERM);
         match child.wait().unwrap().code() {
             Some(143) => stopped += 1,
@@ -180,7 +180,7 @@ fn a_sequence_can_be_stopped() {
             _ => {}
         }
     }
-    assert!(stopped > 1, "{stopped} stops");
+    assert!(stopped > 0, "it was over before it could be stopped");
     desk.run_pipeline("stopped.yaml", &[], 0);
     assert!(desk.parquet("results") == fresh.parquet("results"), "stopped and undisturbed differ");
     let files = desk.parquet("results/stopped/cool");

@@ -197,7 +197,7 @@ impl Recorder<'_> {
         let mut looked = false;
         for block in due {
             let end = block.first + block.rows;
-            let begun = Begun { clock: Instant::now(), time: spinledger_ledger::now(), swept: course.swept() };
+            let (clock, time) = (Instant::now(), spinledger_ledger::now());
             // Lanes whose record ends in the block, by number.
             let mut lanes: Vec<(usize, BlockData)> = Vec::new();
             for (lane, rows) in covered.iter().enumerate().filter(|(_, rows)| **rows < end) {
@@ -206,6 +206,9 @@ impl Recorder<'_> {
             let next = |data: &BlockData| block.first + data.rows() as u64;
             let owed = &owed[owed.partition_point(|row| *row < block.first)..owed.partition_point(|row| *row < end)];
             let start = lanes.iter().map(|(_, data)| next(data)).chain(owed.first().copied()).min().unwrap_or(end);
+            // A state that was saved between two rows has sweeps behind it that no record counts yet.
+            let before = start.checked_sub(1).map_or(0, |row| course.sweeps_at(row));
+            let begun = Begun { clock, time, swept: course.swept().min(before) };
             // Where blocks are on record, the chains are run no further than to what is owed.
             let stop = if lanes.is_empty() { owed.last().map_or(start, |row| row + 1) } else { end };
             for row in start..stop {
@@ -293,7 +296,10 @@ impl Recorder<'_> {
         let preimage = self.work.group.block_preimage(lane, block);
         // The time of a block is shared by the chains that were advanced together.
         let seconds = begun.clock.elapsed().as_secs_f64() / f64::from(dynamics.lanes);
-        let updates = (course.swept() - begun.swept).saturating_mul(course.updates_per_chain());
+        // Up to the last row: what was swept behind it belongs to the next.
+        let last = (block.first + block.rows).saturating_sub(1);
+        let swept = course.swept().min(course.sweeps_at(last));
+        let updates = swept.saturating_sub(begun.swept).saturating_mul(course.updates_per_chain());
         let mut provenance = self.provenance(&begun.time);
         provenance.seconds = seconds;
         provenance.updates = updates;
