@@ -8,19 +8,27 @@
 //! `README.md` fixes the order of visits and draws, and says where Metropolis departs from the textbook and why.
 #![deny(unsafe_code)]
 
+mod bytes;
 mod group;
 mod heat_bath;
 mod kind;
 mod landscape;
+mod lines;
 mod metropolis;
+mod ordered;
 mod plan;
+mod rows;
 mod rule;
+#[allow(unsafe_code)]
+mod simd;
 mod source;
+mod stretches;
 mod sweep;
 mod tally;
 #[cfg(test)]
 mod tests;
 mod two;
+mod vector;
 
 use heat_bath::HeatBath;
 use metropolis::Metropolis;
