@@ -44,6 +44,8 @@ mod stretches;
 mod sweep;
 #[path = "../src/tally.rs"]
 mod tally;
+#[path = "../src/together.rs"]
+mod together;
 #[path = "../src/two.rs"]
 mod two;
 #[path = "../src/vector.rs"]
@@ -89,8 +91,8 @@ impl Lattice for Rings {
 
     fn build(&self, builder: &mut LatticeBuilder) -> Result<()> {
         let mut stream = Xoshiro::from_key(&StreamKey::from_text("rings"));
-        for site in 0..self.0 {
-            builder.site(&[site as f64], 0);
+        for _ in 0..self.0 {
+            builder.site(&[], 0);
         }
         let class = builder.class("first");
         let mut order: Vec<u32> = (0..self.0 as u32).collect();

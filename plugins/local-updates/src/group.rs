@@ -8,7 +8,7 @@ use crate::rows::Rows;
 use crate::rule::Rule;
 use crate::simd::Level;
 use crate::source::Source;
-use crate::sweep;
+use crate::sweep::{self, Wide};
 use crate::tally::Tally;
 use crate::two::Outcome;
 use spinledger_sdk::{Error, Host, Parameter, Prepare, Result, Spins, Tallies, UpdateInstance, View};
@@ -37,6 +37,7 @@ pub(crate) struct Group<'a, R> {
     /// Site s of a chain is byte `s * lanes + lane`, pinned sites after free ones; with `rows` it is where they say.
     states: Vec<u8>,
     rows: Option<Rows>,
+    wide: Option<Wide>,
     source: Source,
     tally: Tally,
 }
@@ -83,8 +84,12 @@ impl<'a, R: Rule> Group<'a, R> {
         if let Some(rows) = &rows {
             states = rows.ordered.taken_from(&states);
         }
+        let wide = match level {
+            Some(level) if lanes == LANES_TOGETHER && landscape.states() == 2 => Some(Wide::new(&plan, level)),
+            _ => None,
+        };
         let source = Source::new(lanes, &prepare.lane_keys, &prepare.group_key);
-        Ok(Group { rule, host: prepare.host, landscape, plan, lanes, states, rows, source, tally })
+        Ok(Group { rule, host: prepare.host, landscape, plan, lanes, states, rows, wide, source, tally })
     }
 
     /// Whether sweeps go by vectors along rows.
@@ -208,6 +213,7 @@ impl<R: Rule> UpdateInstance for Group<'_, R> {
                     states: &mut self.states,
                     source: &mut self.source,
                     tally: &mut self.tally,
+                    wide: self.wide.as_ref(),
                 };
                 stage.visit(run)?;
             }

@@ -27,6 +27,7 @@ mod sweep;
 mod tally;
 #[cfg(test)]
 mod tests;
+mod together;
 mod two;
 mod vector;
 

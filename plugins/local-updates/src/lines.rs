@@ -30,6 +30,12 @@ pub(crate) struct Lines {
     pub(crate) rank: [u8; WIDTH],
     /// Change of energy in units, plus [`BIAS`].
     pub(crate) change: [u8; WIDTH],
+    /// The same plus no more than makes all of them positive or 0, so that bytes hold sums of several.
+    pub(crate) small: [u8; WIDTH],
+    /// What is added there.
+    pub(crate) small_bias: i64,
+    /// Of how many sums of `small` bytes hold the sum; at least 1.
+    pub(crate) room: usize,
 }
 
 impl Lines {
@@ -52,6 +58,9 @@ impl Lines {
             different: sorted.len(),
             rank: [0; WIDTH],
             change: [0; WIDTH],
+            small: [0; WIDTH],
+            small_bias: 0,
+            room: 255,
         };
         lines.limits[..sorted.len()].copy_from_slice(&sorted);
         for (number, Entry { limit, change }) in table.iter().enumerate() {
@@ -68,6 +77,13 @@ impl Lines {
             }
             lines.change[number] = biased as u8;
         }
+        let least = lines.change[..lines.count].iter().copied().min().unwrap_or(0);
+        lines.small_bias = BIAS - i64::from(least);
+        for (small, change) in lines.small.iter_mut().zip(&lines.change[..lines.count]) {
+            *small = change - least;
+        }
+        let most = lines.small.iter().copied().max().unwrap_or(0);
+        lines.room = 255 / usize::from(most.max(1));
         Some(lines)
     }
 

@@ -212,16 +212,15 @@ mod x86 {
         fn hits(self, lines: &Lines, words: &[u32; WIDTH]) -> Self {
             // Comparisons are of signed numbers: the upper bit is turned on both sides.
             let turn = instruction!(_mm256_set1_epi32(i32::MIN));
-            let turned = |place: usize| {
-                let eight: &[u32; 8] = &words.as_chunks().0[place];
-                instruction!(_mm256_xor_si256(_mm256_loadu_si256(eight.as_ptr().cast()), turn))
-            };
-            let words: [__m256i; 8] = std::array::from_fn(turned);
+            let mut turned = [turn; 8];
+            for (turned, eight) in turned.iter_mut().zip(words.as_chunks::<8>().0) {
+                *turned = instruction!(_mm256_xor_si256(_mm256_loadu_si256(eight.as_ptr().cast()), turn));
+            }
             // Minus one where a word is at or above a limit, that is, above its predecessor; limits are not 0.
             let mut ranks = [instruction!(_mm256_setzero_si256()); 8];
             for limit in lines.sorted() {
                 let before = instruction!(_mm256_set1_epi32((limit - 1).cast_signed() ^ i32::MIN));
-                for (rank, word) in ranks.iter_mut().zip(words) {
+                for (rank, word) in ranks.iter_mut().zip(turned) {
                     *rank = instruction!(_mm256_add_epi32(*rank, _mm256_cmpgt_epi32(word, before)));
                 }
             }

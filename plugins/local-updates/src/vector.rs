@@ -194,11 +194,11 @@ fn visit<R: Rule, B: Bytes, const NEIGHBOURS: usize>(
 
 /// Which visits flip.
 #[derive(Clone, Copy)]
-pub(crate) struct Flips<B> {
+struct Flips<B> {
     /// 1 or 0.
-    pub(crate) ones: B,
+    ones: B,
     /// Change of energy in units with [`BIAS`], 0 where there is none.
-    pub(crate) change: B,
+    change: B,
 }
 
 impl<B: Bytes> Flips<B> {
@@ -210,14 +210,20 @@ impl<B: Bytes> Flips<B> {
 
 /// Decides 64 visits: number of neighbours in state 1, own state, words.
 #[inline(always)]
-pub(crate) fn flips<R: Rule, B: Bytes>(lines: &Lines, code: B, state: B, words: &[u32; WIDTH]) -> Flips<B> {
+fn flips<R: Rule, B: Bytes>(lines: &Lines, code: B, state: B, words: &[u32; WIDTH]) -> Flips<B> {
+    let (line, ones) = decided::<R, B>(lines, code, state, words);
+    Flips { ones, change: line.look_up(lines, &lines.change).where_one(ones) }
+}
+
+/// Numbers of lines, and 1 where the state changes, else 0.
+#[inline(always)]
+pub(crate) fn decided<R: Rule, B: Bytes>(lines: &Lines, code: B, state: B, words: &[u32; WIDTH]) -> (B, B) {
     let line = code.plus(code).plus(state);
     let hits = line.hits(lines, words);
     // The rule as a sum of bits: a, b times the state, and the hit.
     let a = R::toggled(0, 0);
     let b = R::toggled(1, 0) ^ 1 ^ a;
-    let ones = hits.xor(B::splat(a)).xor(state.and(B::splat(b)));
-    Flips { ones, change: line.look_up(lines, &lines.change).where_one(ones) }
+    (line, hits.xor(B::splat(a)).xor(state.and(B::splat(b))))
 }
 
 /// Visits of patches, one after the other.

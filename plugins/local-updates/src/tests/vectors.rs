@@ -118,3 +118,12 @@ fn fields_and_couplings() {
     case::<Square, Ising>(lattice, r#"{"coupling": 0.3}"#, 1, None);
     case::<Square, Ising>(lattice, r#"{"field": 0.1}"#, 1, None);
 }
+
+#[test]
+fn chains_side_by_side() {
+    case::<Square, Ising>(r#"{"size": 6}"#, "{}", 64, Some(false));
+    case::<Square, Ising>(r#"{"size": [5, 7], "boundary": "free"}"#, r#"{"field": 0.25}"#, 64, Some(false));
+    case::<Square, Ising>(r#"{"size": [4, 5], "boundary": "plus"}"#, r#"{"field": 0.3}"#, 64, Some(false));
+    case::<Triangular, Ising>(r#"{"size": [3, 40]}"#, r#"{"coupling": -1}"#, 64, Some(false));
+    case::<Cubic, Ising>(r#"{"size": 4}"#, r#"{"coupling": 0.5}"#, 64, Some(false));
+}
