@@ -80,6 +80,7 @@ struct Rings(usize);
 impl Lattice for Rings {
     const SPEC: LatticeSpec = LatticeSpec {
         name: "rings",
+        dimension: 1,
         size: "size",
         parameters: &[Parameter::required("size", kinds::COUNT, "Sites.")],
         ..LatticeSpec::EMPTY
@@ -91,8 +92,9 @@ impl Lattice for Rings {
 
     fn build(&self, builder: &mut LatticeBuilder) -> Result<()> {
         let mut stream = Xoshiro::from_key(&StreamKey::from_text("rings"));
-        for _ in 0..self.0 {
-            builder.site(&[], 0);
+        builder.geometry(&[vec![1.0]], &[self.0], &[false]);
+        for site in 0..self.0 {
+            builder.site(&[site as f64], 0);
         }
         let class = builder.class("first");
         let mut order: Vec<u32> = (0..self.0 as u32).collect();

@@ -5,6 +5,9 @@
 //! neighbours and one at the table; other sites are computed directly (`landscape.rs`). A group is one chain, or 64 chains whose states lie
 //! side by side (`group.rs`).
 //!
+//! Two states in plain surroundings go 64 at a time: along rows (`rows.rs`, `stretches.rs`, `ordered.rs`, `vector.rs`), or side by side
+//! (`together.rs`), with the instructions that the processor has (`bytes.rs`, `simd.rs`).
+//!
 //! `README.md` fixes the order of visits and draws, and says where Metropolis departs from the textbook and why.
 #![deny(unsafe_code)]
 

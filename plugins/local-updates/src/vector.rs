@@ -238,7 +238,7 @@ fn patch<R: Rule>(
     for Patch { visit, single } in patches {
         let kind = &plan.kinds[single.kind as usize];
         let star = &plan.stars[single.stars..][..kind.width];
-        add(outcome, two::visit::<R>(kind, star, &words[visit - done..][..1], states));
+        two::visit_one::<R>(kind, star, words[visit - done], states, outcome);
     }
 }
 
