@@ -7,9 +7,6 @@ use crate::rule::Entry;
 /// Most lines of such a table.
 pub(crate) const MOST: usize = 32;
 
-/// What is added to changes of energy, counted in units, so that bytes hold them.
-pub(crate) const BIAS: i64 = 128;
-
 /// Largest power of two, up or down, that a unit may be: far from where doubles end.
 const REACH: i32 = 200;
 
@@ -28,9 +25,7 @@ pub(crate) struct Lines {
     different: usize,
     /// A word is below the limit where fewer limits than this, of [`Lines::sorted`], are at or below it.
     pub(crate) rank: [u8; WIDTH],
-    /// Change of energy in units, plus [`BIAS`].
-    pub(crate) change: [u8; WIDTH],
-    /// The same plus no more than makes all of them positive or 0, so that bytes hold sums of several.
+    /// Change of energy in units, plus what makes all of them positive or 0, so that bytes hold sums of several.
     pub(crate) small: [u8; WIDTH],
     /// What is added there.
     pub(crate) small_bias: i64,
@@ -57,11 +52,16 @@ impl Lines {
             limits: [0; MOST],
             different: sorted.len(),
             rank: [0; WIDTH],
-            change: [0; WIDTH],
             small: [0; WIDTH],
             small_bias: 0,
             room: 255,
         };
+        let units = table.iter().map(|line| line.change / unit);
+        let least = units.clone().fold(0.0, f64::min);
+        if units.fold(0.0, f64::max) - least > 255.0 {
+            return None;
+        }
+        lines.small_bias = -least as i64;
         lines.limits[..sorted.len()].copy_from_slice(&sorted);
         for (number, Entry { limit, change }) in table.iter().enumerate() {
             lines.last[number] = limit.saturating_sub(1) as u32;
@@ -71,20 +71,26 @@ impl Lines {
                 // Limits that 32 bits do not hold are above every word.
                 limit => 1 + sorted.iter().filter(|other| u64::from(**other) < limit).count() as u8,
             };
-            let biased = change / unit + BIAS as f64;
-            if !(0.0..=255.0).contains(&biased) {
-                return None;
-            }
-            lines.change[number] = biased as u8;
+            lines.small[number] = (change / unit - least) as u8;
         }
-        let least = lines.change[..lines.count].iter().copied().min().unwrap_or(0);
-        lines.small_bias = BIAS - i64::from(least);
-        for (small, change) in lines.small.iter_mut().zip(&lines.change[..lines.count]) {
-            *small = change - least;
-        }
-        let most = lines.small.iter().copied().max().unwrap_or(0);
-        lines.room = 255 / usize::from(most.max(1));
+        lines.find_room();
         Some(lines)
+    }
+
+    /// Adds more to the changes, for tables that are summed together; none where bytes do not hold that.
+    pub(crate) fn biased(mut self, bias: i64) -> Option<Self> {
+        let more = u8::try_from(bias - self.small_bias).ok()?;
+        for small in &mut self.small[..self.count] {
+            *small = small.checked_add(more)?;
+        }
+        self.small_bias = bias;
+        self.find_room();
+        Some(self)
+    }
+
+    fn find_room(&mut self) {
+        let most = self.small.iter().copied().max().unwrap_or(0);
+        self.room = 255 / usize::from(most.max(1));
     }
 
     /// Different limits between 0 and 2^32, ascending.

@@ -20,6 +20,8 @@ pub(crate) struct Rows {
     /// For each kind.
     lines: Vec<Option<Lines>>,
     unit: f64,
+    /// What is added to each change, in units.
+    bias: i64,
     /// Largest change of energy of a visit.
     most: f64,
     level: Level,
@@ -32,6 +34,8 @@ impl Rows {
         let graph = &landscape.problem.graph;
         let unit = unit(plan.kinds.iter().flat_map(|kind| &kind.table))?;
         let lines: Vec<Option<Lines>> = plan.kinds.iter().map(|kind| Lines::new(kind, unit)).collect();
+        let bias = lines.iter().flatten().map(|lines| lines.small_bias).max()?;
+        let lines: Vec<Option<Lines>> = lines.into_iter().map(|lines| lines?.biased(bias)).collect();
         let ordered = Ordered::new(plan, graph.sites, graph.total)?;
         let energy = &landscape.problem.energy;
         let mut end = 0;
@@ -48,7 +52,7 @@ impl Rows {
             Some(stretches) => {
                 let changes = plan.kinds.iter().flat_map(|kind| &kind.table).map(|line| line.change.abs());
                 let most = changes.fold(0.0, f64::max);
-                Some(Rows { ordered, stretches, lines, unit, most, level })
+                Some(Rows { ordered, stretches, lines, unit, bias, most, level })
             }
             None => {
                 plan.stars = old;
@@ -68,7 +72,16 @@ impl Rows {
         if !is_exact(energy, self.unit, plan.sites.len(), self.most) {
             return None;
         }
-        let Rows { stretches, lines, unit, .. } = self;
-        Some(self.level.run(Sweep { plan, stretches, lines, unit: *unit, states, source, rule: PhantomData::<R> }))
+        let Rows { stretches, lines, unit, bias, .. } = self;
+        Some(self.level.run(Sweep {
+            plan,
+            stretches,
+            lines,
+            unit: *unit,
+            bias: *bias,
+            states,
+            source,
+            rule: PhantomData::<R>,
+        }))
     }
 }

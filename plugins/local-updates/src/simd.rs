@@ -337,14 +337,12 @@ mod x86 {
             let high: &[u32; 16] = &last.as_chunks().0[1];
             let high = instruction!(_mm512_loadu_si512(high.as_ptr().cast()));
             let mut hits = 0;
-            for (part, words) in words.as_chunks::<16>().0.iter().enumerate() {
-                let sixteen = match part {
-                    0 => instruction!(_mm512_extracti32x4_epi32::<0>(self.0)),
-                    1 => instruction!(_mm512_extracti32x4_epi32::<1>(self.0)),
-                    2 => instruction!(_mm512_extracti32x4_epi32::<2>(self.0)),
-                    _ => instruction!(_mm512_extracti32x4_epi32::<3>(self.0)),
-                };
-                let keys = instruction!(_mm512_cvtepu8_epi32(sixteen));
+            // By way of memory: widening from there is one step, from parts of a register two, on the unit that is the busiest.
+            let mut numbers = [0; WIDTH];
+            self.store(&mut numbers);
+            let parts = words.as_chunks::<16>().0.iter().zip(numbers.as_chunks::<16>().0);
+            for (part, (words, numbers)) in parts.enumerate() {
+                let keys = instruction!(_mm512_cvtepu8_epi32(_mm_loadu_si128(numbers.as_ptr().cast())));
                 let limits = instruction!(_mm512_permutex2var_epi32(low, keys, high));
                 let words = instruction!(_mm512_loadu_si512(words.as_ptr().cast()));
                 hits |= u64::from(instruction!(_mm512_cmple_epu32_mask(words, limits))) << (16 * part);

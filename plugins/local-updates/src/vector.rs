@@ -4,7 +4,7 @@
 //! Energies are counted in whole units, which may be added in any order (`lines.rs`).
 
 use crate::bytes::{Bytes, WIDTH, take};
-use crate::lines::{BIAS, Lines};
+use crate::lines::Lines;
 use crate::plan::Plan;
 use crate::rule::Rule;
 use crate::simd::Work;
@@ -20,6 +20,8 @@ pub(crate) struct Sweep<'s, R> {
     /// Of each kind that is in a stretch.
     pub(crate) lines: &'s [Option<Lines>],
     pub(crate) unit: f64,
+    /// What is added to each change, in units.
+    pub(crate) bias: i64,
     pub(crate) states: &'s mut [u8],
     pub(crate) source: &'s mut Source,
     pub(crate) rule: PhantomData<R>,
@@ -29,8 +31,16 @@ pub(crate) struct Sweep<'s, R> {
 #[derive(Clone, Copy)]
 struct Sums<B: Bytes> {
     flips: B::Total,
-    /// In units, with [`BIAS`] for each flip.
+    /// In units, with the bias for each flip.
     change: B::Total,
+}
+
+impl<B: Bytes> Sums<B> {
+    #[inline(always)]
+    fn add(&mut self, flips: Flips<B>) {
+        self.flips = flips.ones.add_to(self.flips);
+        self.change = flips.change.add_to(self.change);
+    }
 }
 
 impl<R: Rule> Work for Sweep<'_, R> {
@@ -59,7 +69,7 @@ impl<R: Rule> Work for Sweep<'_, R> {
             }
         }
         let flips = B::count(sums.flips);
-        let units = B::count(sums.change).cast_signed() - BIAS * flips.cast_signed();
+        let units = B::count(sums.change).cast_signed() - self.bias * flips.cast_signed();
         Outcome { flips: flips + singles.flips, change: units as f64 * self.unit + singles.change }
     }
 }
@@ -101,30 +111,25 @@ impl<R: Rule> Sweep<'_, R> {
             let (mut blocks, tail) = words.as_chunks::<WIDTH>();
             while let [block, later @ ..] = blocks {
                 let until = patches.first().map_or(stretch.count, |patch| patch.visit);
-                let whole = blocks.len().min((until - done) / WIDTH);
+                // As many at once as bytes hold the sums of.
+                let whole = blocks.len().min((until - done) / WIDTH).min(lines.room);
                 if whole > 0 {
                     let (these, later) = blocks.split_at(whole);
-                    let mut local = *sums;
+                    let mut sum = Flips { ones: B::splat(0), change: B::splat(0) };
                     for block in these {
-                        visit::<R, B, NEIGHBOURS>(
-                            stretch,
-                            starts,
-                            lines,
-                            done,
-                            u64::MAX,
-                            block,
-                            self.states,
-                            &mut local,
-                        );
+                        let all = u64::MAX;
+                        let flips = visit::<R, B, NEIGHBOURS>(stretch, starts, lines, done, all, block, self.states);
+                        sum = Flips { ones: sum.ones.plus(flips.ones), change: sum.change.plus(flips.change) };
                         done += WIDTH;
                     }
-                    *sums = local;
+                    sums.add(sum);
                     blocks = later;
                     continue;
                 }
                 blocks = later;
                 let here = upto(&mut patches, done + WIDTH);
-                visit::<R, B, NEIGHBOURS>(stretch, starts, lines, done, mask(here, done), block, self.states, sums);
+                let mask = mask(here, done);
+                sums.add(visit::<R, B, NEIGHBOURS>(stretch, starts, lines, done, mask, block, self.states));
                 if !here.is_empty() {
                     patch::<R>(self.plan, here, done, block, self.states, singles);
                 }
@@ -135,7 +140,7 @@ impl<R: Rule> Sweep<'_, R> {
                 block[..tail.len()].copy_from_slice(tail);
                 let here = upto(&mut patches, done + tail.len());
                 let mask = mask(here, done) & !(u64::MAX << tail.len());
-                visit::<R, B, NEIGHBOURS>(stretch, starts, lines, done, mask, &block, self.states, sums);
+                sums.add(visit::<R, B, NEIGHBOURS>(stretch, starts, lines, done, mask, &block, self.states));
                 patch::<R>(self.plan, here, done, &block, self.states, singles);
                 done += tail.len();
             }
@@ -159,7 +164,6 @@ fn upto<'p>(patches: &mut &'p [Patch], end: usize) -> &'p [Patch] {
 }
 
 /// Visits of a stretch from `done` on, where the mask has a bit.
-#[expect(clippy::too_many_arguments, reason = "what it takes, in registers")]
 #[inline(always)]
 fn visit<R: Rule, B: Bytes, const NEIGHBOURS: usize>(
     stretch: &Stretch,
@@ -169,11 +173,11 @@ fn visit<R: Rule, B: Bytes, const NEIGHBOURS: usize>(
     mask: u64,
     words: &[u32; WIDTH],
     states: &mut [u8],
-    sums: &mut Sums<B>,
-) {
+) -> Flips<B> {
+    let nothing = Flips { ones: B::splat(0), change: B::splat(0) };
     // Without a bit there might be nothing where the neighbours would be.
     if mask == 0 {
-        return;
+        return nothing;
     }
     let mut code = B::splat(0);
     for start in starts {
@@ -182,14 +186,12 @@ fn visit<R: Rule, B: Bytes, const NEIGHBOURS: usize>(
             code = code.plus(B::load(row));
         }
     }
-    if let Some(row) = states[stretch.first + done..].first_chunk_mut() {
-        let state = B::load(row);
-        let flips = flips::<R, B>(lines, code, state, words);
-        let flips = if mask == u64::MAX { flips } else { flips.only(mask) };
-        state.xor(flips.ones).store(row);
-        sums.flips = flips.ones.add_to(sums.flips);
-        sums.change = flips.change.add_to(sums.change);
-    }
+    let Some(row) = states[stretch.first + done..].first_chunk_mut() else { return nothing };
+    let state = B::load(row);
+    let flips = flips::<R, B>(lines, code, state, words);
+    let flips = if mask == u64::MAX { flips } else { flips.only(mask) };
+    state.xor(flips.ones).store(row);
+    flips
 }
 
 /// Which visits flip.
@@ -197,7 +199,7 @@ fn visit<R: Rule, B: Bytes, const NEIGHBOURS: usize>(
 struct Flips<B> {
     /// 1 or 0.
     ones: B,
-    /// Change of energy in units with [`BIAS`], 0 where there is none.
+    /// Change of energy in units with the bias, 0 where there is none.
     change: B,
 }
 
@@ -212,7 +214,7 @@ impl<B: Bytes> Flips<B> {
 #[inline(always)]
 fn flips<R: Rule, B: Bytes>(lines: &Lines, code: B, state: B, words: &[u32; WIDTH]) -> Flips<B> {
     let (line, ones) = decided::<R, B>(lines, code, state, words);
-    Flips { ones, change: line.look_up(lines, &lines.change).where_one(ones) }
+    Flips { ones, change: line.look_up(lines, &lines.small).where_one(ones) }
 }
 
 /// Numbers of lines, and 1 where the state changes, else 0.
