@@ -160,3 +160,54 @@ impl Bytes for Plain {
         total
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::kind::Kind;
+    use crate::rule::{Entry, below};
+    use crate::simd::{Level, Work};
+
+    struct Looks<'l>(&'l Lines, [u8; WIDTH], [u32; WIDTH]);
+
+    impl Work for Looks<'_> {
+        type Output = [[u8; WIDTH]; 2];
+
+        #[inline(always)]
+        fn run<B: Bytes>(self) -> Self::Output {
+            let Looks(lines, numbers, words) = self;
+            let mut out = [[0; WIDTH]; 2];
+            let numbers = B::load(&numbers);
+            numbers.hits(lines, &words).store(&mut out[0]);
+            numbers.look_up(lines, &lines.small).store(&mut out[1]);
+            out
+        }
+    }
+
+    /// Words at limits and beside them, which random ones hardly ever are; tables of all lengths, with limits that are never or always met.
+    #[test]
+    fn words_at_limits_are_decided_alike() {
+        let limits = [0, 1, 2, 1 << 31, (1 << 31) + 1, (1 << 32) - 1, 1 << 32, 0x1234_5678];
+        let words =
+            [0, 1, 2, 3, 0x7fff_ffff, 0x8000_0000, 0x8000_0001, 0xffff_fffe, 0xffff_ffff, 0x1234_5677, 0x1234_5678];
+        for count in [2, 10, 16, 18, 26, 32] {
+            for turn in 0..limits.len() {
+                let entry = |line: usize| Entry { limit: limits[(line + turn) % 8], change: line as f64 - 7.0 };
+                let table: Vec<Entry> = (0..count).map(entry).collect();
+                let kind = Kind { width: count / 2, keys: Vec::new(), plain: true, lines: 2, table };
+                let lines = Lines::new(&kind, 1.0).expect("a table that fits");
+                for start in 0..count * words.len() {
+                    let numbers = std::array::from_fn(|place| ((start + place) % count) as u8);
+                    let words: [u32; WIDTH] = std::array::from_fn(|place| words[(start / count + place) % words.len()]);
+                    let expected: [[u8; WIDTH]; 2] = [
+                        std::array::from_fn(|place| below(words[place], kind.table[numbers[place] as usize].limit)),
+                        std::array::from_fn(|place| lines.small[numbers[place] as usize]),
+                    ];
+                    for level in Level::ALL.into_iter().filter(|level| level.is_there()) {
+                        assert_eq!(level.run(Looks(&lines, numbers, words)), expected, "{level:?}, {count} lines");
+                    }
+                }
+            }
+        }
+    }
+}
