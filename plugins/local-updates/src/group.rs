@@ -2,11 +2,15 @@
 
 use crate::kind::Budget;
 use crate::landscape::{Landscape, States};
+use crate::ordered::MARGIN;
 use crate::plan::Plan;
+use crate::rows::Rows;
 use crate::rule::Rule;
+use crate::simd::Level;
 use crate::source::Source;
-use crate::sweep;
+use crate::sweep::{self, Wide};
 use crate::tally::Tally;
+use crate::two::Outcome;
 use spinledger_sdk::{Error, Host, Parameter, Prepare, Result, Spins, Tallies, UpdateInstance, View};
 
 /// Chains of a group that is advanced together.
@@ -30,8 +34,10 @@ pub(crate) struct Group<'a, R> {
     landscape: Landscape<'a>,
     plan: Plan,
     lanes: usize,
-    /// Site s of a chain is byte `s * lanes + lane`; pinned sites after free ones.
+    /// Site s of a chain is byte `s * lanes + lane`, pinned sites after free ones; with `rows` it is where they say.
     states: Vec<u8>,
+    rows: Option<Rows>,
+    wide: Option<Wide>,
     source: Source,
     tally: Tally,
 }
@@ -42,11 +48,17 @@ impl<'a, R: Rule> Group<'a, R> {
     /// # Errors
     /// Where spins are vectors, the number of chains is not that of the parameter, or callbacks of the model fail.
     pub(crate) fn new(rule: R, lanes: usize, prepare: Prepare<'a>) -> Result<Self> {
-        Self::with_budget(rule, lanes, prepare, Budget::STANDARD)
+        Self::with(rule, lanes, prepare, Budget::STANDARD, Some(Level::chosen()?))
     }
 
-    /// The same with more or less room for tables.
-    pub(crate) fn with_budget(rule: R, lanes: usize, prepare: Prepare<'a>, budget: Budget) -> Result<Self> {
+    /// The same with more or less room for tables, and with vectors of a level or none.
+    pub(crate) fn with(
+        rule: R,
+        lanes: usize,
+        prepare: Prepare<'a>,
+        budget: Budget,
+        level: Option<Level>,
+    ) -> Result<Self> {
         if lanes != 1 && lanes != LANES_TOGETHER {
             return Err(Error::new(format!("`lanes` is 1 or {LANES_TOGETHER}, not {lanes}")));
         }
@@ -57,7 +69,7 @@ impl<'a, R: Rule> Group<'a, R> {
             )));
         }
         let landscape = Landscape::new(prepare.problem)?;
-        let plan = Plan::new(&landscape, &rule, budget);
+        let mut plan = Plan::new(&landscape, &rule, budget);
         let (total, sites) = (landscape.problem.graph.total, landscape.problem.graph.sites);
         let mut states = vec![0; total * lanes];
         for (chains, pinned) in states[sites * lanes..].chunks_mut(lanes).zip(landscape.problem.energy.pinned_states) {
@@ -65,12 +77,48 @@ impl<'a, R: Rule> Group<'a, R> {
         }
         let mut tally = Tally::new(lanes);
         tally.energy.fill(landscape.total(States { data: &states, lanes, lane: 0 })?);
+        let rows = match level {
+            Some(level) if lanes == 1 && landscape.states() == 2 => Rows::new(&landscape, &mut plan, level),
+            _ => None,
+        };
+        if let Some(rows) = &rows {
+            states = rows.ordered.taken_from(&states);
+        }
+        let wide = match level {
+            Some(level) if lanes == LANES_TOGETHER && landscape.states() == 2 => Some(Wide::new(&plan, level)),
+            _ => None,
+        };
         let source = Source::new(lanes, &prepare.lane_keys, &prepare.group_key);
-        Ok(Group { rule, host: prepare.host, landscape, plan, lanes, states, source, tally })
+        Ok(Group { rule, host: prepare.host, landscape, plan, lanes, states, rows, wide, source, tally })
     }
 
-    fn chain(&self, lane: usize) -> States<'_> {
-        States { data: &self.states, lanes: self.lanes, lane }
+    /// Whether sweeps go by vectors along rows.
+    #[cfg(test)]
+    pub(crate) fn is_in_rows(&self) -> bool {
+        self.rows.is_some()
+    }
+
+    /// The states of a chain in order of sites.
+    fn chain(&mut self, lane: usize) -> States<'_> {
+        match &mut self.rows {
+            Some(rows) => States { data: rows.ordered.show(&self.states), lanes: 1, lane: 0 },
+            None => States { data: &self.states, lanes: self.lanes, lane },
+        }
+    }
+
+    /// Where the state of a site is.
+    #[inline]
+    fn place(&self, site: usize, lane: usize) -> usize {
+        match &self.rows {
+            Some(rows) => rows.ordered.place(site),
+            None => site * self.lanes + lane,
+        }
+    }
+
+    /// States of all chains at free sites, in no matter what order.
+    fn free(&self) -> &[u8] {
+        let first = if self.rows.is_some() { MARGIN } else { 0 };
+        &self.states[first..][..self.sites() * self.lanes]
     }
 
     fn sites(&self) -> usize {
@@ -83,11 +131,18 @@ impl<'a, R: Rule> Group<'a, R> {
         if values.is_empty() {
             return None;
         }
-        let free = &self.states[..self.sites() * self.lanes];
+        let free = self.free();
         let mut counts = vec![0_u64; values.len()];
         if let ([zeros, ones], 1) = (&mut counts[..], self.lanes) {
-            // A sum of bytes, which compilers vectorise.
-            *ones = free.iter().map(|s| u64::from(*s)).sum();
+            // Sums of bytes, which compilers vectorise; 255 ones fit in a byte.
+            for part in free.chunks(255 * 64) {
+                let (rows, rest) = part.as_chunks::<64>();
+                let mut sums = [0_u8; 64];
+                for row in rows {
+                    sums.iter_mut().zip(row).for_each(|(sum, state)| *sum += state);
+                }
+                *ones += sums.iter().chain(rest).map(|sum| u64::from(*sum)).sum::<u64>();
+            }
             *zeros = free.len() as u64 - *ones;
         } else {
             free.iter().skip(lane).step_by(self.lanes).for_each(|s| counts[*s as usize] += 1);
@@ -118,17 +173,20 @@ impl<R: Rule> UpdateInstance for Group<'_, R> {
         }
         // Pinned sites keep the states that the Hamiltonian gives them.
         for site in 0..self.sites() {
-            self.states[site * self.lanes + lane] = view.state(site);
+            let place = self.place(site, lane);
+            self.states[place] = view.state(site);
         }
-        let chain = States { data: &self.states, lanes: self.lanes, lane };
+        let chain = match &mut self.rows {
+            Some(rows) => States { data: rows.ordered.show(&self.states), lanes: 1, lane: 0 },
+            None => States { data: &self.states, lanes: self.lanes, lane },
+        };
         self.tally.energy[lane] = self.landscape.total(chain)?;
         Ok(())
     }
 
     fn export(&self, lane: usize, spins: &mut Spins<'_>) {
         if let Spins::States(out) = spins {
-            let chain = self.chain(lane);
-            out.iter_mut().enumerate().for_each(|(site, state)| *state = chain.at(site));
+            out.iter_mut().enumerate().for_each(|(site, state)| *state = self.states[self.place(site, lane)]);
         }
     }
 
@@ -136,6 +194,15 @@ impl<R: Rule> UpdateInstance for Group<'_, R> {
         for _ in 0..count {
             if self.host.cancelled() {
                 return Err(Error::cancelled());
+            }
+            if let Some(rows) = &self.rows
+                && let Some(Outcome { flips, change }) =
+                    rows.sweep::<R>(&self.plan, self.tally.energy[0], &mut self.states, &mut self.source)
+            {
+                self.tally.energy[0] += change;
+                self.tally.accepted[0] += flips;
+                self.tally.proposed += self.plan.sites.len() as u64;
+                continue;
             }
             for run in &self.plan.runs {
                 let mut stage = sweep::Stage {
@@ -146,6 +213,7 @@ impl<R: Rule> UpdateInstance for Group<'_, R> {
                     states: &mut self.states,
                     source: &mut self.source,
                     tally: &mut self.tally,
+                    wide: self.wide.as_ref(),
                 };
                 stage.visit(run)?;
             }
@@ -167,21 +235,28 @@ impl<R: Rule> UpdateInstance for Group<'_, R> {
     }
 
     fn save(&self, out: &mut Vec<u8>) {
-        out.extend_from_slice(&self.states);
+        match &self.rows {
+            Some(rows) => out.extend(rows.ordered.in_order(&self.states)),
+            None => out.extend_from_slice(&self.states),
+        }
         self.tally.save(out);
         self.source.save(out);
     }
 
     fn restore(&mut self, bytes: &[u8]) -> Result<()> {
         let wrong = || Error::new("the saved state is of another lattice, model or number of chains");
-        let (states, rest) = bytes.split_at_checked(self.states.len()).ok_or_else(wrong)?;
+        let total = self.landscape.problem.graph.total;
+        let (states, rest) = bytes.split_at_checked(total * self.lanes).ok_or_else(wrong)?;
         if states.iter().any(|s| *s as usize >= self.landscape.states()) {
             return Err(wrong());
         }
         let (tally, source) = rest.split_at_checked(self.tally.saved_len()).ok_or_else(wrong)?;
         self.source.restore(source)?;
         self.tally.restore(tally)?;
-        self.states.copy_from_slice(states);
+        match &self.rows {
+            Some(rows) => self.states = rows.ordered.taken_from(states),
+            None => self.states.copy_from_slice(states),
+        }
         Ok(())
     }
 }

@@ -5,22 +5,34 @@
 //! neighbours and one at the table; other sites are computed directly (`landscape.rs`). A group is one chain, or 64 chains whose states lie
 //! side by side (`group.rs`).
 //!
+//! Two states in plain surroundings go 64 at a time: along rows (`rows.rs`, `stretches.rs`, `ordered.rs`, `vector.rs`), or side by side
+//! (`together.rs`), with the instructions that the processor has (`bytes.rs`, `simd.rs`).
+//!
 //! `README.md` fixes the order of visits and draws, and says where Metropolis departs from the textbook and why.
 #![deny(unsafe_code)]
 
+mod bytes;
 mod group;
 mod heat_bath;
 mod kind;
 mod landscape;
+mod lines;
 mod metropolis;
+mod ordered;
 mod plan;
+mod rows;
 mod rule;
+#[allow(unsafe_code)]
+mod simd;
 mod source;
+mod stretches;
 mod sweep;
 mod tally;
 #[cfg(test)]
 mod tests;
+mod together;
 mod two;
+mod vector;
 
 use heat_bath::HeatBath;
 use metropolis::Metropolis;

@@ -3,12 +3,16 @@
 use crate::group::LANES_TOGETHER;
 use crate::kind::Kind;
 use crate::landscape::{Landscape, States};
+use crate::lines::{Lines, unit};
 use crate::plan::{Plan, Run};
 use crate::rule::{Draw, Rule, proposed};
+use crate::simd::Level;
 use crate::source::Source;
 use crate::tally::Tally;
+use crate::together::Together;
 use crate::two::{self, Outcome};
 use spinledger_sdk::Result;
+use std::marker::PhantomData;
 
 /// Sites that are handed to a model's callbacks at once.
 const BATCH: usize = 64;
@@ -22,6 +26,26 @@ pub(crate) struct Stage<'s, 'a, R> {
     pub(crate) states: &'s mut [u8],
     pub(crate) source: &'s mut Source,
     pub(crate) tally: &'s mut Tally,
+    /// For 64 chains at once.
+    pub(crate) wide: Option<&'s Wide>,
+}
+
+/// Tables for 64 chains at once.
+pub(crate) struct Wide {
+    level: Level,
+    /// For each kind, with the unit of its energies.
+    lines: Vec<Option<(Lines, f64)>>,
+}
+
+impl Wide {
+    /// The tables of a plan.
+    pub(crate) fn new(plan: &Plan, level: Level) -> Self {
+        let one = |kind: &Kind| {
+            let unit = unit(kind.table.iter())?;
+            Some((Lines::new(kind, unit)?, unit))
+        };
+        Wide { level, lines: plan.kinds.iter().map(one).collect() }
+    }
 }
 
 impl<R: Rule> Stage<'_, '_, R> {
@@ -34,11 +58,12 @@ impl<R: Rule> Stage<'_, '_, R> {
         let Some(kind) = run.kind else {
             return sites.chunks(BATCH).try_for_each(|sites| self.compute(sites, run.soft));
         };
-        let kind = &self.plan.kinds[kind as usize];
+        let number = kind as usize;
+        let kind = &self.plan.kinds[number];
         let stars = &self.plan.stars[run.stars..][..run.count * kind.width];
         match (self.landscape.states(), self.lanes) {
             (2, 1) => self.two_states(kind, stars),
-            (2, _) => self.two_states_together(kind, stars),
+            (2, _) => self.two_states_together(number, kind, stars),
             _ => self.look_up(kind, stars),
         }
         Ok(())
@@ -63,7 +88,21 @@ impl<R: Rule> Stage<'_, '_, R> {
     }
 
     /// 64 chains of two states: a row of 64 words a site.
-    fn two_states_together(&mut self, kind: &Kind, stars: &[u32]) {
+    fn two_states_together(&mut self, number: usize, kind: &Kind, stars: &[u32]) {
+        if let Some(Wide { level, lines }) = self.wide
+            && let Some((lines, unit)) = &lines[number]
+        {
+            let outcomes = level.run(Together {
+                lines,
+                unit: *unit,
+                width: kind.width,
+                stars,
+                states: self.states,
+                source: self.source,
+                rule: PhantomData::<R>,
+            });
+            return self.note_all(outcomes);
+        }
         let mut outcomes = [Outcome::default(); LANES_TOGETHER];
         for star in stars.chunks_exact(kind.width) {
             // Draws come in multiples of 64 for two states, so that a row never crosses the end of the words drawn ahead.
@@ -71,6 +110,10 @@ impl<R: Rule> Stage<'_, '_, R> {
                 two::visit_together::<R>(kind, star, words, self.states, &mut outcomes);
             }
         }
+        self.note_all(outcomes);
+    }
+
+    fn note_all(&mut self, outcomes: [Outcome; LANES_TOGETHER]) {
         for (lane, Outcome { flips, change }) in outcomes.into_iter().enumerate() {
             self.tally.energy[lane] += change;
             self.tally.accepted[lane] += flips;

@@ -29,6 +29,14 @@ pub(crate) fn visit<R: Rule>(kind: &Kind, stars: &[u32], words: &[u32], states: 
     }
 }
 
+/// Visits the site of one star.
+#[inline]
+pub(crate) fn visit_one<R: Rule>(kind: &Kind, star: &[u32], word: u32, states: &mut [u8], outcome: &mut Outcome) {
+    let around = star[1..].iter().map(|n| states[*n as usize]);
+    let code = if kind.plain { around.map(usize::from).sum() } else { kind.code(2, around) };
+    step::<R>(&kind.table, code, star[0], word, states, outcome);
+}
+
 fn plain<R: Rule, const WIDTH: usize>(table: &[Entry], stars: &[u32], words: &[u32], states: &mut [u8]) -> Outcome {
     let mut outcome = Outcome::default();
     for (star, &word) in stars.as_chunks::<WIDTH>().0.iter().zip(words) {

@@ -74,19 +74,20 @@ impl Eight {
     #[inline]
     fn step(&mut self) -> [u64; LANES] {
         let mut block = [[0; LANES]];
-        self.steps(&mut block);
+        self.steps::<TOGETHER>(&mut block);
         block[0]
     }
 
-    /// Steps of every lane, a block each. Lane by lane through all blocks would be the same words; a pair of lanes goes through them together
-    /// and stays in registers meanwhile.
-    fn steps(&mut self, blocks: &mut [[u64; LANES]]) {
-        for first in (0..LANES).step_by(TOGETHER) {
-            let mut state: [[u64; TOGETHER]; 4] =
+    /// Steps of every lane, a block each. Lane by lane through all blocks would be the same words; as many lanes as a register holds go through
+    /// them together and stay in registers meanwhile.
+    #[inline(always)]
+    fn steps<const WIDTH: usize>(&mut self, blocks: &mut [[u64; LANES]]) {
+        for first in (0..LANES).step_by(WIDTH) {
+            let mut state: [[u64; WIDTH]; 4] =
                 std::array::from_fn(|word| std::array::from_fn(|lane| self.state[word][first + lane]));
             for block in &mut *blocks {
                 let [s0, s1, s2, s3] = &mut state;
-                for lane in 0..TOGETHER {
+                for lane in 0..WIDTH {
                     block[first + lane] = s0[lane].wrapping_add(s3[lane]).rotate_left(23).wrapping_add(s0[lane]);
                     let shifted = s1[lane] << 17;
                     s2[lane] ^= s0[lane];
@@ -98,7 +99,7 @@ impl Eight {
                 }
             }
             for (row, pair) in self.state.iter_mut().zip(state) {
-                row[first..first + TOGETHER].copy_from_slice(&pair);
+                row[first..first + WIDTH].copy_from_slice(&pair);
             }
         }
     }
@@ -137,6 +138,14 @@ impl Eight {
 
     /// Fills a slice with the next words.
     pub fn fill(&mut self, words: &mut [u64]) {
+        self.fill_wide::<TOGETHER>(words);
+    }
+
+    /// The same words, made by loops over `WIDTH` lanes (1, 2, 4 or 8). It is inlined, so that a caller that is compiled for wide registers gets
+    /// them here too.
+    #[inline(always)]
+    pub fn fill_wide<const WIDTH: usize>(&mut self, words: &mut [u64]) {
+        const { assert!(LANES.is_multiple_of(WIDTH), "lanes go together in equal parts") }
         let ahead = words.len().min((LANES - self.drawn) % LANES);
         let (head, rest) = words.split_at_mut(ahead);
         for word in head {
@@ -144,7 +153,7 @@ impl Eight {
         }
         let (blocks, tail) = rest.as_chunks_mut::<LANES>();
         if self.drawn == LANES {
-            self.steps(blocks);
+            self.steps::<WIDTH>(blocks);
         } else {
             // Only where a whole block waits, or the slice has ended.
             blocks.iter_mut().for_each(|block| *block = self.next_block());

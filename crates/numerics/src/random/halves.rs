@@ -57,6 +57,22 @@ impl Halves {
         &self.ready[first..self.used]
     }
 
+    /// Draws ahead if nothing is left of what was, as [`Halves::take`] would; for a caller that is compiled for wide registers, see
+    /// [`Eight::fill_wide`].
+    #[inline(always)]
+    pub fn draw_ahead<const WIDTH: usize>(&mut self) {
+        if self.used == AHEAD {
+            self.refill_wide::<WIDTH>();
+        }
+    }
+
+    /// Whether nothing is left of what was drawn ahead.
+    #[must_use]
+    #[inline]
+    pub fn is_used_up(&self) -> bool {
+        self.used == AHEAD
+    }
+
     /// The next `count` half words.
     ///
     /// # Panics
@@ -83,11 +99,19 @@ impl Halves {
 
     #[cold]
     fn refill(&mut self) {
-        // Whole words in bulk, then their halves: the same as one half word after the other, and faster.
-        let mut words = [0; AHEAD / 2];
-        self.stream.fill(&mut words);
-        for (halves, word) in self.ready.as_chunks_mut::<2>().0.iter_mut().zip(words) {
-            *halves = [word as u32, (word >> 32) as u32];
+        self.refill_wide::<2>();
+    }
+
+    #[inline(always)]
+    fn refill_wide<const WIDTH: usize>(&mut self) {
+        // Whole words in bulk, then their halves: the same as one half word after the other, and faster. A part at a time stays in the
+        // nearest cache.
+        for halves in self.ready.as_chunks_mut::<128>().0 {
+            let mut words = [0; 64];
+            self.stream.fill_wide::<WIDTH>(&mut words);
+            for (halves, word) in halves.as_chunks_mut::<2>().0.iter_mut().zip(words) {
+                *halves = [word as u32, (word >> 32) as u32];
+            }
         }
         self.used = 0;
     }
@@ -142,9 +166,13 @@ mod tests {
             let most = 1 + 37 * round % 300;
             let taken = halves.take(most).to_vec();
             assert!(!taken.is_empty() && taken.len() <= most);
+            if halves.is_used_up() {
+                halves.draw_ahead::<8>();
+            }
+            let wide = halves.take(most).to_vec();
             let few = halves.few(round % (Halves::FEW + 1)).to_vec();
             assert_eq!(few.len(), round % (Halves::FEW + 1));
-            taken.iter().chain(&few).for_each(|half| assert_eq!(*half, stream.next_u32()));
+            taken.iter().chain(&wide).chain(&few).for_each(|half| assert_eq!(*half, stream.next_u32()));
         }
     }
 

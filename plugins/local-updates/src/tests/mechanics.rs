@@ -6,6 +6,7 @@ use crate::heat_bath::{HeatBath, HeatBathRule};
 use crate::kind::Budget;
 use crate::metropolis::{Metropolis, MetropolisRule};
 use crate::rule::Rule;
+use crate::simd::Level;
 use spinledger_sdk::testing::params;
 use spinledger_sdk::{Spins, Update, UpdateInstance, View};
 
@@ -15,7 +16,8 @@ fn all() -> Vec<System> {
 
 fn start<'a, R: Rule>(system: &'a System, rule: R, lanes: usize, budget: Budget) -> Group<'a, R> {
     let prepare = system.bench.prepare(system.inverse_temperature, lanes, 5);
-    let mut group = Group::with_budget(rule, lanes, prepare, budget).expect("prepared");
+    let level = Some(Level::chosen().expect("a level"));
+    let mut group = Group::with(rule, lanes, prepare, budget, level).expect("prepared");
     for lane in 0..lanes {
         group.import(lane, &View::bytes(&system.bench.random_states(lane as u64))).expect("imported");
     }

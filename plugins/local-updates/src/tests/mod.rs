@@ -11,3 +11,4 @@ mod mechanics;
 mod models;
 
 mod systems;
+mod vectors;
