@@ -1,7 +1,7 @@
 //! Timing a rule in turn with plain code.
 
+use super::baseline::{Baseline, Plain};
 use super::named::Case;
-use super::plain::{Metropolis, Square, SwendsenWang, Wolff};
 use super::spread::Spread;
 use crate::failure::Failure;
 use serde::Serialize;
@@ -21,8 +21,6 @@ const FEWEST: usize = 5;
 const CLUSTERS: u64 = 8;
 /// Share of the time of a case for warming up, on top of it.
 const WARM: f64 = 0.2;
-/// Sides of the plain lattice.
-const SIDES: (usize, usize) = (8, 8192);
 /// Shortest time for a case, in seconds: rounds shorter than what this gives are lost in the resolution of the clock.
 pub const SHORTEST: f64 = 0.01;
 
@@ -45,18 +43,6 @@ pub enum Counted {
     Sites,
     /// Spins that were turned over.
     Flips,
-}
-
-/// Which plain version a rule is held against.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize)]
-#[serde(rename_all = "kebab-case")]
-pub enum Plain {
-    /// [`super::plain::Metropolis`], by visits.
-    Metropolis,
-    /// [`super::plain::Wolff`], by flips.
-    Wolff,
-    /// [`super::plain::SwendsenWang`], by sites.
-    SwendsenWang,
 }
 
 /// What was measured of a case.
@@ -194,60 +180,6 @@ fn flip_of(energy: &Energy, graph: &Graph) -> Option<f64> {
     match energy.values.as_slice() {
         [a, b] if a != b && graph.sites == graph.total => Some((a - b).abs()),
         _ => None,
-    }
-}
-
-/// Plain code at work.
-enum Baseline {
-    Metropolis(Metropolis),
-    Wolff(Wolff),
-    SwendsenWang(SwendsenWang),
-}
-
-impl Baseline {
-    /// The plain version of a rule, on a square of about as many sites as one chain has, so that it lives in a like part of the memory; at the same
-    /// temperature where the case is the same system, else where the square lattice orders.
-    fn of(dynamics: &Dynamics, sites: usize, key: &StreamKey) -> (Baseline, f64) {
-        let side = ((sites as f64).sqrt().round() as usize).clamp(SIDES.0, SIDES.1);
-        let coupling = dynamics.model.parameters.get("coupling").and_then(|value| value.as_f64());
-        let same = dynamics.lattice.identity.item == "square" && dynamics.model.identity.item == "ising";
-        let temperature = match coupling {
-            Some(j) if same && j != 0.0 => dynamics.temperature / j.abs(),
-            _ => spinledger_exact::closed::critical::square_ising(),
-        };
-        let (square, beta) = (Square::new(side, &key.derive("plain")), 1.0 / temperature);
-        let baseline = match dynamics.update[0].0.identity.item.as_str() {
-            "wolff" => Baseline::Wolff(Wolff::new(square, beta)),
-            "swendsen-wang" => Baseline::SwendsenWang(SwendsenWang::new(square, beta)),
-            _ => Baseline::Metropolis(Metropolis::new(square, beta)),
-        };
-        (baseline, temperature)
-    }
-
-    fn kind(&self) -> Plain {
-        match self {
-            Baseline::Metropolis(_) => Plain::Metropolis,
-            Baseline::Wolff(_) => Plain::Wolff,
-            Baseline::SwendsenWang(_) => Plain::SwendsenWang,
-        }
-    }
-
-    fn square(&self) -> &Square {
-        match self {
-            Baseline::Metropolis(rule) => &rule.square,
-            Baseline::Wolff(rule) => &rule.square,
-            Baseline::SwendsenWang(rule) => &rule.square,
-        }
-    }
-
-    /// So many sweeps; what they count for.
-    fn run(&mut self, count: u64) -> f64 {
-        match self {
-            Baseline::Metropolis(rule) => (0..count).for_each(|_| rule.sweep()),
-            Baseline::SwendsenWang(rule) => (0..count).for_each(|_| rule.sweep()),
-            Baseline::Wolff(rule) => return (0..count).map(|_| rule.cluster() as f64).sum(),
-        }
-        count as f64 * self.square().sites() as f64
     }
 }
 

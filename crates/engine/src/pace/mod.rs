@@ -7,12 +7,14 @@
 //! Absolute times are those of a machine in its present mood: other programs, temperature and neighbours on the same host move them by tens of
 //! percent. Ratios to the plain version, taken within the same fraction of a second, are what can be compared.
 
+mod baseline;
 mod measure;
 mod named;
 mod ordering;
 pub mod plain;
 mod spread;
 
-pub use measure::{Bench, Counted, Measured, Plain, SHORTEST, Settings};
+pub use baseline::Plain;
+pub use measure::{Bench, Counted, Measured, SHORTEST, Settings};
 pub use named::{Case, Named, Refused, admit, standard};
 pub use spread::Spread;
