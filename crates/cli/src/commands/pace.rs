@@ -129,7 +129,7 @@ fn row(case: &Case, measured: &Measured) -> Vec<String> {
         Counted::Sites => "sites",
         Counted::Flips => "flips",
     };
-    let percent = |part: f64| format!("{:.0}%", 100.0 * part + 0.0);
+    let percent = |part: f64| format!("{:.0}%", (100.0 * part).round() + 0.0);
     let (ratio, quartiles) = match measured.ratio {
         Some(Spread { low, median, high }) => (digits(median), format!("{} to {}", digits(low), digits(high))),
         None => ("-".into(), String::new()),
