@@ -650,6 +650,9 @@ typedef struct SlUpdate {
   int32_t (*restore)(void *instance, const uint8_t *data, size_t count, struct SlMessage *message);
   // Turns the adapting of step widths on (1) or off (0). Optional.
   int32_t (*adapt)(void *instance, int32_t on);
+  // Which of the rule's code runs for an instance, in a word or two for people (`portable`, `avx512`); UTF-8, valid until the next call on
+  // the instance. Nothing depends on it. Optional.
+  int32_t (*path)(const void *instance, struct SlText *path);
 } SlUpdate;
 
 // Functions of an observable.

@@ -144,6 +144,9 @@ pub struct SlUpdate {
     >,
     /// Turns the adapting of step widths on (1) or off (0). Optional.
     pub adapt: Option<unsafe extern "C" fn(instance: *mut c_void, on: i32) -> i32>,
+    /// Which of the rule's code runs for an instance, in a word or two for people (`portable`, `avx512`); UTF-8, valid until the next call on
+    /// the instance. Nothing depends on it. Optional.
+    pub path: Option<unsafe extern "C" fn(instance: *const c_void, path: *mut SlText) -> i32>,
 }
 
 /// Functions of an observable.

@@ -160,7 +160,7 @@ fn the_c_layout_is_the_rust_layout() {
         ("SlHost", "derive_key", offset_of!(SlHost, derive_key)),
         ("SlLibrary", "items", offset_of!(SlLibrary, items)),
         ("SlPrepare", "group_key", offset_of!(SlPrepare, group_key)),
-        ("SlUpdate", "adapt", offset_of!(SlUpdate, adapt)),
+        ("SlUpdate", "path", offset_of!(SlUpdate, path)),
         ("SlTallies", "spare", offset_of!(SlTallies, spare)),
         ("SlView", "length", offset_of!(SlView, length)),
     ];

@@ -26,6 +26,8 @@ pub(crate) enum Command {
     Trace(TraceArgs),
     /// List the plugins that are found, or document one
     Plugins(PluginsArgs),
+    /// Measure how fast update rules are on this machine
+    Pace(PaceArgs),
     /// Serve a runner (started by `run`)
     #[command(hide = true)]
     Worker(WorkerArgs),
@@ -154,6 +156,31 @@ pub(crate) struct PluginsArgs {
     /// The plugin to document
     pub(crate) name: Option<String>,
     /// Print manifests as JSON
+    #[arg(long)]
+    pub(crate) json: bool,
+}
+
+#[derive(Debug, ClapArgs)]
+pub(crate) struct PaceArgs {
+    /// A lattice as in a pipeline: `{ plugin: square, size: 512 }`; may be given several times [default, where another is named: this one]
+    #[arg(long, value_name = "LATTICE")]
+    pub(crate) lattice: Vec<String>,
+    /// A model: `ising`, `{ plugin: potts, q: 3 }`; may be given several times [default, where another is named: ising]
+    #[arg(long, value_name = "MODEL")]
+    pub(crate) model: Vec<String>,
+    /// A rule: `{ plugin: metropolis, lanes: 64 }`; may be given several times [default, where another is named: the standard rules that serve]
+    #[arg(long, value_name = "RULE")]
+    pub(crate) update: Vec<String>,
+    /// The temperature, k_B = 1 [default: near that of ordering where it is known, else 2.27]
+    #[arg(long, value_name = "T", allow_hyphen_values = true)]
+    pub(crate) temperature: Option<String>,
+    /// How long to measure each combination
+    #[arg(long, value_name = "SECONDS", default_value = "1", value_parser = seconds)]
+    pub(crate) seconds: f64,
+    /// Threads lent to the rule
+    #[arg(long, value_name = "N", default_value = "1", value_parser = clap::value_parser!(u16).range(1..=4096))]
+    pub(crate) threads: u16,
+    /// Print an event for each combination as JSON lines
     #[arg(long)]
     pub(crate) json: bool,
 }

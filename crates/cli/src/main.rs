@@ -19,6 +19,7 @@ fn main() -> ExitCode {
         args::Command::Print(args) => commands::print::print(&args),
         args::Command::Trace(args) => commands::trace::trace(&args),
         args::Command::Plugins(args) => commands::plugins::plugins(&args),
+        args::Command::Pace(args) => commands::pace::pace(&args),
         args::Command::Worker(args) => commands::worker::worker(&args),
     };
     match outcome {

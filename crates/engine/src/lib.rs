@@ -17,6 +17,7 @@ pub mod job;
 mod kept;
 mod line;
 mod loaded;
+pub mod pace;
 pub mod planning;
 mod pool;
 pub mod program;

@@ -70,7 +70,7 @@ fn plugin_problems(source: &Source, catalogue: &Catalogue) -> Vec<Problem> {
 }
 
 /// What step kinds find wrong beyond types.
-fn check(pipeline: &Pipeline, vocabulary: &Vocabulary, problems: &mut Vec<Problem>) {
+pub(crate) fn check(pipeline: &Pipeline, vocabulary: &Vocabulary, problems: &mut Vec<Problem>) {
     let kinds: BTreeMap<String, String> = pipeline.steps.iter().map(|s| (s.name.clone(), s.does.clone())).collect();
     let mut earlier: BTreeMap<String, Vec<Point>> = BTreeMap::new();
     for step in &pipeline.steps {

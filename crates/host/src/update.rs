@@ -8,7 +8,7 @@ use crate::shown::{Placed, Shown};
 use crate::{Configuration, Energy, Graph, Label, saved};
 use spinledger_abi::{
     SL_FAILED, SL_OK, SL_TALLY_ACCEPTANCE, SL_TALLY_ENERGY, SL_TALLY_MAGNETISATION, SL_VIEW_BYTES, SlByteSink, SlKey,
-    SlMessage, SlPrepare, SlSpins, SlTallies, SlUpdate, SlView,
+    SlMessage, SlPrepare, SlSpins, SlTallies, SlText, SlUpdate, SlView,
 };
 use spinledger_numerics::random::StreamKey;
 use std::ffi::c_void;
@@ -311,6 +311,29 @@ impl Sampler {
             Some(adapt) => unsafe { adapt(instance, i32::from(on)) },
             None => SL_OK,
         })
+    }
+
+    /// Which of the rule's code runs, in a word or two for people; empty where the rule does not tell, or not in words.
+    ///
+    /// # Errors
+    /// The rule fails.
+    pub fn path(&mut self) -> Result<String> {
+        /// Bytes that are taken: what is longer is not a word or two.
+        const LONGEST: usize = 200;
+        let mut text = SlText { data: null(), length: 0 };
+        let (path, instance) = (self.table.path, self.instance);
+        self.ask("tell which code runs", |_| match path {
+            // SAFETY: as in `import`.
+            Some(path) => unsafe { path(instance, &mut text) },
+            None => SL_OK,
+        })?;
+        if text.data.is_null() || text.length > LONGEST {
+            return Ok(String::new());
+        }
+        // SAFETY: not null, and the plugin says that it is so long and that it lives until the next call.
+        let bytes = unsafe { std::slice::from_raw_parts(text.data, text.length) };
+        let text = String::from_utf8_lossy(bytes);
+        Ok(text.chars().map(|letter| if letter.is_control() { ' ' } else { letter }).collect())
     }
 
     fn check_lane(&self, lane: usize) -> Result<()> {

@@ -322,6 +322,20 @@ fn threads_change_no_bits_and_lines_arrive() {
     assert_eq!(*LINES.lock().unwrap(), ["probe-mean is prepared"; 4]);
 }
 
+/// A rule says it, says nothing, or has a table from before there was anything to say.
+#[test]
+fn rules_tell_which_of_their_code_runs() {
+    let forms = Bench::forms();
+    let graph = forms.graph("test-grid", r#"{"size": 2, "boundary": "periodic"}"#);
+    let energy = forms.energy("test-ising", ISING, &graph);
+    assert_eq!(sampler(&forms, "probe-pair", &graph, &energy, 0.4, 1).path().unwrap(), "by colour");
+    assert_eq!(sampler(&forms, "faulty-garbage", &graph, &energy, 0.4, 1).path().unwrap(), "");
+    let c = Bench::new(&[plugins::c_forms()]);
+    let graph = c.graph("c-ring", r#"{"size": 6}"#);
+    let energy = c.energy("c-triple", r#"{"triple": 0.4}"#, &graph);
+    assert_eq!(sampler(&c, "c-heat-bath", &graph, &energy, 0.4, 1).path().unwrap(), "");
+}
+
 #[test]
 fn states_that_do_not_exist_are_noticed() {
     let bench = Bench::forms();

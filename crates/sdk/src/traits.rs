@@ -155,6 +155,12 @@ pub trait UpdateInstance: Send {
 
     /// Turns the adapting of step widths on or off.
     fn adapt(&mut self, _on: bool) {}
+
+    /// Which of the rule's code runs here, in a word or two for people (`portable`, `avx512`): shown where speeds are measured. Nothing may
+    /// depend on it. Empty where there is nothing to tell.
+    fn path(&self) -> &str {
+        ""
+    }
 }
 
 /// A column of an observable.

@@ -241,6 +241,10 @@ impl UpdateInstance for Group<'_> {
         self.kinds.iter().flatten().for_each(|kind| kind.rare.save(out));
     }
 
+    fn path(&self) -> &str {
+        self.level.name()
+    }
+
     fn restore(&mut self, bytes: &[u8]) -> Result<()> {
         let wrong = || Error::new("the saved state is of another lattice, model or number of chains");
         let (vectors, rest) = bytes.split_at_checked(64 * self.layout.free).ok_or_else(wrong)?;

@@ -60,6 +60,15 @@ impl Level {
         Self::named(&word.to_string_lossy())
     }
 
+    /// Its name, as [`VARIABLE`] has it.
+    pub(crate) fn name(self) -> &'static str {
+        match self {
+            Level::Portable => "portable",
+            Level::Avx2 => "avx2",
+            Level::Avx512 => "avx512",
+        }
+    }
+
     fn named(word: &str) -> Result<Level> {
         let level = match word {
             "portable" => Level::Portable,

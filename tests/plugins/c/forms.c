@@ -1,4 +1,5 @@
 /* A plugin library in C for tests: a ring, a model with callbacks, one with factors, an update rule and an observable. */
+#include <stddef.h>
 #include "spinledger.h"
 #include <stdlib.h>
 #include <string.h>
@@ -271,8 +272,9 @@ static int32_t rule_restore(void *instance, const uint8_t *data, size_t count, S
     return SL_OK;
 }
 
-static const SlUpdate heat_bath = { sizeof(SlUpdate), rule_create, free,      rule_prepare, free, rule_import, rule_export,
-                                     rule_sweep,       rule_view,   NULL,      rule_save,    rule_restore, NULL };
+/* As large as it was before `path`: libraries that were built then go on to load. */
+static const SlUpdate heat_bath = { offsetof(SlUpdate, path), rule_create, free, rule_prepare, free, rule_import, rule_export,
+                                     rule_sweep, rule_view, NULL, rule_save, rule_restore, NULL, NULL };
 
 /* ---- observable: the mean, from bytes ---- */
 

@@ -3,6 +3,7 @@
 pub(crate) mod check;
 pub(crate) mod closing;
 pub(crate) mod forecast;
+pub(crate) mod pace;
 pub(crate) mod plugins;
 pub(crate) mod print;
 pub(crate) mod run;

@@ -72,6 +72,7 @@ impl<U: Update> Updates<U> {
         save: Some(Self::save),
         restore: Some(Self::restore),
         adapt: Some(Self::adapt),
+        path: Some(Self::path),
     };
 
     /// A chain's instance, if there is such a chain.
@@ -250,6 +251,20 @@ impl<U: Update> Updates<U> {
         unsafe {
             guard(std::ptr::null_mut(), || {
                 Self::chains_mut(instance, 0)?.instance.adapt(on != 0);
+                Ok(())
+            })
+        }
+    }
+
+    unsafe extern "C" fn path(instance: *const c_void, path: *mut abi::SlText) -> i32 {
+        // SAFETY: the host keeps to the interface: it copies the text before its next call, so the instance is not changed meanwhile.
+        unsafe {
+            guard(std::ptr::null_mut(), || {
+                let text = Self::chains(instance, 0)?.instance.path();
+                match path.as_mut() {
+                    Some(place) => *place = abi::SlText { data: text.as_ptr(), length: text.len() },
+                    None => return Err(Error::new("the host gave no place for a text").into()),
+                }
                 Ok(())
             })
         }

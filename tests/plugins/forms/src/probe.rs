@@ -106,6 +106,10 @@ impl UpdateInstance for Probe<'_> {
         Tallies { energy: Some(chain.energy), magnetisation: None, acceptance: Some((chain.proposed, chain.accepted)) }
     }
 
+    fn path(&self) -> &str {
+        "by colour"
+    }
+
     fn save(&self, out: &mut Vec<u8>) {
         self.chains.iter().for_each(|chain| chain.save(out));
     }
