@@ -7,11 +7,11 @@ use std::os::unix::process::ExitStatusExt;
 use std::process::Child;
 use std::time::{Duration, Instant};
 
-/// Blocks of 2048 rows take about a second: a stop falls into the middle of one.
+/// Blocks of 4096 rows take about a second: a stop falls into the middle of one.
 fn pipeline(measure: u64) -> String {
     format!(
         "spinledger: 1\npipeline: stopped\nseed: 3\nsteps:\n  chains:\n    does: sample\n    lattice: {{ plugin: square, size: 64 }}\n    model: ising\n    \
-         update: metropolis\n    observe: [energy, magnetisation]\n    scan: {{ temperature: [2.2, 2.3] }}\n    equilibrate: 10\n    every: 8\n    \
+         update: swendsen-wang\n    observe: [energy, magnetisation]\n    scan: {{ temperature: [2.2, 2.3] }}\n    equilibrate: 10\n    every: 8\n    \
          measure: {measure}\n    chains: 2\n  means: {{ does: averages, of: chains }}\n"
     )
 }
@@ -48,7 +48,7 @@ fn group(child: &Child, signal: Signal) {
 #[test]
 fn an_end_that_is_asked_for_costs_nothing() {
     let desk = Desk::new();
-    let text = pipeline(20_000);
+    let text = pipeline(12_000);
     desk.write("stopped.yaml", &text);
     for (signal, status) in [(Signal::INT, 130), (Signal::TERM, 143), (Signal::INT, 130)] {
         let before = (updates(&desk), states(&desk));
@@ -162,8 +162,8 @@ fn a_stop_at_any_moment_is_harmless() {
 #[test]
 fn a_sequence_can_be_stopped() {
     let text = "spinledger: 1\npipeline: stopped\nseed: 8\nsteps:\n  cool:\n    does: sample\n    lattice: { plugin: square, size: 48 }\n    model: ising\n    \
-         update: metropolis\n    observe: [energy, magnetisation]\n    follow: temperature\n    scan: { temperature: [3.0, 2.5, 2.0] }\n    equilibrate: 20\n    \
-         every: 8\n    measure: 8000\n    chains: 2\n    keep: { states: last }\n";
+         update: swendsen-wang\n    observe: [energy, magnetisation]\n    follow: temperature\n    scan: { temperature: [3.0, 2.5, 2.0] }\n    equilibrate: 20\n    \
+         every: 8\n    measure: 3000\n    chains: 2\n    keep: { states: last }\n";
     let fresh = Desk::new();
     fresh.write("stopped.yaml", text);
     fresh.run_pipeline("stopped.yaml", &[], 0);

@@ -18,7 +18,7 @@ steps:
     scan: { temperature: [2.1, 2.2, 2.3, 2.4] }
     every: 8
     equilibrate: 5
-    measure: 6000
+    measure: 15000
     chains: 2
   means: { does: averages, of: chains }
   held:
@@ -83,7 +83,7 @@ fn colours_are_for_those_who_want_them() {
 #[test]
 fn what_is_not_settled_is_told_in_sentences() {
     let desk = Desk::new();
-    desk.write("terminal.yaml", &TEXT.replace("measure: 6000", "measure: 30").replace("value: 7", "value: -1"));
+    desk.write("terminal.yaml", &TEXT.replace("measure: 15000", "measure: 30").replace("value: 7", "value: -1"));
     let ran = desk.run(&["run", "terminal.yaml"]);
     let all = ran.out.split_whitespace().collect::<Vec<_>>().join(" ");
     assert!(all.contains("not settled: means:"), "{}", ran.out);
