@@ -4,10 +4,7 @@
 //! used only within the function of [`Level`] that was compiled for them, and that is entered only where the processor has them.
 
 use crate::word::{Pair, Vector, Word};
-use spinledger_sdk::{Error, Result};
-
-/// The environment variable that asks for less than the processor has.
-pub(crate) const VARIABLE: &str = "SPINLEDGER_SIMD";
+use spinledger_sdk::{Result, instructions};
 
 /// Instructions to use. The results are the same with any.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -30,7 +27,6 @@ pub(crate) trait Work {
 
 impl Level {
     /// All, the least first.
-    #[cfg(test)]
     pub(crate) const ALL: [Level; 3] = [Level::Portable, Level::Avx2, Level::Avx512];
 
     /// Whether this processor has it.
@@ -46,40 +42,20 @@ impl Level {
         }
     }
 
-    /// The best that this processor has, or what [`VARIABLE`] asks for: `portable`, `avx2` or `avx512`.
+    /// The best that this processor has, or what `SPINLEDGER_SIMD` asks for: `portable`, `avx2` or `avx512`.
     ///
     /// # Errors
     /// Where that is none of the words, or not there.
     pub(crate) fn chosen() -> Result<Level> {
-        let Some(word) = std::env::var_os(VARIABLE) else {
-            return Ok([Level::Avx512, Level::Avx2]
-                .into_iter()
-                .find(|level| level.is_there())
-                .unwrap_or(Level::Portable));
-        };
-        Self::named(&word.to_string_lossy())
+        instructions(&Level::ALL.map(|level| (level.name(), level, level.is_there())))
     }
 
-    /// Its name, as [`VARIABLE`] has it.
+    /// Its name.
     pub(crate) fn name(self) -> &'static str {
         match self {
             Level::Portable => "portable",
             Level::Avx2 => "avx2",
             Level::Avx512 => "avx512",
-        }
-    }
-
-    fn named(word: &str) -> Result<Level> {
-        let level = match word {
-            "portable" => Level::Portable,
-            "avx2" => Level::Avx2,
-            "avx512" => Level::Avx512,
-            _ => return Err(Error::new(format!("{VARIABLE} is `{word}`; it may be portable, avx2 or avx512"))),
-        };
-        if level.is_there() {
-            Ok(level)
-        } else {
-            Err(Error::new(format!("{VARIABLE} asks for `{word}`, which this processor does not have")))
         }
     }
 
@@ -273,8 +249,9 @@ mod tests {
 
     #[test]
     fn words_name_levels() {
-        assert_eq!(Level::named("portable"), Ok(Level::Portable));
-        assert!(Level::named("sse").unwrap_err().0.contains("portable, avx2 or avx512"));
+        let named = |word| spinledger_sdk::instructions_named(&Level::ALL.map(|l| (l.name(), l, l.is_there())), word);
+        assert_eq!(named("portable"), Ok(Level::Portable));
+        assert!(named("sse").unwrap_err().0.contains("portable, avx2 or avx512"));
     }
 
     /// Every operation on registers against the words it is about.
